@@ -1,0 +1,1 @@
+"""Blocks of cell values <-> arrays; addresses; the ledger of rows used and left out."""
