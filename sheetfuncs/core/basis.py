@@ -1,0 +1,182 @@
+"""One orthogonal decomposition of the predictors, which everything else reuses.
+
+Householder QR with column pivoting (Businger and Golub 1965; LAPACK dgeqp3) of the predictor columns, centred where
+there is an intercept, and each scaled to unit length. Centring first means that a column like 1e9 + u keeps every
+digit of u, and that neither an offset nor a unit can make a design look collinear.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from scipy.linalg import lapack, solve_triangular
+
+from sheetfuncs.core.threads import few_threads
+from sheetfuncs.errors import CollinearPredictorsError, NoVariationError, TooFewRowsError
+
+EPS = float(np.finfo(float).eps)
+# A column that is this many roundings of its own values away from the others is determined by them.
+ROUNDINGS = 16.0
+
+
+@dataclass(frozen=True, eq=False)
+class Basis:
+    """The predictors' column space.
+
+    q: (n, k) orthonormal basis of the scaled (and centred) columns; with an intercept the constant direction 1/sqrt(n)
+    is orthogonal to it and stands beside it. r: (k, k) upper triangular; pivot: the columns' order in r.
+    scale, centre: (k,) length after centring, and what was taken off. raw_norm: (k,) length of the columns as given.
+    """
+
+    q: np.ndarray
+    r: np.ndarray
+    pivot: np.ndarray
+    scale: np.ndarray
+    centre: np.ndarray
+    raw_norm: np.ndarray
+    intercept: bool
+
+    @property
+    def n(self) -> int:
+        return self.q.shape[0]
+
+    @property
+    def rank(self) -> int:
+        """Dimension of the column space, the constant counted."""
+        return self.q.shape[1] + int(self.intercept)
+
+    @cached_property
+    def leverage(self) -> np.ndarray:
+        """Diagonal of the hat matrix, (n,)."""
+        h = np.einsum("ij,ij->i", self.q, self.q)
+        if self.intercept:
+            h += 1.0 / self.n
+        return np.minimum(h, 1.0)
+
+    @cached_property
+    def r_inverse(self) -> np.ndarray:
+        """Inverse of r, rows in the columns' own order, (k, k): its product with its transpose is the inverse of the
+        scaled columns' cross products, so that its squared row lengths are variance inflation factors."""
+        k = self.r.shape[0]
+        inverse = np.empty((k, k))
+        if k:
+            inverse[self.pivot] = solve_triangular(self.r, np.eye(k))
+        return inverse
+
+    @cached_property
+    def cross_products(self) -> np.ndarray:
+        """(k, k) cross products of the scaled columns in their own order; with an intercept their correlations."""
+        columns = np.empty_like(self.r)
+        columns[:, self.pivot] = self.r
+        return columns.T @ columns
+
+    @cached_property
+    def coefficient_root(self) -> np.ndarray:
+        """(p, p) matrix B: coefficients = B @ (response's coordinates on [1/sqrt(n), q]); (X'X)^-1 = B B'."""
+        slopes = self.r_inverse / self.scale[:, None]
+        if not self.intercept:
+            return slopes
+        root = np.zeros((self.rank, self.rank))
+        root[1:, 1:] = slopes
+        root[0, 0] = 1.0 / np.sqrt(self.n)
+        root[0, 1:] = -self.centre @ slopes
+        return root
+
+    def project_out(self, values: np.ndarray) -> np.ndarray:
+        """What is left of values (n,) or (n, m) after regression on this basis; twice, so that it is orthogonal."""
+        left = np.array(values, dtype=np.float64)
+        with few_threads(self.q.size):
+            for _ in range(2):
+                if self.intercept:
+                    left -= left.mean(axis=0)
+                left -= self.q @ (self.q.T @ left)
+        return left
+
+
+def factorize(columns: np.ndarray, names: Sequence[str], *, intercept: bool) -> Basis:
+    """Decompose predictor columns (n, k).
+
+    Refused (CollinearPredictorsError, naming the columns): a column that is constant beside an intercept, all zero,
+    or determined by the others. The measure is the column itself: what is left of it after the others, against the
+    roundings that its own values carry. Refused too: fewer rows than coefficients.
+    """
+    n, k = columns.shape
+    if n < k + int(intercept):
+        raise TooFewRowsError(
+            f"{n} usable row{'s' if n != 1 else ''} for {k + int(intercept)} coefficients: at least "
+            f"{k + int(intercept) + 1} rows are needed. Add rows or use fewer predictors."
+        )
+    with few_threads(columns.size):
+        with np.errstate(over="ignore", invalid="ignore"):
+            raw_norm = np.linalg.norm(columns, axis=0)
+            work, centre = centred(columns) if intercept else (columns.copy(), np.zeros(k))
+            scale = np.linalg.norm(work, axis=0)
+        if not np.isfinite(raw_norm).all():
+            raise NoVariationError(
+                "The numbers are too large for their squares to be computed: express them in a larger unit."
+            )
+        _refuse_empty_columns(names, scale, raw_norm, intercept)
+        work /= scale
+        q, r, pivot = _pivoted_qr(work)
+        limit = EPS * ROUNDINGS * np.sqrt(n) * np.maximum(raw_norm / scale, 1.0)
+        _refuse_dependent_columns(names, r, pivot, limit, intercept)
+    return Basis(q, r, pivot, scale, np.asarray(centre), raw_norm, intercept)
+
+
+def centred(values: np.ndarray) -> tuple[np.ndarray, np.ndarray | float]:
+    """Values minus their mean, and the mean; in two steps, so that a large offset costs no digit."""
+    first = values.mean(axis=0)
+    left = values - first
+    second = left.mean(axis=0)
+    left -= second
+    return left, first + second
+
+
+def _pivoted_qr(work: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    n, k = work.shape
+    if k == 0:
+        return np.empty((n, 0)), np.empty((0, 0)), np.empty(0, np.intp)
+    factors, pivot, tau, _, info = lapack.dgeqp3(np.asfortranarray(work), overwrite_a=1)
+    if info != 0:
+        raise NoVariationError("The predictors could not be factorized: look for extreme values among them.")
+    r = np.triu(factors[:k])
+    q, _, _ = lapack.dorgqr(factors, tau, overwrite_a=1)
+    return q, r, pivot.astype(np.intp) - 1
+
+
+def _refuse_empty_columns(names: Sequence[str], scale: np.ndarray, raw_norm: np.ndarray, intercept: bool) -> None:
+    for j, name in enumerate(names):
+        if raw_norm[j] == 0:
+            raise CollinearPredictorsError(f"{name} is zero in every used row: leave it out.", (name,))
+        if intercept and scale[j] <= EPS * ROUNDINGS * raw_norm[j]:
+            raise CollinearPredictorsError(
+                f"{name} has the same value in every used row, so it cannot be told from the intercept: "
+                "leave it out, or fit without an intercept.", (name,),
+            )
+
+
+def _refuse_dependent_columns(
+    names: Sequence[str], r: np.ndarray, pivot: np.ndarray, limit: np.ndarray, intercept: bool
+) -> None:
+    dependent = np.flatnonzero(np.abs(np.diag(r)) <= limit[pivot])
+    if not dependent.size:
+        return
+    rank = int(dependent[0])
+    # Pivoting decides which column comes out last; the sentence names all that move together with it.
+    weights = solve_triangular(r[:rank, :rank], r[:rank, rank]) if rank else np.empty(0)
+    partners = [int(pivot[i]) for i in np.flatnonzero(np.abs(weights) > 1e-6)]
+    together = tuple(names[j] for j in sorted([int(pivot[rank]), *partners]))
+    constant = " and the intercept" if intercept else ""
+    if len(together) == 1:
+        raise CollinearPredictorsError(f"{together[0]} is determined by the intercept: leave it out.", together)
+    raise CollinearPredictorsError(
+        f"{together[-1]} is determined exactly by {listed(together[:-1])}{constant}: leave one of them out.", together
+    )
+
+
+def listed(names: Sequence[str]) -> str:
+    """"a, b and c"."""
+    return names[0] if len(names) == 1 else ", ".join(names[:-1]) + " and " + names[-1]

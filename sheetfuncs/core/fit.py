@@ -1,0 +1,208 @@
+"""Least squares on a design: coefficients with error bars, residuals, and how much of the response is explained."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from scipy.linalg import solve_triangular
+from scipy.special import fdtrc, stdtr, stdtrit
+
+from sheetfuncs.core.basis import EPS, ROUNDINGS, Basis, centred, factorize
+from sheetfuncs.core.design import Design
+from sheetfuncs.core.threads import few_threads
+from sheetfuncs.errors import NoVariationError
+
+
+@dataclass(frozen=True, eq=False)
+class Fit:
+    """A least-squares fit.
+
+    coefficients: (p,), the constant first. residuals: (n,) in the rows' own order. rss: their sum of squares.
+    perfect: the residuals are rounding noise and are stored as zeros.
+    """
+
+    design: Design
+    basis: Basis
+    coefficients: np.ndarray
+    residuals: np.ndarray
+    rss: float
+    perfect: bool
+
+    @property
+    def n(self) -> int:
+        return self.design.n
+
+    @property
+    def p(self) -> int:
+        return self.design.p
+
+    @property
+    def df(self) -> int:
+        return self.n - self.p
+
+    @property
+    def has_error_bars(self) -> bool:
+        """Whether the residuals say anything: some degrees of freedom, and more than rounding noise."""
+        return self.df > 0 and not self.perfect
+
+    @cached_property
+    def fitted(self) -> np.ndarray:
+        return self.design.response - self.residuals
+
+    @cached_property
+    def sigma(self) -> float:
+        """Residual standard deviation, sqrt(rss / (n - p)); NaN without degrees of freedom."""
+        return float(np.sqrt(self.rss / self.df)) if self.df > 0 else float("nan")
+
+    @property
+    def leverage(self) -> np.ndarray:
+        """Diagonal of the hat matrix, (n,)."""
+        return self.basis.leverage
+
+    @cached_property
+    def fits_itself(self) -> np.ndarray:
+        """(n,) bool: rows of leverage 1, which determine their own fitted value whatever the response is there."""
+        return self.leverage >= 1.0 - 100.0 * self.p * EPS
+
+    @cached_property
+    def unscaled_covariance(self) -> np.ndarray:
+        """(X'X)^-1, (p, p), the constant first: coefficients' covariance divided by sigma squared."""
+        return self.basis.coefficient_root @ self.basis.coefficient_root.T
+
+    @cached_property
+    def standard_errors(self) -> np.ndarray:
+        """(p,): sigma times the root of the diagonal of (X'X)^-1."""
+        sigma = 0.0 if self.perfect and self.df > 0 else self.sigma
+        return sigma * np.linalg.norm(self.basis.coefficient_root, axis=1)
+
+    @cached_property
+    def t(self) -> np.ndarray:
+        """(p,): coefficients over their standard errors; NaN where the residuals say nothing."""
+        if not self.has_error_bars:
+            return np.full(self.p, np.nan)
+        return self.coefficients / self.standard_errors
+
+    @cached_property
+    def p_values(self) -> np.ndarray:
+        """(p,): two-sided, t with n - p degrees of freedom."""
+        if not self.has_error_bars:
+            return np.full(self.p, np.nan)
+        return 2.0 * stdtr(self.df, -np.abs(self.t))
+
+    def interval(self, level: float = 0.95) -> tuple[np.ndarray, np.ndarray]:
+        """Confidence limits of the coefficients, (p,) and (p,)."""
+        if not self.has_error_bars:
+            nothing = np.full(self.p, np.nan)
+            return nothing, nothing
+        half = stdtrit(self.df, 0.5 + level / 2) * self.standard_errors
+        return self.coefficients - half, self.coefficients + half
+
+    @cached_property
+    def tss(self) -> float:
+        """Total sum of squares: about the mean with an intercept, about zero without."""
+        y = self.design.response
+        if self.design.intercept:
+            y = y - y.mean()
+        return float(y @ y)
+
+    @cached_property
+    def r_squared(self) -> float:
+        """1 - rss/tss; NaN where the response does not vary."""
+        return 1.0 - self.rss / self.tss if self.tss > 0 else float("nan")
+
+    @cached_property
+    def adjusted_r_squared(self) -> float:
+        if self.df <= 0:
+            return float("nan")
+        base = self.n - int(self.design.intercept)
+        return 1.0 - (1.0 - self.r_squared) * base / self.df
+
+    @cached_property
+    def f_test(self) -> tuple[float, tuple[int, int], float]:
+        """F of all predictors together: statistic, (numerator, denominator) df, p."""
+        k = self.design.columns.shape[1]
+        if not self.has_error_bars or k == 0:
+            return float("nan"), (k, self.df), float("nan")
+        f = (self.tss - self.rss) / k / (self.rss / self.df)
+        return f, (k, self.df), float(fdtrc(k, self.df, f))
+
+    @cached_property
+    def log_likelihood(self) -> float:
+        """Gaussian, at the maximum: sigma squared = rss/n."""
+        if not self.has_error_bars:
+            return float("nan")
+        return -0.5 * self.n * (np.log(2 * np.pi) + np.log(self.rss / self.n) + 1.0)
+
+    @property
+    def aic(self) -> float:
+        """Akaike's criterion, sigma counted as a parameter (as R; statsmodels does not, and prints 2 less)."""
+        return 2.0 * (self.p + 1) - 2.0 * self.log_likelihood
+
+    @property
+    def bic(self) -> float:
+        """Schwarz's criterion, sigma counted as a parameter."""
+        return float(np.log(self.n)) * (self.p + 1) - 2.0 * self.log_likelihood
+
+    def require_variation(self) -> None:
+        """Refuse where the residuals say nothing: no degrees of freedom, or a perfect fit."""
+        reason = self.nothing_left()
+        if reason:
+            raise NoVariationError(reason)
+
+    def nothing_left(self) -> str:
+        """Why the residuals say nothing; empty where they do."""
+        if self.df == 0:
+            return (
+                f"{self.n} rows for {self.p} coefficients leave no degrees of freedom: the line passes through every "
+                "row. Add rows or use fewer predictors."
+            )
+        if self.perfect:
+            return "The fit is perfect: what is left is rounding noise, and nothing can be tested on it."
+        return ""
+
+
+def fit_design(design: Design) -> Fit:
+    """Fit a Design by least squares.
+
+    Refused as `factorize` says, and where squares overflow. With n == p, or with residuals within a few roundings of
+    the data, the residuals are set to zero: what is computed there is noise.
+    """
+    basis = factorize(design.columns, design.column_names, intercept=design.intercept)
+    with few_threads(design.columns.size):
+        return _solve(design, basis)
+
+
+def _solve(design: Design, basis: Basis) -> Fit:
+    y = design.response
+    left, mean = centred(y) if design.intercept else (y.copy(), 0.0)
+    with np.errstate(over="ignore", invalid="ignore"):
+        if not np.isfinite(left @ left):
+            raise NoVariationError(
+                "The response is too large for its squares to be computed: express it in a larger unit."
+            )
+    projected = basis.q.T @ left
+    left -= basis.q @ projected
+    correction = basis.q.T @ left  # a second projection keeps the residuals orthogonal to the last digit
+    left -= basis.q @ correction
+    if design.intercept:
+        left -= left.mean()
+    slopes = _slopes(basis, projected + correction)
+    coefficients = np.concatenate([[mean - basis.centre @ slopes], slopes]) if design.intercept else slopes
+
+    noise = EPS * (float(np.linalg.norm(y)) + float(np.abs(slopes) @ basis.raw_norm))
+    perfect = bool(np.linalg.norm(left) <= ROUNDINGS * noise)
+    if design.n == design.p or perfect:
+        left[:] = 0.0
+    fit = Fit(design, basis, coefficients, left, float(left @ left), perfect and design.n > design.p)
+    left[fit.fits_itself] = 0.0
+    return fit
+
+
+def _slopes(basis: Basis, coordinates: np.ndarray) -> np.ndarray:
+    k = coordinates.shape[0]
+    scaled = np.empty(k)
+    if k:
+        scaled[basis.pivot] = solve_triangular(basis.r, coordinates)
+    return scaled / basis.scale
