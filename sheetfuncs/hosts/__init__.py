@@ -1,0 +1,1 @@
+"""Hosts move cells in and out; they hold no statistics."""
