@@ -37,6 +37,7 @@ THIRD_PARTY = {
     "cli": {"click"},
 }
 LATE_ONLY = {"statsmodels", "pandas", "xlwings", "scipy.stats"}
+NEVER = {"xlwings.pro"}  # its licence is commercial
 
 
 class Import(NamedTuple):
@@ -80,7 +81,7 @@ def broken_rules(module: str, source: str) -> list[str]:
         elif first == "sheetfuncs":
             if inner[0] in FLOORS and top in FLOORS and FLOORS.index(inner[0]) > FLOORS.index(top):
                 found.append(f"{module}:{line} imports {name}, of a later floor")
-        elif first not in sys.stdlib_module_names and not within(name, allowed):
+        elif within(name, NEVER) or (first not in sys.stdlib_module_names and not within(name, allowed)):
             found.append(f"{module}:{line} imports {name}, which is not allowed in this folder")
         elif within(name, LATE_ONLY) and not late:
             found.append(f"{module}:{line} imports {name} at the top: import it inside the function that needs it")
@@ -123,6 +124,7 @@ def test_modules_form_no_circle():
         ("core.fit", "import statsmodels.api", "at the top"),
         ("core.fit", "def f():\n    import statsmodels.api", None),
         ("hosts.excel.book", "import xlwings", "at the top"),
+        ("hosts.excel.book", "def f():\n    from xlwings import pro", "not allowed in this folder"),
         ("hosts.files", "def f():\n    import xlwings", "not allowed in this folder"),
         ("check", "if TYPE_CHECKING:\n    import pandas", None),
         ("workbook.read", "import_module('requests')", "not allowed in this folder"),

@@ -1,0 +1,61 @@
+"""The house keeps its shape: what stands at the top, how long a module is, docstrings, no traces of a machine."""
+
+from __future__ import annotations
+
+import ast
+import re
+import zipfile
+from collections.abc import Iterator
+from pathlib import Path
+
+import pytest
+
+ROOT = Path(__file__).parents[1]
+TOP = {"README.md", "DEVELOPERS.md", "pyproject.toml", "sheetfuncs", "tests", "templates"}
+MADE_BY_RUNNING = {"demo", "build", "dist", "venv", "__pycache__"}  # .gitignore names them too
+MODULES = sorted((ROOT / "sheetfuncs").rglob("*.py"))
+HOME_FOLDER = re.compile(r"(?<![\w.~])/(?:home|root|Users|work|mnt|srv)/\w|\b[A-Z]:\\+Users\\+\w")
+
+
+def texts() -> Iterator[tuple[str, str]]:
+    """(where, text) of every text file of the project, and of the parts inside its workbooks."""
+    folders = [ROOT / name for name in ("sheetfuncs", "tests", "templates", ".ci", ".deploy")]
+    files = [path for folder in folders for path in folder.rglob("*")] + list(ROOT.glob("*.*"))
+    for path in files:
+        if not path.is_file() or "__pycache__" in path.parts or path == Path(__file__):
+            continue
+        if zipfile.is_zipfile(path):
+            with zipfile.ZipFile(path) as package:
+                parts = [name for name in package.namelist() if name.endswith((".xml", ".rels", ".vml"))]
+                yield from ((f"{path}: {name}", package.read(name).decode("utf-8", "replace")) for name in parts)
+        else:
+            yield str(path), path.read_bytes().decode("utf-8", "replace")
+
+
+def test_top_level_holds_nothing_else():
+    names = {path.name for path in ROOT.iterdir() if not path.name.startswith(".")}
+    assert {name for name in names - TOP - MADE_BY_RUNNING if not name.endswith(".egg-info")} == set()
+
+
+def test_no_file_names_a_folder_of_some_machine():
+    found = [(where, hit.group()) for where, text in texts() for hit in HOME_FOLDER.finditer(text)]
+    assert found == []
+
+
+def test_folder_pattern_finds_what_it_is_for():
+    assert HOME_FOLDER.search('open("/ho' + 'me/anna/book.xlsx")')
+    assert HOME_FOLDER.search("C:\\Us" + "ers\\anna")
+    assert not HOME_FOLDER.search("xl/work/sheet1.xml")
+
+
+@pytest.mark.parametrize("path", MODULES, ids=lambda path: str(path.relative_to(ROOT)))
+def test_module_is_short_and_explained(path):
+    source = path.read_text("utf-8")
+    assert source.count("\n") < 500, "Does it hold two subjects?"
+    tree = ast.parse(source)
+    public = [
+        node for node in tree.body
+        if isinstance(node, ast.FunctionDef | ast.ClassDef) and not node.name.startswith("_")
+    ]
+    assert [node.name for node in public if not ast.get_docstring(node)] == []
+    assert ast.get_docstring(tree)
