@@ -1,0 +1,1 @@
+"""The worksheet functions, each declared once: name, arguments, help, compute."""

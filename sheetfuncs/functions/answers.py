@@ -1,0 +1,57 @@
+"""From results to cells: numbers, and error values where there is no number."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from sheetfuncs.cells.observations import Observations
+from sheetfuncs.core.results import Result
+from sheetfuncs.errors import NotApplicableError, NoVariationError
+from sheetfuncs.functions.declaration import Cell
+
+LEFT_OUT = "#N/A"
+UNDEFINED = "#NUM!"
+
+
+def number(value: float) -> Cell:
+    """A number, or "#NUM!" where it is undefined."""
+    value = float(value)
+    return value if math.isfinite(value) else UNDEFINED
+
+
+def statistic(result: Result) -> Cell:
+    """The statistic itself. Raises NotApplicableError, with the reason, where the method does not apply."""
+    return _figure(result, result.statistic)
+
+
+def p_value(result: Result) -> Cell:
+    """The p-value. Raises NotApplicableError, with the reason, where the method does not apply."""
+    return _figure(result, result.p)
+
+
+def _figure(result: Result, value: float | None) -> Cell:
+    if not result.applies:
+        refusal = NotApplicableError(result.reason)
+        refusal.cell_error = result.cell_error  # type: ignore[union-attr]
+        raise refusal
+    if value is None or not math.isfinite(value):
+        raise NoVariationError(f"The {result.method.replace('_', ' ')} figure is not a finite number for this fit.")
+    return float(value)
+
+
+def by_row(observations: Observations, values: np.ndarray, heading: str) -> list[list[Cell]]:
+    """One cell for each row of the response block: heading, value, or the error of a row without one."""
+    cells: list[Cell] = [LEFT_OUT] * observations.block_rows
+    for position, value in zip(observations.positions.tolist(), values.tolist(), strict=True):
+        cells[position] = value if math.isfinite(value) else UNDEFINED
+    if observations.has_header:
+        cells[0] = heading
+    return [[cell] for cell in cells]
+
+
+def table(*columns: object) -> list[list[Cell]]:
+    """Columns of equal length, of texts or numbers, as rows of cells."""
+    plain = [[c if isinstance(c, str) else number(c) for c in column] for column in columns]  # type: ignore[attr-defined]
+    return [list(row) for row in zip(*plain, strict=True)]

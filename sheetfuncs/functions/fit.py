@@ -1,0 +1,93 @@
+"""The fit itself: coefficients, fitted values, residuals, predictions, and why there is none."""
+
+from __future__ import annotations
+
+from sheetfuncs.functions.answers import by_row, table
+from sheetfuncs.functions.arguments import LEVEL, Argument, choice, on_rows
+from sheetfuncs.functions.declaration import AS_HIGH_AS_RESPONSE, Call, CellResult, WorksheetFunction
+from sheetfuncs.functions.explaining import explain_regression
+from sheetfuncs.functions.predicting import COLUMNS, predict_at
+
+GROUP = "fit"
+
+RESIDUALS = {
+    "plain": "residual",
+    "internally studentized": "internally studentized residual",
+    "externally studentized": "externally studentized residual",
+    "leave-one-out": "leave-one-out residual",
+}
+
+
+def _coefficients(call: Call) -> CellResult:
+    fit = call.fit
+    low, high = fit.interval(float(call.options["level"] or 0))
+    return table(fit.design.terms, fit.coefficients, fit.standard_errors, fit.t, fit.p_values, low, high)
+
+
+def _fitted(call: Call) -> CellResult:
+    return by_row(call.regression.observations, call.fit.fitted, "fitted")
+
+
+def _residuals(call: Call) -> CellResult:
+    kind, measures = str(call.options["kind"]), call.regression.measures
+    values = {
+        "plain": call.fit.residuals,
+        "internally studentized": measures.internally_studentized,
+        "externally studentized": measures.externally_studentized,
+        "leave-one-out": measures.leave_one_out,
+    }[kind]
+    return by_row(call.regression.observations, values, RESIDUALS[kind])
+
+
+def _predict(call: Call) -> CellResult:
+    return predict_at(call.regression, call.block("at"), float(call.options["level"] or 0))
+
+
+FUNCTIONS = (
+    WorksheetFunction(
+        "FIT_COEFFICIENTS", GROUP,
+        "Least-squares coefficients, one row a term, the intercept first: term, estimate, standard error, t, two-sided "
+        "p (t with n - p degrees of freedom), and the limits of the interval.",
+        on_rows(
+            choice("standard_errors", 'How the error bars are found. "ordinary" (default): equal spread and '
+                                      "independence are assumed.", ("ordinary",)),
+            LEVEL,
+        ),
+        "table", "one row a term, 7 columns", _coefficients,
+        ("term", "estimate", "error", "t", "p", "low", "high"),
+    ),
+    WorksheetFunction(
+        "FIT_FITTED", GROUP, "Fitted value of each row, by least squares. #N/A for a row that was left out.",
+        on_rows(), "column", AS_HIGH_AS_RESPONSE, _fitted,
+    ),
+    WorksheetFunction(
+        "FIT_RESIDUALS", GROUP,
+        "Residual of each row: response minus fitted value, plain or in one of three scaled kinds. #N/A for a row that "
+        "was left out, #NUM! where the kind is undefined (leverage 1, perfect fit).",
+        on_rows(choice("kind", '"plain" (default); "internally studentized" or "externally studentized": in standard '
+                               'deviations, the row itself used or not; "leave-one-out": from a fit without the row.',
+                       tuple(RESIDUALS))),
+        "column", AS_HIGH_AS_RESPONSE, _residuals,
+    ),
+    WorksheetFunction(
+        "FIT_PREDICT", GROUP,
+        "Predicted value for each row of new predictor values, with limits for the average response there and for one "
+        "new response there: value, average low, average high, new low, new high.",
+        (
+            *on_rows()[:2],
+            Argument("at", "Predictor values to predict at, columns as in the predictors. A first row that repeats the "
+                           "predictors' headers counts as a header; its columns may then stand in any order."),
+            choice("method", 'How the limits are found. "ordinary" (default): t limits; equal spread and normal errors '
+                             "are assumed.", ("ordinary",)),
+            LEVEL,
+            *on_rows()[2:],
+        ),
+        "table", "as high as the range `at`, 5 columns", _predict, COLUMNS,
+    ),
+    WorksheetFunction(
+        "FIT_WHY", GROUP,
+        'Why a value is missing: "ok", or the sentence that says what stops this fit; and which rows were left out, '
+        "and why.",
+        on_rows(), "text", "one text", explain_regression,
+    ),
+)
