@@ -1,4 +1,4 @@
-"""The locked list for deployment: complete, in step with pyproject.toml, every file by its hash, no place named."""
+"""What is deployed: a locked list that is complete, by hash, and names no place; a wheel that holds the templates."""
 
 from __future__ import annotations
 
@@ -12,7 +12,8 @@ from packaging.utils import canonicalize_name
 
 ROOT = Path(__file__).parents[1]
 LOCK = (ROOT / ".deploy/requirements.lock").read_text("utf-8")
-PROJECT = tomllib.loads((ROOT / "pyproject.toml").read_text("utf-8"))["project"]
+SETTINGS = tomllib.loads((ROOT / "pyproject.toml").read_text("utf-8"))
+PROJECT = SETTINGS["project"]
 
 
 def locked() -> dict[str, str]:
@@ -47,3 +48,9 @@ def test_every_locked_package_has_hashes():
 
 def test_lock_names_no_place_to_download_from():
     assert not re.search(r"://|--(extra-)?index|--find-links|--trusted", LOCK)
+
+
+def test_wheel_holds_every_template():
+    included = SETTINGS["tool"]["hatch"]["build"]["targets"]["wheel"]["force-include"]
+    assert set(included) == {str(path.relative_to(ROOT).as_posix()) for path in (ROOT / "templates").glob("*.xl*")}
+    assert all(target == f"sheetfuncs/_{source}" for source, target in included.items())
