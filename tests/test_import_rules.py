@@ -25,7 +25,7 @@ FLOORS = ["errors", "cells", "core", "judgement", "check", "functions", "report"
 THIRD_PARTY = {
     "errors": set(),
     "cells": {"numpy"},
-    "core": {"numpy", "scipy.special", "scipy.linalg", "threadpoolctl", "statsmodels"},
+    "core": {"numpy", "scipy.fft", "scipy.linalg", "scipy.special", "threadpoolctl", "statsmodels"},
     "judgement": {"numpy", "scipy.special", "scipy.linalg"},
     "check": {"numpy", "scipy", "pandas"},
     "functions": {"numpy"},
