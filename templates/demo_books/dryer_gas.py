@@ -10,6 +10,8 @@ from .numbers import Draws, least_squares
 from .sheets import CLAY, Book
 
 FILE = "dryer-gas-time-order.xlsx"
+# Picked, not the first: of seeds 1 to 399, ten met the limits set for this book. The p-values of this book are
+# therefore no sample of what such data usually give.
 SEED = 18
 COUNT = 60
 FIRST, LAST = 5, 4 + COUNT  # worksheet rows of the first and the last day
@@ -27,7 +29,7 @@ NOTES = [
     ("Budget", "A straight line through all days, and a week of the weather that is typed in."),
     ("How it was made", "Gas is a straight line in temperature, humidity and ware, plus errors that keep seven tenths "
      "of the day before, as when a damper is left open for some days. A check should find that the errors are not "
-     "independent, and nothing else."),
+     "independent, and nothing else. This draw was picked from 399 because it shows that plainly."),
 ]  # fmt: skip
 
 

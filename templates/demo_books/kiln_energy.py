@@ -9,6 +9,8 @@ from .numbers import Draws, least_squares
 from .sheets import CLAY, SLATE, Book
 
 FILE = "kiln-energy-clean.xlsx"
+# Picked, not the first: of seeds 1 to 399, two met the limits set for this book (every p above 0.3, among
+# others). Its p-values are therefore no sample of what such data usually give.
 SEED = 353
 COUNT = 48
 FIRST, LAST = 5, 4 + COUNT  # worksheet rows of the first and the last firing
@@ -24,7 +26,8 @@ NOTES = [
     ("Kiln costs", "Targets and prices per kiln, and the sums that the monthly meeting looks at."),
     ("Planned firing", "A straight line through all firings, whichever kiln. Type a load and a moisture there."),
     ("How it was made", "Energy is a straight line in load and moisture with a step per kiln, plus independent errors "
-     "of one spread, near to normal. A check should find nothing against these assumptions."),
+     "of one spread, near to normal. A check should find nothing against these assumptions. "
+     "This draw was picked from 399 because it shows that plainly; most draws look less tidy."),
 ]  # fmt: skip
 
 
