@@ -196,7 +196,9 @@ def _rows(fit: Fit, flagged: Sequence[FlaggedRow]) -> Evidence:
         return Evidence("rows", question, "fact", "No row stands out.", test, "", bears_on)
     rows = ", ".join(str(f.row) for f in flagged[:4]) + (", ..." if len(flagged) > 4 else "")
     finding = f"{counted(len(flagged), 'row deserves', 'rows deserve')} a look: {rows}."
-    return Evidence("rows", question, "fact", finding, test, flagged[0].reason, bears_on)
+    first = flagged[0]
+    size = f"row {first.row}: {first.reason[:1].lower()}{first.reason[1:].partition(';')[0]}"
+    return Evidence("rows", question, "fact", finding, test, size, bears_on)
 
 
 def _named(test: str, result: Result) -> str:

@@ -1,0 +1,93 @@
+"""The fit, a line a term: estimate, from, to, then the rest; and how well it describes the response."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from sheetfuncs.check import Check
+from sheetfuncs.core.design import INTERCEPT
+from sheetfuncs.judgement.words import number
+from sheetfuncs.report import style as looks
+from sheetfuncs.report.formats import PVALUE, digits_format, estimate_format
+from sheetfuncs.report.layout import COUNT, FIRST, Head, Page
+
+_TERM = 5
+_PERCENT = 100.0
+
+
+def write_fit(page: Page, check: Check) -> None:
+    level = f"{check.settings.level * _PERCENT:.4g} %"
+    page.section(
+        "fit", "The fit",
+        f"From and to are the limits of a {level} interval that holds if the assumptions above do. Each coefficient "
+        f"says by how much {check.settings.response} changes when its predictor grows by one and the others stay.",
+    )
+    _write_terms(page, check)
+    page.gap(6.0)
+    for label, value, value_format, note in _facts(check):
+        page.put(FIRST, label, looks.TEXT, span=_TERM)
+        page.number(FIRST + _TERM, value, value_format)
+        page.put(FIRST + _TERM + 1, note, looks.QUIET_BESIDE, span=COUNT - _TERM - 1)
+        page.next()
+    for predictor, base in check.design.base_levels:
+        page.put(FIRST, f"Base level of {predictor}", looks.WRAPPED, span=_TERM)
+        page.put(FIRST + _TERM, f"{base}: the other levels are compared with it.", looks.WRAPPED,
+                 span=COUNT - _TERM)
+        page.next()
+
+
+def _write_terms(page: Page, check: Check) -> None:
+    fit = check.fit
+    labels = ("Estimate", "From", "To", "Standard error", "t", "df", "p")
+    page.table_head([
+        Head(FIRST, _TERM, "Term"),
+        *(Head(FIRST + _TERM + i, 1, label, right=True) for i, label in enumerate(labels)),
+    ])
+    low, high = fit.interval(check.settings.level)
+    for j, term in enumerate(check.design.terms):
+        error = float(fit.standard_errors[j])
+        one_format = estimate_format(float(fit.coefficients[j]), error if fit.has_error_bars else np.nan)
+        label = "Intercept" if check.design.intercept and j == 0 and term == INTERCEPT else term
+        page.put(FIRST, label, looks.WRAPPED, span=_TERM)
+        page.number(FIRST + _TERM, fit.coefficients[j], one_format, looks.NUMBER.but(bold=True))
+        page.number(FIRST + _TERM + 1, low[j], one_format)
+        page.number(FIRST + _TERM + 2, high[j], one_format)
+        if fit.has_error_bars:
+            page.number(FIRST + _TERM + 3, error, digits_format(error, 3))
+            page.number(FIRST + _TERM + 4, fit.t[j], "0.00")
+            page.number(FIRST + _TERM + 5, fit.df, "#,##0")
+            page.number(FIRST + _TERM + 6, fit.p_values[j], PVALUE)
+        page.next()
+    if not fit.has_error_bars:
+        page.put(FIRST, fit.nothing_left(), looks.WRAPPED, span=COUNT)
+        page.next()
+
+
+def _facts(check: Check) -> list[tuple[str, float, str, str]]:
+    """Label, value, format and explanation of each figure about the whole fit."""
+    fit = check.fit
+    centred = (
+        "Share of the response's variation about its mean." if check.design.intercept else
+        "Share of the response's squares about zero, as there is no intercept: not comparable with a fit that has one."
+    )
+    facts = [
+        ("Rows and coefficients", float(fit.n), "#,##0", f"{fit.p} coefficients, {fit.df:,} degrees of freedom left."),
+        ("R²", fit.r_squared, "0.0000", centred),
+    ]
+    if not fit.has_error_bars:
+        return facts
+    f, (k, df), p = fit.f_test
+    return [
+        *facts,
+        ("R², adjusted", fit.adjusted_r_squared, "0.0000", "For the number of coefficients."),
+        ("Residual standard deviation", fit.sigma, digits_format(fit.sigma, 4),
+         f"In the response's unit; the root of the residuals' squares over {fit.df:,}."),
+        ("F", f, digits_format(f, 4),
+         f"All predictors together, {k} and {df:,} degrees of freedom, {_p_text(p)}." if k else "No predictor."),
+        ("AIC", fit.aic, digits_format(fit.aic, 6), "Akaike's criterion; the error variance counts as a parameter."),
+        ("BIC", fit.bic, digits_format(fit.bic, 6), "Schwarz's criterion; the error variance counts as a parameter."),
+    ]
+
+
+def _p_text(p: float) -> str:
+    return "p < 0.001" if p < 0.001 else f"p = {number(p, 2)}"

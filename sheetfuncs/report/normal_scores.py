@@ -1,0 +1,28 @@
+"""Normal scores, and pointwise limits for a plot against them."""
+
+from __future__ import annotations
+
+from statistics import NormalDist
+
+import numpy as np
+
+_NORMAL = NormalDist()
+
+
+def normal_scores(n: int) -> np.ndarray:
+    """Expected places of n ordered standard normal values, (n,): quantiles at (i - 3/8)/(n + 1/4) (Blom 1958)."""
+    inverse = _NORMAL.inv_cdf
+    return np.array([inverse((i - 0.375) / (n + 0.25)) for i in range(1, n + 1)])
+
+
+def pointwise_limits(scores: np.ndarray, n: int, level: float = 0.95) -> tuple[np.ndarray, np.ndarray]:
+    """Limits for each single ordered value, score -/+ z * sqrt(P(1 - P)/n)/density.
+
+    The large-sample standard error of an order statistic, as used with such plots by Chambers, Cleveland, Kleiner and
+    Tukey 1983, Graphical Methods for Data Analysis (from memory). Pointwise: with many points some leave the limits.
+    """
+    z = _NORMAL.inv_cdf(0.5 + level / 2)
+    chance = np.array([_NORMAL.cdf(s) for s in scores])
+    density = np.array([_NORMAL.pdf(s) for s in scores])
+    half = z * np.sqrt(chance * (1.0 - chance) / n) / density
+    return scores - half, scores + half

@@ -1,0 +1,84 @@
+"""The decision record, which the analyst fills and a re-run keeps; and the settings and versions behind the sheet."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from datetime import datetime
+
+from sheetfuncs.check import Check, versions
+from sheetfuncs.core.fingerprint import data_fingerprint
+from sheetfuncs.judgement.words import listed
+from sheetfuncs.report import style as looks
+from sheetfuncs.report.elements import Area, Choice, Value
+from sheetfuncs.report.layout import FIRST, LAST, Page
+from sheetfuncs.report.names import DECISION
+
+# The places of the record, in order; the hidden name _sheetfuncs_decision_1 points at the cell of the first, and so on.
+DECISION_FIELDS = ("decision", "reason", "by", "date", "reviewed by")
+_LABELS = {
+    "decision": "Decision", "reason": "Reason, and limits of use", "by": "Decided by", "date": "Date",
+    "reviewed by": "Reviewed by",
+}
+_OPTIONS = ("Use it", "Use it within the limits given as reason", "Do not use it yet")
+_LABEL, _ENTRY = 3, 11
+_DATE_FORMAT = "yyyy-mm-dd"
+
+
+def write_decision(page: Page, decision: Mapping[str, Value] | None) -> None:
+    """The record; what was filled in before is written back unchanged."""
+    page.section(
+        "decision", "Decision record",
+        "Fill in the pale cells. They are kept when the check is run again on the same range.",
+    )
+    kept = decision or {}
+    for place, field in enumerate(DECISION_FIELDS):
+        value = kept.get(field)
+        number = isinstance(value, int | float) and not isinstance(value, bool)
+        look = looks.ENTRY.but(number_format=_DATE_FORMAT if field == "date" else "General", align="left")
+        page.put(FIRST, _LABELS[field], looks.TEXT.but(upright="vcenter"), span=_LABEL)
+        column = FIRST + _LABEL
+        page.put(column, value if number or value is None else str(value), look, span=_ENTRY)
+        page.ask_height(44.0 if field == "reason" else 19.0)
+        if field == "decision":
+            page.choices.append(Choice(page.row, column, _OPTIONS))
+        page.names[f"{DECISION}{place + 1}"] = "=" + Area(page.row, column, page.row, column).on(page.title)
+        page.next()
+
+
+def write_settings(
+    page: Page, check: Check, data_sheet: str, data_area: str, checked_at: datetime | None, fingerprint: str
+) -> None:
+    settings = check.settings
+    page.section(
+        "settings", "Settings and versions",
+        "What this sheet was made with. To change a setting, run the command or press the button again with the new "
+        "one: the sheet is rewritten and the decision record stays.",
+    )
+    order = settings.order or ("the rows' own order, from top to bottom")
+    lines = [
+        ("Data", f"{data_sheet}!{data_area}"),
+        ("Workbook", settings.book),
+        ("Response", settings.response),
+        ("Predictors", listed(settings.predictors)),
+        ("Dates used as predictors", listed(settings.date_predictors) if settings.date_predictors else None),
+        ("Base levels", listed([f"{base} for {name}" for name, base in check.design.base_levels]) or None
+         if check.design.base_levels else None),
+        ("Intercept", "yes" if settings.intercept else "no: the fit goes through zero"),
+        ("Time order", order),
+        ("Interval level", f"{settings.level * 100:.6g} %"),
+        ("Checked", checked_at.strftime("%Y-%m-%d %H:%M") if checked_at else None),
+        ("Computed with", ", ".join(f"{name} {version}" for name, version in versions().items())),
+        ("Fingerprint of the data", f"SHA-256 {fingerprint}"),
+    ]
+    for label, text in lines:
+        if text:
+            page.labelled(label, text, label_span=_LABEL)
+    page.put(
+        FIRST, "The fingerprint is taken over the names and the used values of response and predictors, as 8-byte "
+        "numbers, row by row: it changes if any of them does.", looks.QUIET_WRAPPED, span=LAST - FIRST + 1,
+    )
+    page.next()
+
+
+def fingerprint_of(check: Check) -> str:
+    return data_fingerprint(check.design)
