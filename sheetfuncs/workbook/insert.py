@@ -21,6 +21,7 @@ from sheetfuncs.workbook.xml import main
 
 _RELATIONSHIP_TYPE = "http://schemas.openxmlformats.org/officeDocument/2006/relationships/"
 _STYLES_TYPE = "application/vnd.openxmlformats-officedocument.spreadsheetml.styles+xml"
+_ANY_SHEET = re.compile(rb"\si\s*=")
 _FORMULA = re.compile(rb"<(?:[\w.-]+:)?f[\s/>]")
 
 
@@ -99,7 +100,7 @@ def _take_out(host: Package, book: WorkbookXml, index: int) -> None:
     kept = host.reachable("", without=[arrow])
     gone = ({part} | host.reachable(part)) - kept
     if _holds_formulas(host, part):
-        _drop_calculation_chain(host, book)
+        _drop_calculation_chain(host, book, book.sheets[index].get("sheetId", ""))
     for name in sorted(gone):
         host.remove(name)
     book.drop_names_of(index)
@@ -116,12 +117,15 @@ def _holds_formulas(host: Package, part: str) -> bool:
     return False
 
 
-def _drop_calculation_chain(host: Package, book: WorkbookXml) -> None:
+def _drop_calculation_chain(host: Package, book: WorkbookXml, sheet_id: str) -> None:
+    """Remove the order of calculation if it lists the sheet's cells; programs work it out again."""
+    listed = re.compile(rb"\si\s*=\s*[\"']" + sheet_id.encode() + rb"[\"']")
     for arrow in host.relationships(book.part):
-        if arrow.kind == "calcChain":
-            host.unrelate(book.part, arrow.id)
-            if host.find(arrow.part):
-                host.remove(arrow.part)
+        if arrow.kind == "calcChain" and (part := host.find(arrow.part)):
+            chain = host.read(part)
+            if listed.search(chain) or not _ANY_SHEET.search(chain):
+                host.unrelate(book.part, arrow.id)
+                host.remove(part)
 
 
 def _merge(host: Package, book: WorkbookXml, guest: Guest, name: str) -> None:

@@ -85,6 +85,6 @@ def _settings_text(names: Iterable[tuple[str, str]]) -> str | None:
 def _parsed(text: str) -> dict[str, Any] | None:
     try:
         value = json.loads(text)
-    except ValueError:
+    except (ValueError, RecursionError):
         return None
     return value if isinstance(value, dict) else None
