@@ -95,22 +95,26 @@ def absolute_targets() -> Parts:
 
 def unusual_places() -> Parts:
     """Parts in folders of other names."""
-    return _placed("core/book.xml", ("a/b/first.xml", "core/second.xml"), ("/a/b/first.xml", "./second.xml"))
+    return _placed(
+        "core/book.xml", ("a/b/first.xml", "core/second.xml"), ("/a/b/first.xml", "./second.xml"), "xl/styles.xml"
+    )
 
 
 def odd_spelling() -> Parts:
     """The main part beside the root, and targets that differ by case or an escaped space (ISO/IEC 29500-2)."""
-    return _placed("book.xml", ("a/b/first.xml", "second%20sheet.xml"), ("A/b/First.XML", "second%20sheet.xml"))
+    return _placed(
+        "book.xml", ("a/b/first.xml", "second%20sheet.xml"), ("A/b/First.XML", "second%20sheet.xml"), "look/deep.xml"
+    )
 
 
-def _placed(book: str, names: tuple[str, str], targets: tuple[str, str]) -> Parts:
+def _placed(book: str, names: tuple[str, str], targets: tuple[str, str], styles: str) -> Parts:
     parts = Parts()
     parts.relate("", "officeDocument", book)
     ids = [parts.relate(book, "worksheet", target) for target in targets]
     for name in names:
         parts.add(name, sheet(), SHEET_ML + "worksheet+xml")
-    parts.relate(book, "styles", "/look/../look/deep.xml")
-    parts.add("look/deep.xml", STYLES, SHEET_ML + "styles+xml")
+    parts.relate(book, "styles", f"/look/../{styles}")
+    parts.add(styles, STYLES, SHEET_ML + "styles+xml")
     parts.add(book, workbook([("Data", ids[0]), ("Notes", ids[1])]), SHEET_ML + "sheet.main+xml")
     return parts
 
@@ -200,7 +204,8 @@ def pivot_and_slicer() -> Parts:
         f'{DECLARATION}<pivotTableDefinition xmlns="{MAIN}" name="P1" cacheId="1" dataCaption="Values">'
         '<location ref="D1:E3" firstHeaderRow="1" firstDataRow="1" firstDataCol="0"/><pivotFields count="2">'
         '<pivotField showAll="0"/><pivotField dataField="1" showAll="0"/></pivotFields>'
-        '<rowItems count="1"><i/></rowItems><colItems count="1"><i/></colItems><dataFields count="1"><dataField name="Sum" fld="1"/></dataFields>'
+        '<rowItems count="1"><i/></rowItems>'
+        '<colItems count="1"><i/></colItems><dataFields count="1"><dataField name="Sum" fld="1"/></dataFields>'
         "</pivotTableDefinition>",
         SHEET_ML + "pivotTable+xml",
     )
