@@ -1,0 +1,38 @@
+"""The mean of the residuals, judged against their own scale."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from sheetfuncs.core.auxiliary import refused
+from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.results import Result, Statistic
+
+# An intercept fit leaves a mean of about 1e-16 of the residuals' standard deviation; beyond this it is not rounding.
+ZERO_BELOW = 1e-12
+
+
+def residual_mean(fit: Fit) -> Result:
+    """Mean of the residuals, in the response's units; details: mean_over_sd, its share of their standard deviation.
+
+    With an intercept it is zero by construction and tells nothing. Without one it is what it is, and no test is made
+    of it: the fit forces something else to zero.
+    """
+    with_intercept = fit.design.intercept
+    variant = "zero by construction" if with_intercept else "no intercept, so not fixed by the fit"
+    null = "" if with_intercept else "the errors average zero"
+    refusal = refused(fit, "residual_mean", {}, variant, null)
+    if refusal:
+        return refusal
+    mean = float(fit.residuals.mean())
+    spread = float(np.std(fit.residuals, ddof=1))
+    note = (
+        "An intercept takes up any mean, so this carries no information about the model."
+        if with_intercept else
+        "Without an intercept the residuals need not average zero; a mean that is large beside their spread says that "
+        "the line misses the middle of the data."
+    )
+    return Statistic(
+        method="residual_mean", args={}, variant=variant, statistic=mean, null=null, note=note,
+        details={"mean_over_sd": mean / spread},
+    )

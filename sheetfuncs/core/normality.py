@@ -1,0 +1,128 @@
+"""Normality: do the residuals look like draws from a normal curve?"""
+
+from __future__ import annotations
+
+import numpy as np
+from scipy.special import chdtrc, ndtr, ndtri
+
+from sheetfuncs.core.auxiliary import refused
+from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+
+NORMAL = "the errors are normal"
+RESIDUALS_NOTE = "Residuals are not independent draws, so p is approximate."
+SHAPIRO_FEWEST, SHAPIRO_MOST = 3, 5000
+
+# Royston 1995, Algorithm AS R94, Applied Statistics 44:547-551: polynomial coefficients, lowest power first.
+_C1 = (0.0, 0.221157, -0.147981, -2.07119, 4.434685, -2.706056)
+_C2 = (0.0, 0.042981, -0.293762, -1.752461, 5.682633, -3.582633)
+_C3 = (0.544, -0.39978, 0.025054, -6.714e-4)
+_C4 = (1.3822, -0.77857, 0.062767, -0.0020322)
+_C5 = (-1.5861, -0.31082, -0.083751, 0.0038915)
+_C6 = (-0.4803, -0.082676, 0.0030302)
+_G = (-2.273, 0.459)
+
+
+def shapiro_wilk(fit: Fit) -> Result:
+    """Shapiro-Wilk W of the residuals (Shapiro and Wilk 1965; Royston 1995, Algorithm AS R94), 3 to 5,000 rows."""
+    refusal = refused(fit, "shapiro_wilk", {}, "Royston 1995", NORMAL)
+    if refusal:
+        return refusal
+    if not SHAPIRO_FEWEST <= fit.n <= SHAPIRO_MOST:
+        return DoesNotApply(
+            method="shapiro_wilk", args={}, variant="Royston 1995", null=NORMAL,
+            reason=f"Its p-value is established for {SHAPIRO_FEWEST} to {SHAPIRO_MOST:,} rows; there are {fit.n:,}.",
+        )
+    w, p = shapiro_wilk_of(fit.residuals)
+    return Statistic(
+        method="shapiro_wilk", args={}, variant="Royston 1995", statistic=w, p=p, null=NORMAL, note=RESIDUALS_NOTE
+    )
+
+
+def shapiro_wilk_of(values: np.ndarray) -> tuple[float, float]:
+    """W and p of 3 to 5,000 values that are not all equal, by Algorithm AS R94 (with exact normal quantiles)."""
+    x = np.sort(values)
+    n = x.shape[0]
+    x = (x - x[n // 2]) / (x[-1] - x[0])
+    weights = _shapiro_weights(n)
+    left = x - x.mean()
+    along, total = float(weights @ left), float(left @ left)
+    size = float(np.sqrt(weights @ weights * total))
+    missing = (size - along) * (size + along) / size**2  # 1 - W without cancellation
+    return 1.0 - missing, _shapiro_p(max(missing, 1e-19), n)
+
+
+def _shapiro_weights(n: int) -> np.ndarray:
+    if n == 3:
+        return np.array([-np.sqrt(0.5), 0.0, np.sqrt(0.5)])
+    half = n // 2
+    m = ndtri((np.arange(1, half + 1) - 0.375) / (n + 0.25))
+    length = 2.0 * float(m @ m)
+    step = 1.0 / np.sqrt(n)
+    first = _polynomial(_C1, step) - m[0] / np.sqrt(length)
+    weights = -m
+    if n > 5:
+        second = _polynomial(_C2, step) - m[1] / np.sqrt(length)
+        scale = (length - 2 * m[0] ** 2 - 2 * m[1] ** 2) / (1 - 2 * first**2 - 2 * second**2)
+        weights = weights / np.sqrt(scale)
+        weights[:2] = first, second
+    else:
+        weights = weights / np.sqrt((length - 2 * m[0] ** 2) / (1 - 2 * first**2))
+        weights[0] = first
+    return np.concatenate([-weights, np.zeros(n % 2), weights[::-1]])
+
+
+def _shapiro_p(missing: float, n: int) -> float:
+    if n == 3:  # exact
+        return float(max(0.0, 6.0 / np.pi * (np.arcsin(np.sqrt(1.0 - missing)) - np.arcsin(np.sqrt(0.75)))))
+    y = np.log(missing)
+    if n <= 11:
+        limit = _polynomial(_G, float(n))
+        if y >= limit:
+            return 0.0
+        y = -np.log(limit - y)
+        mean, spread = _polynomial(_C3, float(n)), np.exp(_polynomial(_C4, float(n)))
+    else:
+        size = float(np.log(n))
+        mean, spread = _polynomial(_C5, size), np.exp(_polynomial(_C6, size))
+    return float(ndtr((mean - y) / spread))
+
+
+def _polynomial(coefficients: tuple[float, ...], x: float) -> float:
+    value = 0.0
+    for coefficient in reversed(coefficients):
+        value = value * x + coefficient
+    return value
+
+
+def jarque_bera(fit: Fit) -> Result:
+    """Jarque-Bera test from skewness and kurtosis of the residuals, moments with divisor n (Jarque and Bera 1980,
+    Economics Letters 6:255-259); asymptotic chi-square with 2 degrees of freedom, slow to hold for few rows."""
+    variant = "asymptotic chi-square"
+    refusal = refused(fit, "jarque_bera", {}, variant, NORMAL)
+    if refusal:
+        return refusal
+    skewness, kurtosis = shape(fit.residuals)
+    statistic = fit.n / 6.0 * (skewness**2 + (kurtosis - 3.0) ** 2 / 4.0)
+    return Statistic(
+        method="jarque_bera", args={}, variant=variant, statistic=statistic, df=2, p=float(chdtrc(2, statistic)),
+        null=NORMAL, note="The chi-square distribution is approached slowly; with few rows read p as rough.",
+        details={"skewness": skewness, "kurtosis": kurtosis},
+    )
+
+
+def shape(values: np.ndarray) -> tuple[float, float]:
+    """Skewness and kurtosis (3 is normal), moments about the mean with divisor n."""
+    left = values - values.mean()
+    left = left / np.abs(left).max()
+    second = float(np.mean(left**2))
+    return float(np.mean(left**3)) / second**1.5, float(np.mean(left**4)) / second**2
+
+
+def normal_scores(values: np.ndarray) -> np.ndarray:
+    """Where each value's rank would lie on a standard normal curve, (n,): the quantile of (rank - 3/8)/(n + 1/4)
+    (Blom 1958, Statistical Estimates and Transformed Beta-Variables). Equal values share their mean rank."""
+    _, place, count = np.unique(values, return_inverse=True, return_counts=True)
+    last = np.cumsum(count)
+    rank = (last - (count - 1) / 2.0)[place]
+    return ndtri((rank - 0.375) / (values.shape[0] + 0.25))

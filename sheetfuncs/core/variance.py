@@ -1,0 +1,50 @@
+"""Constant variance: are the errors equally wide whatever the predictors are?"""
+
+from __future__ import annotations
+
+from scipy.special import chdtrc
+
+from sheetfuncs.core.auxiliary import refused
+from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+
+CONSTANT = "the errors have the same variance whatever the predictors are"
+
+
+def breusch_pagan(fit: Fit, *, studentize: bool = True) -> Result:
+    """Breusch-Pagan test with all predictors of the design as possible causes of unequal variance.
+
+    studentize True: n R2 of the squared residuals on the design (Koenker 1981, J. Econometrics 17:107-112), which
+    does not lean on normal errors. False: half the explained sum of squares of e^2/sigma^2 (Breusch and Pagan 1979,
+    Econometrica 47:1287-1294; sigma^2 = rss/n), which does. Chi-square with p - 1 degrees of freedom. Without an
+    intercept the auxiliary regression has no constant either.
+    """
+    args = {"studentize": studentize, "z": "all regressors"}
+    variant = f"{'studentized' if studentize else 'original'}, on all predictors"
+    refusal = refused(fit, "breusch_pagan", args, variant, CONSTANT)
+    if refusal:
+        return refusal
+    df = fit.basis.rank - 1
+    if df < 1:
+        return DoesNotApply(
+            method="breusch_pagan", args=args, variant=variant, null=CONSTANT,
+            reason="The test needs at least one predictor beside the intercept"
+                   + ("." if fit.design.intercept else ", or two predictors without one."),
+        )
+    ratio = fit.residuals**2 / (fit.rss / fit.n) - 1.0
+    along = fit.basis.q.T @ ratio
+    part = float(along @ along)
+    total = float(ratio @ ratio)
+    if total == 0.0:
+        return DoesNotApply(
+            method="breusch_pagan", args=args, variant=variant, null=CONSTANT,
+            reason="All residuals have the same size, so their squares show no variation to explain.",
+        )
+    statistic = fit.n * part / total if studentize else part / 2.0
+    note = "" if fit.design.intercept else "Auxiliary regression without a constant, as the fit has none."
+    return Statistic(
+        method="breusch_pagan", args=args, variant=variant, statistic=statistic, df=df,
+        p=float(chdtrc(df, statistic)), null=CONSTANT, note=note,
+    )
+
+
