@@ -85,7 +85,7 @@ def _mean(fit: Fit, result: Result) -> Evidence:
     if fit.design.intercept:
         return Evidence(
             "mean", question, "fact", "Zero by construction: the intercept takes up any mean.",
-            "Residual mean, relative to the residuals' scale", f"mean {number(result.statistic or 0.0, 2)}", bears_on,
+            "Residual mean, relative to the residuals' scale", "", bears_on,
         )
     share = abs(result.statistic or 0.0) / fit.sigma
     return Evidence(

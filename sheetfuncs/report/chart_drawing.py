@@ -62,7 +62,8 @@ def _series(title: str, series: Series, kind: str) -> dict[str, Any]:
 def _look(look: str, kind: str) -> dict[str, Any]:
     if look in ("columns", "flagged columns"):
         colour = looks.SMOOTH if look.startswith("flagged") else looks.POINTS
-        return {"fill": {"color": colour}, "border": {"none": True}, "gap": 150 if kind == "bars" else 60, "overlap": 100}
+        gap = 150 if kind == "bars" else 60
+        return {"fill": {"color": colour}, "border": {"none": True}, "gap": gap, "overlap": 100}
     if look == "points":
         return {"marker": _marker("circle", 5, looks.POINTS, 30), "line": {"none": True}}
     if look == "flagged":
@@ -74,7 +75,7 @@ def _look(look: str, kind: str) -> dict[str, Any]:
 
 def _marker(shape: str, size: int, colour: str, transparency: int) -> dict[str, Any]:
     return {
-        "type": shape, "size": size, "border": {"none": True},
+        "type": shape, "size": size, "border": {"color": "#FFFFFF", "width": 0.5},
         "fill": {"color": colour, "transparency": transparency},
     }
 

@@ -12,21 +12,21 @@ from sheetfuncs.report.chart_residuals import form_chart, normality_chart, varia
 from sheetfuncs.report.chart_rows import rows_chart, separation_chart
 from sheetfuncs.report.elements import Area
 from sheetfuncs.report.figures import FigureBlock
-from sheetfuncs.report.first_screen import finding_look
+from sheetfuncs.report.first_screen import finding_look, sentence
 from sheetfuncs.report.layout import COUNT, FIRST, ROW_POINTS, Page
 from sheetfuncs.report.sketch import Sketch
 
 CHART_ROWS = 12
 CHART_PIXELS = int(CHART_ROWS * ROW_POINTS * 96 / 72) - 4
 _WIDTH = COUNT // 2
-_PAIRS_A_PAGE = 2
+FURTHER_APART = "Independence, further apart"
 
 # Assumption, heading, chart; two of a row of panels belong together where they can.
 PANELS: tuple[tuple[str, str, Callable[[Check], Sketch | None]], ...] = (
     ("form", "Form and mean", form_chart),
     ("constant variance", "Constant variance", variance_chart),
     ("independence", "Independence", order_chart),
-    ("independence", "Independence, further apart", autocorrelation_chart),
+    ("independence", FURTHER_APART, autocorrelation_chart),
     ("normality", "Normality", normality_chart),
     ("rows", "Single rows", rows_chart),
     ("collinearity", "Collinearity", separation_chart),
@@ -43,7 +43,6 @@ class Panel:
 
 def reserve_panels(page: Page, check: Check) -> list[Panel]:
     """Write the panels' texts and keep room for the charts."""
-    page.breaks.append(page.row)
     page.section("charts", "Charts")
     sketches = [(name, title, sketch) for name, title, draw in PANELS if (sketch := draw(check)) is not None]
     if not sketches:
@@ -52,30 +51,35 @@ def reserve_panels(page: Page, check: Check) -> list[Panel]:
         return []
     panels: list[Panel] = []
     for start in range(0, len(sketches), 2):
-        if start and start // 2 % _PAIRS_A_PAGE == 0:
-            page.breaks.append(page.row - 1)
         panels += _write_row(page, check, sketches[start:start + 2])
     return panels
 
 
 def _write_row(page: Page, check: Check, sketches: Sequence[tuple[str, str, Sketch]]) -> list[Panel]:
+    top = page.row
     findings = {evidence.assumption: evidence for evidence in check.evidence}
     columns = [FIRST + place * _WIDTH for place in range(len(sketches))]
     for column, (_, title, _) in zip(columns, sketches, strict=True):
         page.put(column, title, looks.STRONG, span=_WIDTH)
     page.next()
-    for column, (assumption, _, _) in zip(columns, sketches, strict=True):
+    for column, (assumption, title, _) in zip(columns, sketches, strict=True):
         evidence = findings[assumption]
-        page.put(column, evidence.finding, finding_look(evidence).but(bold=False), span=_WIDTH)
+        if title == FURTHER_APART:  # its neighbour has said the finding
+            page.put(column, sentence(evidence.size), looks.WRAPPED, span=_WIDTH)
+        else:
+            page.put(column, evidence.finding, finding_look(evidence).but(bold=False), span=_WIDTH)
     page.next()
     first, last = page.row, page.row + CHART_ROWS - 1
     for row in range(first, last + 1):
         page.heights[row] = ROW_POINTS  # said aloud, since a host's own default may differ
     page.row = last + 1
-    for column, (_, _, sketch) in zip(columns, sketches, strict=True):
-        page.put(column, sketch.caption, looks.QUIET_WRAPPED, span=_WIDTH)
+    for column, (assumption, _, sketch) in zip(columns, sketches, strict=True):
+        bears_on = findings[assumption].bears_on
+        at_stake = f" At stake: {bears_on[:1].lower()}{bears_on[1:]}"
+        page.put(column, sketch.caption + at_stake, looks.QUIET_WRAPPED, span=_WIDTH)
     page.next()
-    page.gap(8.0)
+    page.kept.append((top, page.row - 1))
+    page.gap(6.0)
     return [
         Panel(sketch, Area(first, column, last, column + _WIDTH - 1))
         for column, (_, _, sketch) in zip(columns, sketches, strict=True)

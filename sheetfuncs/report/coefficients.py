@@ -84,8 +84,8 @@ def _facts(check: Check) -> list[tuple[str, float, str, str]]:
          f"In the response's unit; the root of the residuals' squares over {fit.df:,}."),
         ("F", f, digits_format(f, 4),
          f"All predictors together, {k} and {df:,} degrees of freedom, {_p_text(p)}." if k else "No predictor."),
-        ("AIC", fit.aic, digits_format(fit.aic, 6), "Akaike's criterion; the error variance counts as a parameter."),
-        ("BIC", fit.bic, digits_format(fit.bic, 6), "Schwarz's criterion; the error variance counts as a parameter."),
+        ("AIC", fit.aic, digits_format(fit.aic, 5), "Akaike's criterion; the error variance counts as a parameter."),
+        ("BIC", fit.bic, digits_format(fit.bic, 5), "Schwarz's criterion; the error variance counts as a parameter."),
     ]
 
 

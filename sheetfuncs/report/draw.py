@@ -16,6 +16,7 @@ from xlsxwriter.worksheet import Worksheet
 from sheetfuncs.check import Check
 from sheetfuncs.report.chart_drawing import insert_chart
 from sheetfuncs.report.elements import Cell, SheetPlan, Value
+from sheetfuncs.report.paging import MARGIN_BOTTOM, MARGIN_LEFT_RIGHT, MARGIN_TOP
 from sheetfuncs.report.plan import plan_sheet
 from sheetfuncs.report.style import FONT, INK, Style
 
@@ -154,7 +155,7 @@ def _set_page(sheet: Worksheet, plan: SheetPlan) -> None:
     sheet.hide_gridlines(2)
     sheet.set_landscape()
     sheet.set_paper(_PAPER_A4)
-    sheet.set_margins(left=0.45, right=0.45, top=0.5, bottom=0.6)
+    sheet.set_margins(left=MARGIN_LEFT_RIGHT, right=MARGIN_LEFT_RIGHT, top=MARGIN_TOP, bottom=MARGIN_BOTTOM)
     sheet.fit_to_pages(1, 0)
     sheet.print_area(0, 0, plan.print_rows - 1, plan.last_column - 1)
     sheet.set_h_pagebreaks(list(plan.breaks))

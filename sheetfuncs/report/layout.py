@@ -21,6 +21,8 @@ _LINE, _PADDING = 1.27, 3.6
 _CELL_PADDING = 10.0
 _INDENT = 9.0
 MISSING = "–"
+# A heading, its note, a gap, column labels and two lines of the table stay on one printed page.
+_TOGETHER = 7
 
 
 @dataclass(frozen=True)
@@ -46,7 +48,7 @@ class Page:
         self.heights: dict[int, float] = {}
         self.names: dict[str, str] = {}
         self.anchors: dict[str, int] = {}
-        self.breaks: list[int] = []
+        self.kept: list[tuple[int, int]] = []
 
     def put(
         self, column: int, value: Value, style: Style = looks.TEXT, *, span: int = 1, formula: str | None = None,
@@ -82,6 +84,7 @@ class Page:
 
     def section(self, anchor: str, title: str, note: str = "") -> None:
         """Heading of a section, with a quiet sentence under it."""
+        self.kept.append((self.row, self.row + _TOGETHER))
         self.gap(16.0)
         self.anchors[anchor] = self.row
         self.put(FIRST, title, looks.HEADING.but(below=looks.HAIRLINE), span=COUNT)
@@ -90,7 +93,7 @@ class Page:
         if note:
             self.put(FIRST, note, looks.QUIET_WRAPPED, span=COUNT)
             self.next()
-        self.gap(4.0)
+            self.gap(4.0)
 
     def subheading(self, title: str) -> None:
         self.gap(6.0)
@@ -110,6 +113,7 @@ class Page:
             if column not in covered:
                 self.put(column, None, looks.COLUMN_HEAD)
         self.next()
+        self.gap(2.0)
 
     def labelled(self, label: str, text: str, *, label_span: int = 3, style: Style = looks.WRAPPED) -> None:
         """A quiet label and a text beside it, on a row of their own."""

@@ -13,6 +13,7 @@ from sheetfuncs.report.first_screen import what_was_fitted, write_first_screen, 
 from sheetfuncs.report.layout import COLUMN_PIXELS, FIRST, LAST, MARGIN_PIXELS, Page
 from sheetfuncs.report.ledger import write_ledger
 from sheetfuncs.report.names import settings_to_names
+from sheetfuncs.report.paging import page_breaks
 from sheetfuncs.report.record import fingerprint_of, write_decision, write_settings
 from sheetfuncs.report.reviewer import reserve_cross_check, why_no_copy, write_copy, write_cross_check
 from sheetfuncs.report.rows import write_rows
@@ -61,7 +62,7 @@ def _finished(page: Page, check: Check, settings: dict, printed: int, data_sheet
     return SheetPlan(
         title=page.title, cells=tuple(page.cells), columns=tuple(page.columns), charts=tuple(page.charts),
         choices=tuple(page.choices), widths=widths, heights=dict(page.heights), names=dict(page.names),
-        settings=settings, last_column=LAST, print_rows=printed, breaks=tuple(page.breaks), frozen_rows=2,
-        footer=f"{page.title}",
+        settings=settings, last_column=LAST, print_rows=printed,
+        breaks=page_breaks(page.heights, printed, page.kept, page.heights[1]), frozen_rows=2, footer=page.title,
         description={"title": page.title, "subject": what_was_fitted(check), "data": data_sheet},
     )

@@ -69,7 +69,7 @@ def reserve_cross_check(page: Page, check: Check) -> int:
     """Heading and room for the comparison; returns its first row."""
     note = (
         "For a reviewer without Python. The formulas use the spreadsheet's own functions on a copy of the used rows, "
-        "which stands at the end of this sheet. They recalculate; the figures beside them are the ones this sheet reports."
+        "which stands at the end of this sheet. They recalculate; the figures beside them are what this sheet reports."
     )
     reason = why_no_copy(check)
     page.section("cross-check", "Cross-check in native formulas", "" if reason else note)
@@ -78,7 +78,7 @@ def reserve_cross_check(page: Page, check: Check) -> int:
         page.next()
         return 0
     start = page.row
-    page.next(1 + len(_lines(check, None)))
+    page.next(2 + len(_lines(check, None)))
     return start
 
 

@@ -11,9 +11,10 @@ from sheetfuncs.report import style as looks
 from sheetfuncs.report.formats import digits_format
 from sheetfuncs.report.layout import COUNT, FIRST, Head, Page
 
-# Below this a partial correlation explains less than a tenth of what widens an interval; naming it would mislead.
-_NAMED_FROM = 0.3
+# Below this a partial correlation widens an interval by less than a sixth; naming the predictor would mislead.
+_NAMED_FROM = 0.5
 _MOST_NAMED = 3
+_WIDER = 1.05
 _NAME = 5
 
 
@@ -32,7 +33,11 @@ def write_separation(page: Page, check: Check) -> None:
         page.put(FIRST, inflation.predictor, looks.WRAPPED, span=_NAME)
         page.number(FIRST + _NAME, inflation.vif, digits_format(inflation.vif, 3))
         page.number(FIRST + _NAME + 1, inflation.df, "0")
-        text = f"Its interval is {times(inflation.vif_per_df)} as wide as it would be if the predictors were unrelated"
+        wider = inflation.vif_per_df
+        text = (
+            f"Its interval is {times(wider)} as wide as it would be if the predictors were unrelated" if wider >= _WIDER
+            else "Its interval is hardly wider than it would be if the predictors were unrelated"
+        )
         named = partners.get(inflation.predictor, [])
         page.put(
             FIRST + _NAME + 2, text + (f"; it moves with {listed(named)}." if named else "."),
