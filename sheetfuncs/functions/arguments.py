@@ -8,7 +8,9 @@ from dataclasses import dataclass
 from numbers import Real
 from typing import Literal
 
-from sheetfuncs.cells.block import ERROR_TEXTS, Block
+import numpy as np
+
+from sheetfuncs.cells.block import ERROR_TEXTS, Block, Kind
 from sheetfuncs.errors import ArgumentError
 
 Option = float | int | bool | str | None
@@ -87,15 +89,22 @@ def _single_cell(argument: Argument, given: object) -> object:
     if isinstance(given, Block):
         if (given.row_count, given.column_count) != (1, 1):
             raise _refused(argument, f"a range of {given.row_count} x {given.column_count} cells")
-        text = given.text(0, 0)
-        number = float(given.numbers[0, 0])
-        return text if text is not None else None if math.isnan(number) else number
+        return _cell(given)
     if isinstance(given, list | tuple):
         row = given[0] if len(given) == 1 else None
         if not isinstance(row, list | tuple) or len(row) != 1:
             raise _refused(argument, "a range of several cells")
         return row[0]
     return given
+
+
+def _cell(block: Block) -> object:
+    kind, number = block.kinds[0, 0], float(block.numbers[0, 0])
+    if kind in (Kind.TEXT, Kind.ERROR):
+        return block.text(0, 0)
+    if kind == Kind.BOOLEAN:
+        return bool(number)
+    return None if kind == Kind.BLANK else number
 
 
 def _number(argument: Argument, value: object) -> float:
@@ -119,7 +128,7 @@ def _whole_number(argument: Argument, value: object) -> int:
 
 
 def _yes_or_no(argument: Argument, value: object) -> bool:
-    if isinstance(value, Real) and value in (0, 1):
+    if isinstance(value, Real | np.bool_) and value in (0, 1):
         return bool(value)
     raise _refused(argument, _shown(value))
 
@@ -161,7 +170,7 @@ def _error_given(argument: Argument, error: str) -> ArgumentError:
 
 
 def _shown(value: object) -> str:
-    if isinstance(value, bool):
+    if isinstance(value, bool | np.bool_):
         return "TRUE" if value else "FALSE"
     if isinstance(value, str):
         return f'the text "{value if len(value) <= 40 else value[:37] + "..."}"'

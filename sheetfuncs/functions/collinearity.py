@@ -29,8 +29,11 @@ def _the_one(inflation: Sequence[Inflation], wanted: Option) -> Inflation:
             return inflation[matching[0]]
     elif isinstance(wanted, int) and 1 <= wanted <= len(names):
         return inflation[wanted - 1]
+    shown = f'"{wanted}"' if isinstance(wanted, str) else wanted
     raise ArgumentError(
-        f"There is no single predictor {wanted!r}: give one of {', '.join(names)}, or a place from 1 to {len(names)}."
+        f"There is no predictor {shown}: give a place from 1 to {len(names)}, or one of {', '.join(names)}."
+        if len(set(names)) == len(names) or not isinstance(wanted, str) else
+        f"Several predictors have the header {shown}: give the place of the one that is wanted, from 1 to {len(names)}."
     )
 
 
@@ -46,6 +49,6 @@ FUNCTIONS = (
                                   "one below the other.", "column", optional=True),
             INTERCEPT,
         ),
-        "column", "one row a predictor, or one number where a predictor is named", _inflation,
+        "column", "one column, a row a predictor; one number where a predictor is named", _inflation,
     ),
 )

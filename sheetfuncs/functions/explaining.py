@@ -4,8 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-import numpy as np
-
+from sheetfuncs.core.fit import Fit
 from sheetfuncs.errors import SheetfuncsError
 from sheetfuncs.functions.declaration import Call, CellResult
 from sheetfuncs.functions.regressions import Regression
@@ -25,18 +24,18 @@ def explain_regression(call: Call) -> CellResult:
 
 def _explain(regression: Regression) -> str:
     fit = regression.fit
-    nothing_left = fit.nothing_left()
-    parts = [nothing_left or "ok", _left_out(regression)]
-    alone = np.flatnonzero(fit.fits_itself)
-    if alone.size and not nothing_left:
-        rows = _listed([f"row {row}" for row in fit.design.rows[alone].tolist()])
-        parts.append(f"Leverage 1, so that nothing can be tested there: {rows}.")
-    return " ".join(_joined(parts))
+    if fit.nothing_left():
+        left_out = _left_out(regression)
+        return fit.nothing_left() + (f" {left_out}." if left_out else "")
+    remarks = [part for part in (_left_out(regression), _alone(fit)) if part]
+    return "; ".join(["ok", *remarks]) + ("." if remarks else "")
 
 
-def _joined(parts: Sequence[str]) -> list[str]:
-    kept = [part for part in parts if part]
-    return [kept[0] + ";", *kept[1:]] if kept[0] == "ok" and len(kept) > 1 else kept
+def _alone(fit: Fit) -> str:
+    rows = fit.design.rows[fit.fits_itself].tolist()
+    if not rows:
+        return ""
+    return f"nothing can be tested where a row alone decides its fitted value (leverage 1): {_listed(_rows(rows))}"
 
 
 def _left_out(regression: Regression) -> str:
@@ -44,8 +43,12 @@ def _left_out(regression: Regression) -> str:
     if not ledger.excluded:
         return ""
     count, total = len(ledger.excluded), len(ledger.excluded) + len(ledger.used)
-    rows = _listed([f"row {row.row} ({row.reason})" for row in ledger.excluded[: SHOWN_ROWS + 1]], count)
-    return f"{count} of {total} rows left out: {rows}."
+    rows = _listed([f"row {row.row} ({row.reason})" for row in ledger.excluded[:SHOWN_ROWS]], count)
+    return f"{count} of {total} rows left out: {rows}"
+
+
+def _rows(rows: Sequence[int]) -> list[str]:
+    return [f"row {row}" for row in rows]
 
 
 def _listed(items: Sequence[str], count: int | None = None) -> str:

@@ -53,7 +53,7 @@ FUNCTIONS = (
                                       "independence are assumed.", ("ordinary",)),
             LEVEL,
         ),
-        "table", "one row a term, 7 columns", _coefficients,
+        "table", "a table, one row a term", _coefficients,
         ("term", "estimate", "error", "t", "p", "low", "high"),
     ),
     WorksheetFunction(
@@ -82,7 +82,7 @@ FUNCTIONS = (
             LEVEL,
             *on_rows()[2:],
         ),
-        "table", "as high as the range `at`, 5 columns", _predict, COLUMNS,
+        "table", "a table, as high as the range to predict at", _predict, COLUMNS,
     ),
     WorksheetFunction(
         "FIT_WHY", GROUP,

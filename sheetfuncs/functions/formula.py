@@ -108,7 +108,7 @@ def _split_arguments(rest: str, formula: str) -> tuple[list[str], str]:
         kind, place = str(match.lastgroup), match.end()
         depth += (kind == "open") - (kind == "close")
         if depth:
-            tokens.append((kind, match[0]))
+            tokens.append((kind if depth == 1 else "inner", match[0]))
     if rest[place:].strip():
         raise _calculation(rest[place:].strip(), formula)
     separators = {token for kind, token in tokens if kind == "separator"}

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import textwrap
 
-from sheetfuncs.functions.arguments import Argument, allowed
+from sheetfuncs.functions.arguments import Argument
 from sheetfuncs.functions.declaration import WorksheetFunction
 from sheetfuncs.functions.evaluate import find_function
 from sheetfuncs.functions.registry import REGISTRY
@@ -55,10 +55,9 @@ def _columns(function: WorksheetFunction) -> str:
 
 
 def _brackets(argument: Argument) -> str:
-    if not argument.optional:
-        return ""
-    return " (may be omitted)" if argument.kind == "range" else f" (may be omitted; {allowed(argument)})"
+    return " (may be omitted)" if argument.optional else ""
 
 
 def _wrapped(text: str, first: str = "", rest: str = "") -> list[str]:
-    return textwrap.wrap(text, WIDTH, initial_indent=first, subsequent_indent=rest, break_long_words=False)
+    return textwrap.wrap(text, WIDTH, initial_indent=first, subsequent_indent=rest, break_long_words=False,
+                         break_on_hyphens=False)

@@ -60,14 +60,14 @@ class Recent:
     """A store of recent results by key, bounded in bytes, that several threads may use. Refusals are kept too."""
 
     def __init__(self, max_bytes: int = MAX_BYTES):
-        self._max_bytes = max_bytes
+        self._limit = max_bytes
         self._found: OrderedDict[bytes, tuple[Found, int]] = OrderedDict()
-        self._bytes = 0
+        self._size = 0
         self._lock = Lock()
 
     @property
-    def bytes(self) -> int:
-        return self._bytes
+    def size(self) -> int:
+        return self._size
 
     def __len__(self) -> int:
         return len(self._found)
@@ -81,18 +81,18 @@ class Recent:
 
     def put(self, key: bytes, found: Found) -> None:
         size = 2_000 if isinstance(found, SheetfuncsError) else found.size
-        if size > self._max_bytes:
+        if size > self._limit:
             return
         with self._lock:
-            self._bytes += size - self._found.pop(key, (None, 0))[1]
+            self._size += size - self._found.pop(key, (None, 0))[1]
             self._found[key] = found, size
-            while self._bytes > self._max_bytes:
-                self._bytes -= self._found.popitem(last=False)[1][1]
+            while self._size > self._limit:
+                self._size -= self._found.popitem(last=False)[1][1]
 
     def clear(self) -> None:
         with self._lock:
             self._found.clear()
-            self._bytes = 0
+            self._size = 0
 
 
 RECENT = Recent()
@@ -150,7 +150,7 @@ def content_key(blocks: Sequence[Block | None], *options: object) -> bytes:
 
 def _bytes(array: np.ndarray) -> memoryview:
     """The array's bytes, column after column, whatever its layout; without a copy for blocks read from rows."""
-    return memoryview(np.ascontiguousarray(array.T)).cast("B") if array.size else memoryview(b"")
+    return np.ascontiguousarray(array.T).data.cast("B") if array.size else memoryview(b"")
 
 
 def _recent_or(key: bytes, compute: Callable[[], Found]) -> Found:
