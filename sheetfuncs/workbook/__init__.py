@@ -8,6 +8,11 @@ from typing import Any
 _HOME = {
     "Insertion": "insert",
     "insert_sheet": "insert",
+    "insert_in_place": "in_place",
+    "keep_for_undo": "in_place",
+    "undo": "in_place",
+    "Undone": "in_place",
+    "opened_by": "locks",
     "OurSheet": "settings",
     "find_our_sheets": "settings",
     "settings_from_names": "settings",

@@ -9,7 +9,7 @@ from lxml import etree
 from sheetfuncs.errors import SheetNameError, WorkbookFormatError
 from sheetfuncs.workbook.formats import workbook_part
 from sheetfuncs.workbook.package import Package
-from sheetfuncs.workbook.xml import OFFICE_RELATIONSHIPS, child, children, ensure_child, main
+from sheetfuncs.workbook.xml import OFFICE_RELATIONSHIPS, child, children, ensure_child, integer, main
 
 _ORDER = (
     "fileVersion", "fileSharing", "workbookPr", "workbookProtection", "bookViews", "sheets", "functionGroups",
@@ -77,7 +77,7 @@ class WorkbookXml:
 
     def insert(self, index: int, name: str, relationship_id: str) -> None:
         """List a new sheet at a place; whatever counts sheets by place (names, windows) moves along."""
-        ids = [int(sheet.get("sheetId", "0")) for sheet in self.sheets]
+        ids = [integer(sheet, "sheetId") for sheet in self.sheets]
         new_id = max(ids) + 1
         if new_id > _MOST_ID:
             new_id = next(number for number in range(1, _MOST_ID) if number not in set(ids))
@@ -97,17 +97,17 @@ class WorkbookXml:
     def active(self) -> set[int]:
         """The sheets that the windows show on opening."""
         views = children(child(self.root, "bookViews"), "workbookView")
-        return {int(view.get("activeTab", "0")) for view in views} or {0}
+        return {integer(view, "activeTab") for view in views} or {0}
 
     def defined_names(self) -> list[DefinedName]:
         found = []
         for element in children(child(self.root, "definedNames"), "definedName"):
-            local = element.get("localSheetId")
+            sheet = None if element.get("localSheetId") is None else integer(element, "localSheetId")
             attributes = {
                 str(key): str(value) for key, value in element.attrib.items() if key not in ("name", "localSheetId")
             }
             name = element.get("name", "")
-            found.append(DefinedName(name, element.text or "", int(local) if local else None, attributes))
+            found.append(DefinedName(name, element.text or "", sheet, attributes))
         return found
 
     def define(self, names: list[DefinedName]) -> None:
@@ -143,6 +143,5 @@ class WorkbookXml:
 
 
 def _shift(element: etree._Element, attribute: str, index: int) -> None:
-    value = element.get(attribute)
-    if value is not None and int(value) >= index:
-        element.set(attribute, str(int(value) + 1))
+    if element.get(attribute) is not None and integer(element, attribute) >= index:
+        element.set(attribute, str(integer(element, attribute) + 1))

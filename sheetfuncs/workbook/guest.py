@@ -17,7 +17,7 @@ from sheetfuncs.workbook.book import DefinedName, WorkbookXml
 from sheetfuncs.workbook.package import Package, Relationship, relationships_part, resolve
 from sheetfuncs.workbook.references import rename_sheet
 from sheetfuncs.workbook.styles import StyleMerge
-from sheetfuncs.workbook.xml import PACKAGE_RELATIONSHIPS, Document, child, children, graft, main
+from sheetfuncs.workbook.xml import PACKAGE_RELATIONSHIPS, Document, child, children, graft, integer, main
 
 _DIFFERENTIAL = (
     "dxfId", "dataDxfId", "headerRowDxfId", "totalsRowDxfId", "headerRowBorderDxfId", "tableBorderDxfId",
@@ -144,11 +144,21 @@ def _inline_strings(sheet: etree._Element, shared: Document | None) -> None:
         if cell.get("t") != "s":
             continue
         value = child(cell, "v")
-        assert value is not None
-        inline = graft(cell, items[int(value.text or "0")])
+        if value is None:
+            continue
+        inline = graft(cell, _shared_item(items, value.text or ""))
         inline.tag = main("is")
         cell.remove(value)
         cell.set("t", "inlineStr")
+
+
+def _shared_item(items: list[etree._Element], place: str) -> etree._Element:
+    try:
+        return items[int(place)]
+    except (ValueError, IndexError):
+        raise WorkbookFormatError(
+            f"The sheet to insert uses a shared string {place[:20]!r} that is not there."
+        ) from None
 
 
 def _unselect(sheet: etree._Element) -> None:
@@ -165,14 +175,12 @@ def _unselect(sheet: etree._Element) -> None:
 def _map_formats(root: etree._Element, styles: StyleMerge) -> None:
     for element in root.iter(main("c"), main("row"), main("col")):
         attribute = "style" if element.tag == main("col") else "s"
-        place = element.get(attribute)
-        if place is not None:
-            element.set(attribute, str(styles.cell_format(int(place))))
+        if element.get(attribute) is not None:
+            element.set(attribute, str(styles.cell_format(integer(element, attribute))))
     for element in root.iter(main("*")):
         for attribute in _DIFFERENTIAL:
-            place = element.get(attribute)
-            if place is not None:
-                element.set(attribute, str(styles.differential(int(place))))
+            if element.get(attribute) is not None:
+                element.set(attribute, str(styles.differential(integer(element, attribute))))
 
 
 def _rename_in(root: etree._Element, old: str, new: str) -> None:

@@ -17,7 +17,7 @@ from sheetfuncs.workbook.properties import list_sheet
 from sheetfuncs.workbook.saving import written_beside
 from sheetfuncs.workbook.styles import StyleMerge, minimal_styles
 from sheetfuncs.workbook.titles import check_title
-from sheetfuncs.workbook.xml import main
+from sheetfuncs.workbook.xml import integer, main
 
 _RELATIONSHIP_TYPE = "http://schemas.openxmlformats.org/officeDocument/2006/relationships/"
 _STYLES_TYPE = "application/vnd.openxmlformats-officedocument.spreadsheetml.styles+xml"
@@ -160,7 +160,7 @@ def _taken_by_tables(host: Package, book: WorkbookXml) -> tuple[set[int], set[st
     tables = [root for root in roots if root.tag == main("table")]
     names = {table.get(key, "").casefold() for table in tables for key in ("name", "displayName")}
     names |= {name.name.casefold() for name in book.defined_names() if name.sheet is None}
-    return {int(table.get("id", "0")) for table in tables}, names
+    return {integer(table, "id") for table in tables}, names
 
 
 _TABLE_TYPE = "application/vnd.openxmlformats-officedocument.spreadsheetml.table+xml"

@@ -11,7 +11,18 @@ from collections.abc import Iterable
 from lxml import etree
 
 from sheetfuncs.errors import WorkbookFormatError
-from sheetfuncs.workbook.xml import Document, child, children, copied, ensure_child, graft, main, parse, same_key
+from sheetfuncs.workbook.xml import (
+    Document,
+    child,
+    children,
+    copied,
+    ensure_child,
+    graft,
+    integer,
+    main,
+    parse,
+    same_key,
+)
 
 _ORDER = (
     "numFmts", "fonts", "fills", "borders", "cellStyleXfs", "cellXfs", "cellStyles", "dxfs", "tableStyles", "colors",
@@ -85,7 +96,7 @@ class StyleMerge:
         self._dxfs = _Shelf(host.root, "dxfs")
         self._numbers = _NumberFormats(host.root)
         self._normal = _normal_style(host.root, self._style_xfs.count)
-        self._host_normal = children(child(host.root, "cellStyleXfs"), "xf")[self._normal]
+        self._host_normal = _item(child(host.root, "cellStyleXfs"), self._normal, "cell style")
         self._guest_codes = {
             number.get("numFmtId", ""): number.get("formatCode", "")
             for number in children(child(guest.root, "numFmts"), "numFmt")
@@ -125,7 +136,7 @@ class StyleMerge:
             ("fillId", "fills", self._fills),
             ("borderId", "borders", self._borders),
         ):
-            item = copied(_item(child(self._guest, tag), int(xf.get(attribute, "0")), tag))
+            item = copied(_item(child(self._guest, tag), integer(xf, attribute), tag))
             for scheme in children(item, "scheme"):
                 item.remove(scheme)  # a theme font would turn into the host's, and widths were drawn for this one
             xf.set(attribute, str(shelf.place(item)))
@@ -157,7 +168,7 @@ class _NumberFormats:
         self.root = root
         self.added = 0
         self._ids: dict[str, str] = {}
-        used = {int(element.get("numFmtId", "0")) for element in root.iter(main("numFmt"), main("xf"))}
+        used = {integer(element, "numFmtId") for element in root.iter(main("numFmt"), main("xf"))}
         self._next = max([_FIRST_CUSTOM - 1, *used]) + 1
         for element in children(child(root, "numFmts"), "numFmt"):
             self._ids.setdefault(element.get("formatCode", ""), element.get("numFmtId", "0"))
@@ -188,8 +199,8 @@ class _NumberFormats:
 def _normal_style(root: etree._Element, count: int) -> int:
     """The place of the style named Normal, whatever its name in the host's language."""
     for style in children(child(root, "cellStyles"), "cellStyle"):
-        if style.get("builtinId") == "0" and int(style.get("xfId", "0")) < count:
-            return int(style.get("xfId", "0"))
+        if style.get("builtinId") == "0" and integer(style, "xfId") < count:
+            return integer(style, "xfId")
     return 0
 
 
@@ -198,4 +209,4 @@ def _item(container: etree._Element | None, place: int, what: str) -> etree._Ele
     for index, item in enumerate(items):
         if index == place:
             return item
-    raise WorkbookFormatError(f"The sheet to insert uses {what} {place}, which its workbook does not have.")
+    raise WorkbookFormatError(f"A sheet uses {what} {place}, which its workbook does not have; the file is damaged.")

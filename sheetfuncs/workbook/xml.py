@@ -71,6 +71,19 @@ def main(tag: str) -> str:
     return f"{{{MAIN}}}{tag}"
 
 
+def integer(element: etree._Element, attribute: str, default: int = 0) -> int:
+    """The whole number in an attribute; anything else there is damage."""
+    text = element.get(attribute, str(default))
+    try:
+        return int(text)
+    except ValueError:
+        tag = etree.QName(element).localname
+        raise WorkbookFormatError(
+            f"The workbook is damaged: {attribute}={text[:40]!r} of a {tag} is no whole number. Let the spreadsheet "
+            f"program repair it."
+        ) from None
+
+
 def child(parent: etree._Element, tag: str) -> etree._Element | None:
     """The first SpreadsheetML child of that name."""
     return parent.find(main(tag))
