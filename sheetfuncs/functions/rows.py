@@ -26,8 +26,8 @@ def _dffits(call: Call) -> CellResult:
 
 
 def _press(call: Call) -> CellResult:
-    left_out = call.regression.measures.leave_one_out
-    total = float(np.sum(left_out**2))
+    call.fit.require_variation()
+    total = call.regression.measures.press
     if not np.isfinite(total):
         raise NoVariationError(
             "A row of leverage 1 cannot be predicted from the others, so that their sum is undefined: FIT_LEVERAGE "
