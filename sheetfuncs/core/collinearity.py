@@ -31,6 +31,8 @@ def variance_inflation(basis: Basis, groups: Sequence[Group]) -> tuple[Inflation
     generalized factor det(R_gg) det((R^-1)_gg) (Fox and Monette 1992, JASA 87:178-183). Without an intercept the
     columns are compared about zero, which measures something else than with one.
     """
+    if len(groups) == 1:  # nothing else to move together with
+        return (Inflation(groups[0].name, 1.0, groups[0].width, 1.0),)
     return tuple(_inflation(basis, group) for group in groups)
 
 
