@@ -17,6 +17,8 @@ from sheetfuncs.judgement.words import counted, number, pvalue, times
 CLEAR, SOME = 0.01, 0.05
 # An interval twice as wide as it would be with unrelated predictors is worth saying aloud; no published limit.
 WIDER_LIMIT = 2.0
+# Ratios that would print as "1.0 times" are said in words.
+ALIKE_BELOW = 1.05
 
 
 @dataclass(frozen=True)
@@ -123,7 +125,8 @@ def _variance(fit: Fit, result: Result) -> Evidence:
             wider, which = (ratio, "largest") if ratio >= 1 else (1 / ratio, "smallest")
             size = (
                 f"typical error {number(spread[-1], 2)} in the {part} with the largest fitted values, "
-                f"{number(spread[0], 2)} in the smallest: {times(wider)} as wide in the {which}"
+                f"{number(spread[0], 2)} in the smallest: "
+                + (f"{times(wider)} as wide in the {which}" if wider >= ALIKE_BELOW else "equally wide in both")
             )
     return Evidence(
         "constant variance", "Are the errors equally wide everywhere?", strength, finding,
@@ -164,7 +167,7 @@ def _normality(fit: Fit, statistics: Sequence[Result]) -> Evidence:
         )
     return Evidence(
         "normality", "Do the errors follow a normal curve?", strength, finding, _named(name, result), size,
-        "Matters most for intervals around one new value, and for coefficients only with few rows.", result.p,
+        "Intervals around one new value rest on it; coefficients do only with few rows.", result.p,
     )
 
 

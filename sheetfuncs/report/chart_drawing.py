@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from typing import Any
 
 from xlsxwriter.chart import Chart as NativeChart
@@ -9,7 +10,7 @@ from xlsxwriter.workbook import Workbook
 from xlsxwriter.worksheet import Worksheet
 
 from sheetfuncs.report import style as looks
-from sheetfuncs.report.elements import Axis, Chart, Series
+from sheetfuncs.report.elements import Area, Axis, Chart, Series
 from sheetfuncs.report.layout import COLUMN_PIXELS
 
 _TYPES = {
@@ -18,8 +19,10 @@ _TYPES = {
 _LINES: dict[str, dict[str, Any]] = {
     "smooth": {"color": looks.SMOOTH, "width": 2.25},
     "line": {"color": looks.QUIET, "width": 1.0},
+    "course": {"color": looks.POINTS, "width": 0.75},
     "limit": {"color": looks.QUIET, "width": 1.25, "dash_type": "dash"},
 }
+_LIKE_REFERENCE = re.compile(r"^(=?[^!]+)!(?=\$?[A-Z]+\$?\d)")
 _SMALL = {"name": looks.FONT, "size": 8, "color": looks.QUIET, "bold": False}
 
 
@@ -47,16 +50,26 @@ def insert_chart(workbook: Workbook, sheet: Worksheet, title: str, chart: Chart)
 
 def _series(title: str, series: Series, kind: str) -> dict[str, Any]:
     options: dict[str, Any] = {
-        "name": "=" + series.name.on(title), "categories": "=" + series.x.on(title), "values": "=" + series.y.on(title),
+        "name": _cells(title, series.name)[:3],
+        "categories": _cells(title, series.x), "values": _cells(title, series.y),
         **_look(series.look, kind),
     }
     if series.labelled:
-        key = "category"
         options["data_labels"] = {
-            key: True, "value": False, "position": "above" if kind == "scatter" else "outside_end",
+            "category": True, "value": False, "position": "above" if kind == "scatter" else "outside_end",
             "font": {"name": looks.FONT, "size": 8, "color": looks.INK},
         }
     return options
+
+
+def _cells(title: str, area: Area) -> list[str | int]:
+    """An area as a list: as a text, a sheet's name that holds an exclamation mark would be cut at it."""
+    return [title, area.first_row - 1, area.first_column - 1, area.last_row - 1, area.last_column - 1]
+
+
+def _as_text(text: str) -> str:
+    """A title that cannot be taken for a reference: a text like "x!A1 ..." would be made a formula."""
+    return _LIKE_REFERENCE.sub(r"\1! ", text)
 
 
 def _look(look: str, kind: str) -> dict[str, Any]:
@@ -64,8 +77,8 @@ def _look(look: str, kind: str) -> dict[str, Any]:
         colour = looks.SMOOTH if look.startswith("flagged") else looks.POINTS
         gap = 150 if kind == "bars" else 60
         return {"fill": {"color": colour}, "border": {"none": True}, "gap": gap, "overlap": 100}
-    if look == "points":
-        return {"marker": _marker("circle", 5, looks.POINTS, 30), "line": {"none": True}}
+    if look in ("points", "many points"):
+        return {"marker": _marker("circle", 5 if look == "points" else 3, looks.POINTS, 30), "line": {"none": True}}
     if look == "flagged":
         return {"marker": _marker("diamond", 8, looks.SMOOTH, 0), "line": {"none": True}}
     if look == "joined points":
@@ -82,7 +95,7 @@ def _marker(shape: str, size: int, colour: str, transparency: int) -> dict[str, 
 
 def _dress(native: NativeChart, chart: Chart) -> None:
     native.set_title({
-        "name": chart.title, "overlay": False,
+        "name": _as_text(chart.title), "overlay": False,
         "name_font": {"name": looks.FONT, "size": 10, "bold": True, "color": looks.INK},
     })
     # With bars the names run down the side: the axis of names is the vertical one.
@@ -102,7 +115,7 @@ def _dress(native: NativeChart, chart: Chart) -> None:
 
 def _axis(axis: Axis, *, gridlines: bool) -> dict[str, Any]:
     options: dict[str, Any] = {
-        "name": axis.title, "name_font": dict(_SMALL), "num_font": dict(_SMALL), "label_position": "low",
+        "name": _as_text(axis.title), "name_font": dict(_SMALL), "num_font": dict(_SMALL), "label_position": "low",
         "num_format": axis.number_format, "line": {"color": looks.HAIRLINE},
         "major_gridlines": {"visible": gridlines, "line": {"color": looks.HAIRLINE, "width": 0.5}},
         "major_tick_mark": "none", "minor_tick_mark": "none",
@@ -112,6 +125,6 @@ def _axis(axis: Axis, *, gridlines: bool) -> dict[str, Any]:
             options[key] = value
     if axis.text:
         options["text_axis"] = True
-    if axis.reversed:
-        options["reverse"] = True
+    if axis.every_label:
+        options["interval_unit"] = 1
     return options

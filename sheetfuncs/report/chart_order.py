@@ -11,10 +11,11 @@ from sheetfuncs.report.elements import Axis
 from sheetfuncs.report.scales import nice_axis
 from sheetfuncs.report.sketch import Line, Sketch, counts, numbers, texts
 from sheetfuncs.report.text import shortened
-from sheetfuncs.report.thinning import STRETCHES, is_thinned, stretch_means
+from sheetfuncs.report.thinning import MOST_IN_LINE, STRETCHES, stretch_means
 
 _FEWEST = 8
 _MOST_LAGS = 12
+_MOST_MARKED = 250
 
 
 def order_chart(check: Check) -> Sketch | None:
@@ -25,21 +26,23 @@ def order_chart(check: Check) -> Sketch | None:
     residuals = check.design.in_order(fit.residuals)
     given = check.settings.order
     note = ""
-    if is_thinned(check):
+    in_stretches = fit.n > MOST_IN_LINE
+    if in_stretches:
         places, values = stretch_means(residuals)
         y_name = "Mean residual"
         note = f" Each of the {STRETCHES:,} points is the mean of about {fit.n // STRETCHES:,} neighbouring rows."
     else:
         places = np.arange(1, fit.n + 1) if check.design.order is not None else check.design.rows
         values, y_name = residuals, "Residual"
-    rows_shown = check.design.order is None and not is_thinned(check)
+    rows_shown = check.design.order is None and not in_stretches
     x_title = "Worksheet row" if rows_shown else f"Place in the order by {shortened(given, 32)}" if given else "Place"
     name = response_name(check)
     return Sketch(
         "scatter", f"Do the errors of {name} wander from one row to the next?",
         "Long stretches on one side of zero speak for errors that follow one another; a steady zigzag for errors that "
         "alternate." + note,
-        (counts(x_title, places), numbers(y_name, values)), (Line(0, 1, "joined points"),),
+        (counts(x_title, places), numbers(y_name, values)),
+        (Line(0, 1, "joined points" if values.size <= _MOST_MARKED else "course"),),
         nice_axis(x_title, places), nice_axis(f"{y_name} of {name}", values, zero=True),
     )
 

@@ -12,7 +12,7 @@ from sheetfuncs.report.normal_scores import normal_scores, pointwise_limits
 from sheetfuncs.report.scales import nice_axis
 from sheetfuncs.report.sketch import Line, Sketch, numbers, texts
 from sheetfuncs.report.text import shortened
-from sheetfuncs.report.thinning import MOST_POINTS, is_thinned, shown_rows, thinning_note
+from sheetfuncs.report.thinning import MOST_IN_LINE, STRETCHES, points_look, shown_rows, thinning_note
 
 _FEWEST = 5
 _FIFTHS_FROM, _HALVES_FROM = 25, 10
@@ -31,7 +31,7 @@ def form_chart(check: Check) -> Sketch | None:
     rows = shown_rows(check)
     x, y = fit.fitted[rows], fit.residuals[rows]
     figures = [numbers("Fitted value", x), numbers("Residuals", y)]
-    lines = [Line(0, 1, "points")]
+    lines = [Line(0, 1, points_look(rows.size))]
     if check.flagged:
         index = np.array([flag.index for flag in check.flagged])
         figures += [numbers("Fitted value", fit.fitted[index]), numbers("Rows to look at", fit.residuals[index])]
@@ -85,8 +85,8 @@ def normality_chart(check: Check) -> Sketch | None:
         return None
     scores = normal_scores(values.size)
     note = ""
-    if is_thinned(check):
-        keep = np.unique(np.linspace(0, values.size - 1, MOST_POINTS // 5).round().astype(int))
+    if values.size > MOST_IN_LINE:
+        keep = np.unique(np.linspace(0, values.size - 1, STRETCHES).round().astype(int))
         # The tails are what the chart is for: the outermost hundred at both ends are all kept.
         keep = np.union1d(keep, np.r_[:100, values.size - 100:values.size])
         note = f" Shown: {keep.size:,} of {values.size:,} rows, evenly by rank, and the outermost hundred at both ends."
@@ -102,6 +102,6 @@ def normality_chart(check: Check) -> Sketch | None:
         (numbers("Normal score", scores[keep]), numbers("Residuals", values[keep]),
          numbers("Normal score", line), numbers("Normal curve", line),
          numbers("Pointwise limits", low), numbers("Upper limit", high)),
-        (Line(0, 1, "points"), Line(2, 3, "line"), Line(2, 4, "limit"), Line(2, 5, "limit")),
+        (Line(0, 1, points_look(keep.size)), Line(2, 3, "line"), Line(2, 4, "limit"), Line(2, 5, "limit")),
         nice_axis("Normal score", line), nice_axis("Residual, in standard deviations", [*values, *low, *high]),
     )

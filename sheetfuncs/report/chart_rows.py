@@ -2,20 +2,23 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping, Sequence
+
 import numpy as np
 
 from sheetfuncs.check import Check
 from sheetfuncs.core.shifts import coefficient_shifts
-from sheetfuncs.judgement.words import counted
+from sheetfuncs.judgement.words import counted, listed
 from sheetfuncs.report.elements import Axis
 from sheetfuncs.report.scales import nice_axis
+from sheetfuncs.report.separation import moving_together
 from sheetfuncs.report.sketch import Line, Sketch, counts, numbers, texts
 from sheetfuncs.report.text import shortened
-from sheetfuncs.report.thinning import shown_rows, thinning_note
+from sheetfuncs.report.thinning import points_look, shown_rows, thinning_note
 
 _FEWEST = 5
 _MOST_COLUMNS = 250
-MOST_BARS = 12
+MOST_BARS = 8
 
 
 def watched_term(check: Check) -> int:
@@ -62,7 +65,7 @@ def rows_chart(check: Check) -> Sketch | None:
         "scatter", *common,
         (counts("Worksheet row", numbers_of[plain]), numbers("Rows", shifts[plain]),
          counts("Worksheet row", numbers_of[marked]), numbers("Rows to look at", shifts[marked])),
-        (Line(0, 1, "points"), *((Line(2, 3, "flagged", labelled=True),) if marked.size else ())),
+        (Line(0, 1, points_look(plain.size)), *((Line(2, 3, "flagged", labelled=True),) if marked.size else ())),
         nice_axis("Worksheet row", numbers_of[rows]), axis,
     )
 
@@ -74,12 +77,20 @@ def separation_chart(check: Check) -> Sketch | None:
     widest = sorted(check.inflation, key=lambda i: -i.vif_per_df)[:MOST_BARS]
     more = len(check.inflation) - len(widest)
     left_out = f" Shown: the {MOST_BARS} widest of {len(check.inflation)} predictors." if more else ""
+    widest.reverse()  # bars are drawn from the bottom up
     values = [i.vif_per_df for i in widest]
+    partners = moving_together(check)
     return Sketch(
         "bars", "How much wider is each interval than with unrelated predictors?",
-        "1 means not at all. The square root of the variance inflation factor; for a category of several levels, per "
-        "degree of freedom." + left_out,
-        (texts("Predictor", [shortened(i.predictor, 28) for i in widest]), numbers("Times as wide", values)),
+        "1 means not at all; beside a predictor stand those it moves with. The square root of the variance inflation "
+        "factor; for a category of several levels, per degree of freedom." + left_out,
+        (texts("Predictor", [_with_partners(i.predictor, partners) for i in widest]), numbers("Times as wide", values)),
         (Line(0, 1, "columns"),),
-        Axis("", text=True, reversed=True), nice_axis("Times as wide", values, zero=True),
+        Axis("", text=True, every_label=True), nice_axis("Times as wide", values, zero=True),
     )
+
+
+def _with_partners(name: str, partners: Mapping[str, Sequence[str]]) -> str:
+    """"Weight, with Volume": the predictor and those that it moves with."""
+    named = [shortened(partner, 20) for partner in partners.get(name, [])[:2]]
+    return shortened(name, 28) + (f", with {listed(named)}" if named else "")

@@ -75,8 +75,8 @@ def _write_row(page: Page, check: Check, sketches: Sequence[tuple[str, str, Sket
     page.row = last + 1
     for column, (assumption, _, sketch) in zip(columns, sketches, strict=True):
         bears_on = findings[assumption].bears_on
-        at_stake = f" At stake: {bears_on[:1].lower()}{bears_on[1:]}"
-        page.put(column, sketch.caption + at_stake, looks.QUIET_WRAPPED, span=_WIDTH)
+        matters = f" Why it matters: {bears_on[:1].lower()}{bears_on[1:]}"
+        page.put(column, sketch.caption + matters, looks.QUIET_WRAPPED, span=_WIDTH)
     page.next()
     page.kept.append((top, page.row - 1))
     page.gap(6.0)

@@ -85,8 +85,11 @@ class Column:
 
 @dataclass(frozen=True)
 class Series:
-    """One series of a chart. name: the cell that holds it. look: "points", "flagged", "line", "joined points",
-    "smooth", "limit", "columns" or "flagged columns". labelled: whether each point shows its x value beside it."""
+    """One series of a chart.
+
+    name: the cell that holds it. look: "points", "many points", "flagged", "joined points", "course" (of many values),
+    "line", "smooth", "limit", "columns" or "flagged columns". labelled: each point shows its x value beside it.
+    """
 
     name: Area
     x: Area
@@ -97,7 +100,8 @@ class Series:
 
 @dataclass(frozen=True)
 class Axis:
-    """An axis of a chart. low, high, step: None lets the host choose. text: labels are names, not measures."""
+    """An axis of a chart. low, high, step: None lets the host choose. text: labels are names, not measures;
+    every_label: none of them may be skipped."""
 
     title: str
     number_format: str = "General"
@@ -105,7 +109,7 @@ class Axis:
     high: float | None = None
     step: float | None = None
     text: bool = False
-    reversed: bool = False
+    every_label: bool = False
 
 
 @dataclass(frozen=True)

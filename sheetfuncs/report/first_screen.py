@@ -52,7 +52,7 @@ def write_jumps(page: Page, row: int = 2) -> None:
 def what_was_fitted(check: Check) -> str:
     """"Cost from Weight and Holes, a straight-line fit with an intercept." in one sentence."""
     settings = check.settings
-    names = [shortened(name, 60) for name in settings.predictors]
+    names = [shortened(name, 60 if len(settings.predictors) < 4 else 32) for name in settings.predictors]
     if len(names) > 8:
         names = [*names[:7], f"{len(names) - 7} more"]
     intercept = "with an intercept" if settings.intercept else "through zero, without an intercept"
@@ -118,10 +118,12 @@ def _write_assumptions(page: Page, check: Check) -> None:
         Head(FIRST, _QUESTION, "Question"), Head(finding, _FINDING, "What was found"), Head(size, _SIZE, "How large"),
         Head(test, _TEST, "Test and variant"), Head(LAST, 1, "p", right=True),
     ])
+    nothing_left = check.fit.nothing_left()
     for evidence in check.evidence:
         line = looks.HAIRLINE
         page.put(FIRST, evidence.question, looks.WRAPPED.but(below=line), span=_QUESTION)
-        page.put(finding, without_p(evidence), finding_look(evidence).but(below=line, indent=1), span=_FINDING)
+        text = "Not tested." if evidence.finding == nothing_left else without_p(evidence)
+        page.put(finding, text, finding_look(evidence).but(below=line, indent=1), span=_FINDING)
         page.put(size, sentence(evidence.size), looks.BESIDE.but(below=line), span=_SIZE)
         page.put(test, evidence.test, looks.QUIET_BESIDE.but(below=line), span=_TEST)
         if evidence.p is None:
@@ -133,6 +135,8 @@ def _write_assumptions(page: Page, check: Check) -> None:
 
 def without_p(evidence: Evidence) -> str:
     """The finding without its p, where p has a column of its own."""
+    if evidence.strength == "not tested":
+        return f"Not tested. {evidence.finding}"
     return evidence.finding if evidence.p is None else evidence.finding.replace(f", {pvalue(evidence.p)}", "")
 
 

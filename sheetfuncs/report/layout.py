@@ -84,6 +84,8 @@ class Page:
 
     def section(self, anchor: str, title: str, note: str = "") -> None:
         """Heading of a section, with a quiet sentence under it."""
+        if self.kept and self.kept[-1][1] >= self.row:
+            self.kept[-1] = (self.kept[-1][0], self.row - 1)
         self.kept.append((self.row, self.row + _TOGETHER))
         self.gap(16.0)
         self.anchors[anchor] = self.row

@@ -22,15 +22,29 @@ def page_breaks(
     kept: stretches of rows, first to last, that stay on one page if they fit on one. repeated: points that the rows
     printed on every page take.
     """
-    ends = dict(kept)
     breaks: list[int] = []
     used, row, room = 0.0, 1, PAGE_POINTS - repeated
     while row <= rows:
-        last = min(ends.get(row, row), rows)
-        block = sum(heights.get(r, ROW_POINTS) for r in range(row, last + 1))
+        last, block = _block(heights, row, rows, kept, room)
         if used and used + block > room:
             breaks.append(row - 1)
             used = 0.0
         used += block
         row = last + 1
     return tuple(breaks)
+
+
+def _block(
+    heights: Mapping[int, float], row: int, rows: int, kept: Sequence[tuple[int, int]], room: float
+) -> tuple[int, float]:
+    """Last row and height of what stays together from this row on: stretches that overlap count as one."""
+    last = row
+    block = heights.get(row, ROW_POINTS)
+    for first, end in sorted(kept):
+        if first < row or first > last or end <= last:
+            continue
+        end = min(end, rows)
+        longer = block + sum(heights.get(r, ROW_POINTS) for r in range(last + 1, end + 1))
+        if longer <= room:
+            last, block = end, longer
+    return last, block

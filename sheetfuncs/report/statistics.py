@@ -33,7 +33,7 @@ METHODS = (
     ("Normality", "anderson_darling", "Anderson-Darling"),
     ("Normality", "lilliefors", "Lilliefors"),
     ("Normality", "dagostino_k2", "D'Agostino-Pearson"),
-    ("Rows", "outlier_test", "Largest studentized residual"),
+    ("Rows", "outlier_test", "Outlier test"),
 )
 OTHER = "Others"
 _STATISTIC = FIRST + 6
@@ -100,7 +100,7 @@ def _write_figures(page: Page, result: Result) -> None:
         page.number(_STATISTIC + 1, degrees, "0" if degrees == int(degrees) else "0.0")
     if result.p is not None:
         page.number(_STATISTIC + 2, result.p, PVALUE)
-    texts = [_sentence(text) for text in (result.null, result.note) if text]
+    texts = [_sentence(text) for text in (result.null if result.p is not None else "", result.note) if text]
     page.put(_STATISTIC + 3, " ".join(texts) or None, looks.QUIET_BESIDE, span=LAST - _STATISTIC - 2)
 
 

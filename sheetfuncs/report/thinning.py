@@ -8,11 +8,18 @@ from sheetfuncs.check import Check
 
 MOST_POINTS = 5_000
 SEED = 1
+# A line through more points than a chart has pixels across is a smear: beyond this, stretches of rows or quantiles.
+MOST_IN_LINE = 2_000
 STRETCHES = 1_000
 
 
 def is_thinned(check: Check) -> bool:
     return check.design.n > MOST_POINTS
+
+
+def points_look(count: int) -> str:
+    """Many points are drawn small, so that they do not run together."""
+    return "points" if count <= 400 else "many points"
 
 
 def shown_rows(check: Check) -> np.ndarray:
