@@ -5,8 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from enum import IntEnum
+from itertools import chain
 
 import numpy as np
+
+from sheetfuncs.errors import CellKindError
 
 ERROR_TEXTS = frozenset({
     "#NULL!", "#DIV/0!", "#VALUE!", "#REF!", "#NAME?", "#NUM!", "#N/A", "#GETTING_DATA",
@@ -35,6 +38,8 @@ class Block:
              such a cell have no entry.
     sheet, first_row, first_column: where the rectangle stands (1-based; sheet None for a bare block).
     hidden:  bool (rows,): rows hidden or filtered out in the host; None where the host does not say.
+    worksheet_columns: the worksheet column of each column where they are not adjacent, else None.
+    date1904: whether DATE serial numbers count from 1904.
     """
 
     numbers: np.ndarray
@@ -44,6 +49,8 @@ class Block:
     first_row: int = 1
     first_column: int = 1
     hidden: np.ndarray | None = None
+    worksheet_columns: tuple[int, ...] | None = None
+    date1904: bool = False
 
     @property
     def row_count(self) -> int:
@@ -58,37 +65,118 @@ class Block:
         texts = self.texts.get(column)
         return None if texts is None else texts[row]
 
+    def worksheet_column(self, column: int) -> int:
+        """The worksheet column (1-based) of a column of the block (0-based)."""
+        return self.first_column + column if self.worksheet_columns is None else self.worksheet_columns[column]
+
     def columns(self, indices: Sequence[int]) -> Block:
-        """The block made of these columns (0-based). `first_column` stays true only for adjacent ones."""
+        """The block made of these columns (0-based), in this order; `worksheet_column` stays true."""
         indices = list(indices)
+        places = tuple(self.worksheet_column(index) for index in indices)
+        first = places[0] if places else self.first_column
+        adjacent = places == tuple(range(first, first + len(places)))
         return Block(
             self.numbers[:, indices], self.kinds[:, indices],
             {new: self.texts[old] for new, old in enumerate(indices) if old in self.texts},
-            self.sheet, self.first_row, self.first_column + (indices[0] if indices else 0), self.hidden,
+            self.sheet, self.first_row, first, self.hidden, None if adjacent else places, self.date1904,
+        )
+
+    def rows(self, start: int, stop: int) -> Block:
+        """The block made of the rows start to stop - 1 (0-based)."""
+        return Block(
+            self.numbers[start:stop], self.kinds[start:stop],
+            {column: texts[start:stop] for column, texts in self.texts.items()},
+            self.sheet, self.first_row + start, self.first_column,
+            None if self.hidden is None else self.hidden[start:stop], self.worksheet_columns, self.date1904,
         )
 
     @classmethod
     def from_rows(cls, rows: Sequence[Sequence[object]], **place: object) -> Block:
-        """Build a block from a list of rows, a cell being None, float, int, bool, str or an error text."""
+        """Build a block from a list of rows, a cell being None, float, int, bool, str or an error text.
+
+        Shorter rows end in blanks. A number that no spreadsheet cell can hold (NaN, infinity) becomes the error
+        that the cell would show. Raises CellKindError for an object that is none of these.
+        """
         height = len(rows)
-        width = max((len(row) for row in rows), default=0)
-        numbers = np.full((height, width), np.nan)
-        kinds = np.zeros((height, width), np.uint8)
+        widths = set(map(len, rows))
+        width = max(widths, default=0)
+        if len(widths) > 1:
+            rows = [[*row, *[None] * (width - len(row))] for row in rows]
+        numbers = _all_numbers(rows, height, width)
+        if numbers is not None:
+            kinds = np.full((height, width), Kind.NUMBER, np.uint8, order="F")
+            return cls(numbers, kinds, {}, **place)  # type: ignore[arg-type]
+        numbers = np.full((height, width), np.nan, order="F")
+        kinds = np.full((height, width), Kind.NUMBER, np.uint8, order="F")
         texts: dict[int, np.ndarray] = {}
-        for r, row in enumerate(rows):
-            for c, value in enumerate(row):
-                if value is None or value == "":
-                    continue
-                if isinstance(value, bool | np.bool_):
-                    kinds[r, c], numbers[r, c] = Kind.BOOLEAN, float(value)
-                elif isinstance(value, str):
-                    kinds[r, c] = Kind.ERROR if value in ERROR_TEXTS else Kind.TEXT
-                    texts.setdefault(c, np.full(height, None, object))[r] = value
-                else:
-                    number = float(value)  # type: ignore[arg-type]
-                    if np.isfinite(number):
-                        kinds[r, c], numbers[r, c] = Kind.NUMBER, number
-                    else:  # no spreadsheet cell holds NaN or infinity: treat it as the error it would show
-                        kinds[r, c] = Kind.ERROR
-                        texts.setdefault(c, np.full(height, None, object))[r] = "#NUM!"
+        for index, cells in enumerate(zip(*rows, strict=True)):
+            found = _fill_column(list(cells), numbers[:, index], kinds[:, index])
+            if found is not None:
+                texts[index] = found
         return cls(numbers, kinds, texts, **place)  # type: ignore[arg-type]
+
+
+def _all_numbers(rows: Sequence[Sequence[object]], height: int, width: int) -> np.ndarray | None:
+    """The rows as one array where every cell is a finite number, else None."""
+    if not height or not set(map(type, chain.from_iterable(rows))) <= {float, int}:
+        return None
+    try:
+        numbers = np.fromiter(chain.from_iterable(rows), float, height * width)  # type: ignore[arg-type]
+    except OverflowError:
+        return None
+    return np.asfortranarray(numbers.reshape(height, width)) if np.isfinite(numbers).all() else None
+
+
+def _fill_column(cells: list[object], numbers: np.ndarray, kinds: np.ndarray) -> np.ndarray | None:
+    """Fill one column's numbers and kinds (preset to NUMBER) in place; returns its texts, or None without any."""
+    types = list(map(type, cells))
+    if types.count(str) == len(cells):
+        return _fill_texts(cells, kinds)
+    odd = [row for row, kind in enumerate(types) if kind is not float]
+    values = cells.copy() if odd else cells
+    for row in odd:
+        values[row] = None  # which becomes NaN
+    numbers[:] = np.array(values, float)
+    finite = np.isfinite(numbers)
+    if not finite.all():
+        odd = np.flatnonzero(~finite).tolist()
+    texts = None
+    for row in odd:
+        kinds[row], numbers[row], text = _read_cell(cells[row])
+        if text is not None:
+            if texts is None:
+                texts = np.full(len(cells), None, object)
+            texts[row] = text
+    return texts
+
+
+def _fill_texts(cells: list[object], kinds: np.ndarray) -> np.ndarray | None:
+    """Kinds of a column of strings only; returns its texts with None at the blanks."""
+    kind_of = {text: Kind.ERROR if text in ERROR_TEXTS else Kind.TEXT for text in set(cells)}
+    kind_of[""] = Kind.BLANK
+    kinds[:] = np.fromiter(map(kind_of.__getitem__, cells), np.uint8, len(cells))
+    texts = np.array(cells, object)
+    texts[kinds == Kind.BLANK] = None
+    return texts if kinds.any() else None
+
+
+def _read_cell(value: object) -> tuple[Kind, float, str | None]:
+    """Kind, number and text of one cell."""
+    if value is None or (isinstance(value, str) and value == ""):
+        return Kind.BLANK, np.nan, None
+    if isinstance(value, str):
+        return Kind.ERROR if value in ERROR_TEXTS else Kind.TEXT, np.nan, str(value)
+    if isinstance(value, bool | np.bool_):
+        return Kind.BOOLEAN, float(value), None
+    try:
+        number = float(value)  # type: ignore[arg-type]
+    except OverflowError:
+        number = np.inf
+    except (TypeError, ValueError):
+        raise CellKindError(
+            f"A cell was handed over as {type(value).__name__}; a cell is empty, a number, a text, "
+            "TRUE or FALSE, or an error value: convert it first (dates to serial numbers)."
+        ) from None
+    if np.isfinite(number):
+        return Kind.NUMBER, number, None
+    return Kind.ERROR, np.nan, "#NUM!"
