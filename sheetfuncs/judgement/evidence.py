@@ -185,6 +185,7 @@ def _collinearity(fit: Fit, inflation: Sequence[Inflation]) -> Evidence:
         f"{worst.predictor}'s interval is {times(wider)} as wide as it would be if the predictors were unrelated."
         if wider >= WIDER_LIMIT else
         f"No interval is widened much: at most {times(wider)} as wide, for {worst.predictor}."
+        if wider >= ALIKE_BELOW else "The predictors are nearly unrelated: no interval is widened."
     )
     return Evidence("collinearity", question, "fact", finding, test, size, bears_on)
 

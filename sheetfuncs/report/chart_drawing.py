@@ -20,7 +20,7 @@ _LINES: dict[str, dict[str, Any]] = {
     "smooth": {"color": looks.SMOOTH, "width": 2.25},
     "line": {"color": looks.QUIET, "width": 1.0},
     "course": {"color": looks.POINTS, "width": 0.75},
-    "limit": {"color": looks.QUIET, "width": 1.25, "dash_type": "dash"},
+    "limit": {"color": looks.INK, "width": 1.25, "dash_type": "dash"},
 }
 _LIKE_REFERENCE = re.compile(r"^(=?[^!]+)!(?=\$?[A-Z]+\$?\d)")
 _SMALL = {"name": looks.FONT, "size": 8, "color": looks.QUIET, "bold": False}

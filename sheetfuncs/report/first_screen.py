@@ -8,33 +8,36 @@ from sheetfuncs.judgement.uses import next_steps, uses
 from sheetfuncs.judgement.words import counted, listed, number, pvalue
 from sheetfuncs.report import style as looks
 from sheetfuncs.report.formats import PVALUE
-from sheetfuncs.report.layout import COUNT, FIRST, LAST, Head, Page
+from sheetfuncs.report.layout import COUNT, FIRST, LAST, ROW_POINTS, Head, Page
 from sheetfuncs.report.text import shortened
 
 CAUTION = (
-    "A test that finds nothing is not proof, and evidence is not a guarantee. Where a result can hurt someone (a "
-    "safety limit, a dose, a load), have it reviewed by a qualified person; local codes and rules come first."
+    "A test that finds nothing is not proof, and evidence is no guarantee. Where a result can hurt someone, have it "
+    "reviewed by a qualified person; local codes and rules come first."
 )
 JUMPS = (
     ("charts", "Charts"), ("rows", "Single rows"), ("statistics", "Statistics"), ("fit", "The fit"),
     ("ledger", "Rows used"), ("cross-check", "Cross-check"), ("decision", "Decision"), ("settings", "Settings"),
 )
-_QUESTION, _FINDING, _SIZE, _TEST = 2, 4, 4, 3
+_QUESTION, _FINDING, _SIZE, _TEST = 2, 3, 4, 4
+_LEAST = 13.5  # rows stand closer here than below, so that all of it fits one screen
 
 
 def write_first_screen(page: Page, check: Check, data_sheet: str, data_area: str) -> None:
+    page.least = _LEAST
     page.put(FIRST, page.title, looks.TITLE, span=COUNT)
     page.ask_height(25.0)
     page.next(2)
     page.gap(6.0)
     _write_what(page, check, data_sheet, data_area)
-    page.gap(7.0)
+    page.gap(6.0)
     _write_uses(page, check)
-    page.gap(7.0)
+    page.gap(6.0)
     _write_assumptions(page, check)
     page.gap(4.0)
     page.put(FIRST, CAUTION, looks.QUIET_WRAPPED, span=COUNT)
     page.next()
+    page.least = ROW_POINTS
 
 
 def write_jumps(page: Page, row: int = 2) -> None:
@@ -103,7 +106,7 @@ def _write_uses(page: Page, check: Check) -> None:
         page.put(FIRST, use.title, looks.STRONG, span=2)
         page.put(FIRST + 2, use.sentence, looks.WRAPPED, span=COUNT - 2)
         page.next()
-    page.gap(7.0)
+    page.gap(6.0)
     for place, step in enumerate(next_steps(check.evidence, nothing_left=nothing_left)):
         page.put(FIRST, "What to do next" if place == 0 else None, looks.STRONG, span=2)
         page.put(FIRST + 2, step, looks.WRAPPED, span=COUNT - 2)

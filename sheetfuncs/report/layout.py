@@ -17,7 +17,7 @@ FIRST, COUNT = 2, 14
 LAST = FIRST + COUNT - 1
 COLUMN_PIXELS, MARGIN_PIXELS = 82.0, 16.0
 ROW_POINTS = 15.0
-_LINE, _PADDING = 1.27, 3.6
+_LINE, _PADDING = 1.27, 2.6
 _CELL_PADDING = 10.0
 _INDENT = 9.0
 MISSING = "–"
@@ -41,6 +41,7 @@ class Page:
     def __init__(self, title: str):
         self.title = title
         self.row = 1
+        self.least = ROW_POINTS
         self.cells: list[Cell] = []
         self.columns: list[Column] = []
         self.charts: list[Chart] = []
@@ -80,7 +81,7 @@ class Page:
 
     def ask_height(self, points: float) -> None:
         """Make the current row at least so high."""
-        self.heights[self.row] = max(self.heights.get(self.row, ROW_POINTS), points)
+        self.heights[self.row] = max(self.heights.get(self.row, self.least), points)
 
     def section(self, anchor: str, title: str, note: str = "") -> None:
         """Heading of a section, with a quiet sentence under it."""
