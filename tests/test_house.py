@@ -14,7 +14,8 @@ ROOT = Path(__file__).parents[1]
 TOP = {"README.md", "DEVELOPERS.md", "pyproject.toml", "sheetfuncs", "tests", "templates"}
 MADE_BY_RUNNING = {"demo", "build", "dist", "venv", "__pycache__"}  # .gitignore names them too
 MODULES = sorted((ROOT / "sheetfuncs").rglob("*.py"))
-HOME_FOLDER = re.compile(r"(?<![\w.~])/(?:home|root|Users|work|mnt|srv)/\w|\b[A-Z]:\\+Users\\+\w")
+# A name of one letter is an example, not a user.
+HOME_FOLDER = re.compile(r"(?<![\w.~])/(?:home|root|Users|work|mnt|srv)/\w\w|\b[A-Z]:\\+Users\\+\w\w")
 
 
 def texts() -> Iterator[tuple[str, str]]:
