@@ -19,6 +19,7 @@ def written_beside(path: str | os.PathLike[str]) -> Iterator[BinaryIO]:
 
     Written under a random name in the same folder, fsynced, given the old file's permissions, then swapped in by one
     atomic rename. A symbolic link keeps pointing where it points; the file behind it is replaced.
+    Raises WorkbookError, or WorkbookBusyError where another program holds the file.
     """
     target = os.path.realpath(path)
     folder, name = os.path.split(target)
@@ -30,10 +31,12 @@ def written_beside(path: str | os.PathLike[str]) -> Iterator[BinaryIO]:
             file.flush()
             os.fsync(file.fileno())
         _keep_permissions(target, temporary)
-        _swap_in(temporary, target)
-    except BaseException:
+        os.replace(temporary, target)
+    except BaseException as error:
         with contextlib.suppress(OSError):
             os.unlink(temporary)
+        if isinstance(error, OSError):
+            raise _refusal(target, error) from error
         raise
     _sync_folder(folder)
 
@@ -43,10 +46,7 @@ def _create(temporary: str, target: str) -> BinaryIO:
         flags = os.O_CREAT | os.O_EXCL | os.O_RDWR | getattr(os, "O_BINARY", 0)
         return cast(BinaryIO, os.fdopen(os.open(temporary, flags, 0o666), "w+b"))
     except OSError as error:
-        raise WorkbookError(
-            f"{target} cannot be written: {error.strerror or error}. Choose a folder that is there and that you may "
-            f"write to."
-        ) from error
+        raise _refusal(target, error) from error
 
 
 def _keep_permissions(target: str, temporary: str) -> None:
@@ -59,13 +59,16 @@ def _keep_permissions(target: str, temporary: str) -> None:
             os.chown(temporary, owner.st_uid, owner.st_gid)
 
 
-def _swap_in(temporary: str, target: str) -> None:
-    try:
-        os.replace(temporary, target)
-    except PermissionError as error:
-        raise WorkbookBusyError(
-            f"{target} cannot be replaced: another program holds it open. Close it there and try again."
-        ) from error
+def _refusal(target: str, error: OSError) -> WorkbookError:
+    if isinstance(error, PermissionError) and os.path.isfile(target):
+        return WorkbookBusyError(
+            f"{target} cannot be replaced: another program holds it open, or you may not write to its folder. Close it "
+            f"there, or choose another place."
+        )
+    return WorkbookError(
+        f"{target} cannot be written: {error.strerror or error}. Choose a folder that is there, that you may write to, "
+        f"and that has room."
+    )
 
 
 def _sync_folder(folder: str) -> None:

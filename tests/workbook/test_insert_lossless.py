@@ -8,17 +8,15 @@ from __future__ import annotations
 
 import io
 import struct
-import warnings
 import zipfile
 from collections import Counter
 from functools import cache
 from pathlib import Path
 
-import openpyxl
 import pytest
 from lxml import etree
 from openxml_audit import FileFormat, OpenXmlValidator
-from workbook_build import MAIN, sheet_to_insert
+from workbook_build import MAIN, opened, sheet_to_insert
 from workbook_hosts import HOSTS
 
 from sheetfuncs.workbook import insert_sheet
@@ -93,9 +91,7 @@ def workbook_part(data: bytes) -> etree._Element:
 
 
 def each_sheet(data: bytes) -> dict[str, list]:
-    with warnings.catch_warnings():
-        warnings.simplefilter("ignore")  # openpyxl tells what it cannot keep; it only reads here
-        book = openpyxl.load_workbook(io.BytesIO(data), keep_vba=False)
+    book = opened(data)
     return {
         sheet.title: [[getattr(cell.value, "text", cell.value) for cell in row] for row in sheet.iter_rows()]
         for sheet in book.worksheets

@@ -5,10 +5,12 @@ from __future__ import annotations
 import io
 import posixpath
 import struct
+import warnings
 import zipfile
 import zlib
 from dataclasses import dataclass, field
 
+import openpyxl
 import xlsxwriter
 
 MAIN = "http://schemas.openxmlformats.org/spreadsheetml/2006/main"
@@ -72,6 +74,13 @@ def zipped(files: dict[str, bytes], *, method: int = zipfile.ZIP_DEFLATED, comme
 def unzipped(data: bytes) -> dict[str, bytes]:
     with zipfile.ZipFile(io.BytesIO(data)) as archive:
         return {info.filename: archive.read(info) for info in archive.infolist()}
+
+
+def opened(data: bytes, **options) -> openpyxl.Workbook:
+    """The workbook as openpyxl reads it; its warnings tell what it could not write again, and it only reads here."""
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore")
+        return openpyxl.load_workbook(io.BytesIO(data), **options)
 
 
 def zipped_by_hand(files: dict[str, bytes], *, descriptors: bool = False, zip64: bool = False) -> bytes:
