@@ -22,7 +22,7 @@ def evaluate(name: str, *args: Any, **options: Any) -> Any:
 
 
 def check(*args: Any, **options: Any) -> Any:
-    """Check one regression on arrays, Series or DataFrames; see `sheetfuncs.check.check`."""
-    from sheetfuncs.check import check as compute
+    """Check one regression on arrays, Series or DataFrames; see `sheetfuncs.checking.check`."""
+    from sheetfuncs.checking import check as compute
 
     return compute(*args, **options)

@@ -21,13 +21,13 @@ import sheetfuncs
 PACKAGE = Path(sheetfuncs.__file__).parent
 MODULES = sorted(PACKAGE.rglob("*.py"))
 
-FLOORS = ["errors", "cells", "core", "judgement", "check", "functions", "report", "workbook", "hosts", "cli"]
+FLOORS = ["errors", "cells", "core", "judgement", "checking", "functions", "report", "workbook", "hosts", "cli"]
 THIRD_PARTY = {
     "errors": set(),
     "cells": {"numpy"},
     "core": {"numpy", "scipy.fft", "scipy.linalg", "scipy.special", "threadpoolctl", "statsmodels"},
     "judgement": {"numpy", "scipy.special", "scipy.linalg"},
-    "check": {"numpy", "scipy", "pandas"},
+    "checking": {"numpy", "scipy", "pandas"},
     "functions": {"numpy"},
     "report": {"numpy", "xlsxwriter"},
     "workbook": {"numpy", "lxml", "python_calamine"},
@@ -126,10 +126,10 @@ def test_modules_form_no_circle():
         ("hosts.excel.book", "import xlwings", "at the top"),
         ("hosts.excel.book", "def f():\n    from xlwings import pro", "not allowed in this folder"),
         ("hosts.files", "def f():\n    import xlwings", "not allowed in this folder"),
-        ("check", "if TYPE_CHECKING:\n    import pandas", None),
+        ("checking", "if TYPE_CHECKING:\n    import pandas", None),
         ("workbook.read", "import_module('requests')", "not allowed in this folder"),
         ("workbook.read", "import_module(name)", "not allowed in this folder"),
-        ("check", "from sheetfuncs import __version__", None),
+        ("checking", "from sheetfuncs import __version__", None),
     ],
 )
 def test_rules_find_what_they_are_for(module, source, sentence):

@@ -75,7 +75,7 @@ def as_block(given: object) -> Block:
     if isinstance(given, Block):
         return given
     if isinstance(given, list | tuple):
-        if not all(isinstance(row, list | tuple) for row in given):
+        if not all(issubclass(kind, list | tuple) for kind in set(map(type, given))):
             raise CellKindError("A range is handed over as a list of rows, each a list of cells.")
         return Block.from_rows(given)
     return Block.from_rows([[given]])

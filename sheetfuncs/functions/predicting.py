@@ -6,6 +6,7 @@ import numpy as np
 
 from sheetfuncs.cells.block import Block, Kind
 from sheetfuncs.cells.observations import CategoryColumn, Column
+from sheetfuncs.cells.source import header_text
 from sheetfuncs.core.prediction import predict
 from sheetfuncs.errors import BlockShapeError
 from sheetfuncs.functions.answers import number
@@ -33,7 +34,8 @@ def predict_at(regression: Regression, at: Block, level: float) -> list[list[Cel
     body = ordered.rows(1, at.row_count) if header else ordered
     values, errors = _design_rows(body, predictors)
     cells: list[list[Cell]] = [list(COLUMNS)] if header else []
-    found = predict(regression.fit, values, level)
+    with np.errstate(over="ignore", invalid="ignore"):  # a place far beyond the data may overflow: its cell says #NUM!
+        found = predict(regression.fit, values, level)
     limits = (found.value, found.average_low, found.average_high, found.new_low, found.new_high)
     for row, error in enumerate(errors):
         cells.append([error] * len(COLUMNS) if error else [number(column[row]) for column in limits])
@@ -42,36 +44,39 @@ def predict_at(regression: Regression, at: Block, level: float) -> list[list[Cel
 
 def _places(at: Block, names: list[str]) -> list[int] | None:
     """Where each predictor stands in `at`, whose first row repeats their headers; None where it does not."""
-    first = [at.text(0, column) if at.kinds[0, column] == Kind.TEXT else None for column in range(at.column_count)]
-    if None in first or sorted(map(str, first)) != sorted(names):
-        return None
-    return list(range(len(names))) if first == names else [first.index(name) for name in names]
+    first = [header_text(at, 0, column) or "" for column in range(at.column_count)]
+    return [first.index(name) for name in names] if sorted(first) == sorted(names) else None
 
 
 def _design_rows(body: Block, predictors: tuple[Column | CategoryColumn, ...]) -> tuple[np.ndarray, list[str | None]]:
     """Values of the design's columns, (m, k), and the error of each row that has no prediction."""
     pieces: list[np.ndarray] = []
-    errors: list[str | None] = [None] * body.row_count
+    errors = np.full(body.row_count, None, object)
     for column, predictor in enumerate(predictors):
-        categorical = isinstance(predictor, CategoryColumn)
-        levels = predictor.levels if isinstance(predictor, CategoryColumn) else ()
-        for row in range(body.row_count):
-            errors[row] = errors[row] or _error(body, row, column, levels, categorical)
-        if categorical:
-            texts = [body.text(row, column) for row in range(body.row_count)]
-            pieces += [np.array([float(text == level) for text in texts]) for level in levels[1:]]
+        if isinstance(predictor, CategoryColumn):
+            codes = _codes(body, column, predictor.levels)
+            pieces.append((codes[:, None] == np.arange(1, len(predictor.levels))).astype(np.float64))
+            wrong = (codes < 0) & (body.kinds[:, column] != Kind.BLANK)
         else:
-            numbers = body.numbers[:, column]
-            pieces.append(np.where(np.isfinite(numbers), numbers, 0.0))
-    return np.column_stack(pieces) if pieces else np.empty((body.row_count, 0)), errors
+            pieces.append(np.nan_to_num(body.numbers[:, column])[:, None])
+            wrong = body.kinds[:, column] == Kind.TEXT
+        _mark(errors, body, column, wrong)
+    return np.hstack(pieces), errors.tolist()
 
 
-def _error(body: Block, row: int, column: int, levels: tuple[str, ...], categorical: bool) -> str | None:
-    kind, text = body.kinds[row, column], body.text(row, column)
-    if kind == Kind.BLANK:
-        return "#N/A"
-    if kind == Kind.ERROR:
-        return text
-    if categorical:
-        return None if text in levels else "#VALUE!"
-    return "#VALUE!" if kind == Kind.TEXT else None
+def _codes(body: Block, column: int, levels: tuple[str, ...]) -> np.ndarray:
+    """The place of each cell's text among the levels, -1 where it is none of them."""
+    place = {level: code for code, level in enumerate(levels)}
+    texts = body.texts.get(column)
+    return np.array([place.get(text, -1) for text in ([None] * body.row_count if texts is None else texts.tolist())])
+
+
+def _mark(errors: np.ndarray, body: Block, column: int, wrong: np.ndarray) -> None:
+    """Write this column's errors into the rows that have none yet."""
+    kinds = body.kinds[:, column]
+    free = np.equal(errors, None).astype(bool)
+    errors[free & (kinds == Kind.BLANK)] = "#N/A"
+    errors[free & wrong] = "#VALUE!"
+    failed = free & (kinds == Kind.ERROR)
+    if failed.any():
+        errors[failed] = body.texts[column][failed]

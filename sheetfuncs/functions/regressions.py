@@ -14,7 +14,7 @@ import numpy as np
 
 from sheetfuncs.cells.block import Block
 from sheetfuncs.cells.observations import CategoryColumn, Observations, read_observations, read_predictors
-from sheetfuncs.check import design_of
+from sheetfuncs.checking import design_of
 from sheetfuncs.core.basis import Basis, factorize
 from sheetfuncs.core.design import Category, Group, Numeric, build_design
 from sheetfuncs.core.fit import Fit, fit_design

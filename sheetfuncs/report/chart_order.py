@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.core.smooth import autocorrelations
 from sheetfuncs.report.chart_residuals import response_name
 from sheetfuncs.report.elements import Axis

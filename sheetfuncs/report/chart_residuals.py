@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.core.smooth import local_line, spread_by_groups
 from sheetfuncs.judgement.words import number
 from sheetfuncs.report.elements import Axis

@@ -6,7 +6,7 @@ from collections.abc import Mapping, Sequence
 
 import numpy as np
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.core.shifts import coefficient_shifts
 from sheetfuncs.judgement.words import counted, listed
 from sheetfuncs.report.elements import Axis

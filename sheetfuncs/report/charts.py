@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.report import style as looks
 from sheetfuncs.report.chart_order import autocorrelation_chart, order_chart
 from sheetfuncs.report.chart_residuals import form_chart, normality_chart, variance_chart

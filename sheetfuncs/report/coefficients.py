@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.core.design import INTERCEPT
 from sheetfuncs.judgement.words import number
 from sheetfuncs.report import style as looks

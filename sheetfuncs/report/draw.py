@@ -13,7 +13,7 @@ from xlsxwriter.format import Format
 from xlsxwriter.workbook import Workbook
 from xlsxwriter.worksheet import Worksheet
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.report.chart_drawing import insert_chart
 from sheetfuncs.report.elements import Cell, SheetPlan, Value
 from sheetfuncs.report.paging import MARGIN_BOTTOM, MARGIN_LEFT_RIGHT, MARGIN_TOP

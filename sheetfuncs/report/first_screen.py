@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.judgement.evidence import Evidence
 from sheetfuncs.judgement.uses import next_steps, uses
 from sheetfuncs.judgement.words import counted, listed, number, pvalue
 from sheetfuncs.report import style as looks
 from sheetfuncs.report.formats import PVALUE
 from sheetfuncs.report.layout import COUNT, FIRST, LAST, ROW_POINTS, Head, Page
+from sheetfuncs.report.links import to_area
 from sheetfuncs.report.text import shortened
 
 CAUTION = (
@@ -86,10 +87,9 @@ def how_well(check: Check) -> str:
 
 def _write_what(page: Page, check: Check, data_sheet: str, data_area: str) -> None:
     page.put(FIRST, what_was_fitted(check), looks.LEAD.but(wrap=True), span=COUNT - 3)
-    first_cell = data_area.partition(":")[0].replace("$", "")
-    target = f"'{data_sheet.replace(chr(39), chr(39) * 2)}'!{first_cell}"
     label = f"To the data: {shortened(data_sheet, 22)}!{data_area}"
-    page.put(LAST - 2, label, looks.LINK.but(align="right", upright="vcenter"), span=3, link=target)
+    page.put(LAST - 2, label, looks.LINK.but(align="right", upright="vcenter"), span=3,
+             link=to_area(data_sheet, data_area))
     page.ask_height(18.0)
     page.next()
     page.put(FIRST, " ".join(filter(None, (how_many_rows(check), how_well(check)))), looks.WRAPPED, span=COUNT)

@@ -4,14 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.judgement.words import counted
 from sheetfuncs.report import style as looks
 from sheetfuncs.report.layout import COUNT, FIRST, Head, Page
-from sheetfuncs.report.rows import row_target
+from sheetfuncs.report.links import to_row
 
 ONE_BY_ONE = 50
 MOST_RANGES = 60
+MOST_REASONS = 50
 
 
 def write_ledger(page: Page, check: Check, data_sheet: str, data_area: str) -> None:
@@ -32,20 +33,26 @@ def write_ledger(page: Page, check: Check, data_sheet: str, data_area: str) -> N
         return
     page.labelled("Left out", f"{counted(len(excluded), 'row')}, as listed. No row was changed or deleted.")
     page.gap(4.0)
-    _write_excluded(page, check, data_sheet, excluded)
+    _write_excluded(page, data_sheet, data_area, excluded)
 
 
-def _write_excluded(page: Page, check: Check, data_sheet: str, excluded: Sequence[tuple[int, str]]) -> None:
+def _write_excluded(page: Page, data_sheet: str, data_area: str, excluded: Sequence[tuple[int, str]]) -> None:
     page.table_head([Head(FIRST, 3, "Row left out"), Head(FIRST + 3, COUNT - 3, "Why")])
     if len(excluded) <= ONE_BY_ONE:
         for row, reason in excluded:
-            page.put(FIRST, row, looks.LINK, span=3, link=row_target(check, data_sheet, row))
+            page.put(FIRST, row, looks.LINK, span=3, link=to_row(data_sheet, data_area, row))
             page.put(FIRST + 3, reason, looks.BESIDE, span=COUNT - 3)
             page.next()
         return
-    for reason, rows in by_reason(excluded):
+    groups = by_reason(excluded)
+    for reason, rows in groups[:MOST_REASONS]:
         page.put(FIRST, counted(len(rows), "row"), looks.TEXT, span=3)
         page.put(FIRST + 3, f"{reason}: {ranges_text(rows)}", looks.BESIDE, span=COUNT - 3)
+        page.next()
+    if len(groups) > MOST_REASONS:
+        rest = [row for _, rows in groups[MOST_REASONS:] for row in rows]
+        page.put(FIRST, counted(len(rest), "row"), looks.TEXT, span=3)
+        page.put(FIRST + 3, f"Other reasons: {ranges_text(rest)}", looks.BESIDE, span=COUNT - 3)
         page.next()
 
 

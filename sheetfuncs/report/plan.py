@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from datetime import datetime
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.report.charts import reserve_panels, write_figures
 from sheetfuncs.report.coefficients import write_fit
 from sheetfuncs.report.elements import SheetPlan, Value
@@ -37,13 +37,13 @@ def plan_sheet(
     fingerprint = fingerprint_of(check)
     write_first_screen(page, check, data_sheet, data_area)
     panels = reserve_panels(page, check)
-    write_rows(page, check, data_sheet)
+    write_rows(page, check, data_sheet, data_area)
     write_statistics(page, check)
     write_fit(page, check)
     write_separation(page, check)
     write_ledger(page, check, data_sheet, data_area)
     start = reserve_cross_check(page, check)
-    write_decision(page, decision)
+    write_decision(page, decision, fingerprint)
     write_settings(page, check, data_sheet, data_area, checked_at, fingerprint)
     printed = page.row - 1
     if not why_no_copy(check):

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from datetime import datetime
 
-from sheetfuncs.check import Check, versions
+from sheetfuncs.checking import Check, versions
 from sheetfuncs.core.fingerprint import data_fingerprint
 from sheetfuncs.judgement.words import listed
 from sheetfuncs.report import style as looks
@@ -14,27 +14,37 @@ from sheetfuncs.report.layout import FIRST, LAST, Page
 from sheetfuncs.report.names import DECISION
 
 # The places of the record, in order; the hidden name _sheetfuncs_decision_1 points at the cell of the first, and so on.
-DECISION_FIELDS = ("decision", "reason", "by", "date", "reviewed by")
+# "data" is filled by us: the fingerprint of the data that the record was first kept for.
+DECISION_FIELDS = ("decision", "reason", "by", "date", "reviewed by", "data")
 _LABELS = {
     "decision": "Decision", "reason": "Reason, and limits of use", "by": "Decided by", "date": "Date",
-    "reviewed by": "Reviewed by",
+    "reviewed by": "Reviewed by", "data": "Data decided on",
 }
 _OPTIONS = ("Use it", "Use it within the limits given as reason", "Do not use it yet")
 _LABEL, _ENTRY = 3, 11
+CHANGED = (
+    "The used data have changed since this record was filled in. Decide again; then clear the last cell of the record, "
+    "and the next run puts the present fingerprint there."
+)
 _DATE_FORMAT = "yyyy-mm-dd"
 
 
-def write_decision(page: Page, decision: Mapping[str, Value] | None) -> None:
-    """The record; what was filled in before is written back unchanged."""
+def write_decision(page: Page, decision: Mapping[str, Value] | None, fingerprint: str) -> None:
+    """The record; what was filled in before is written back unchanged, and a change of the data since is said."""
     page.section(
         "decision", "Decision record",
         "Fill in the pale cells. They are kept when the check is run again on the same range.",
     )
-    kept = decision or {}
+    kept = _with_data(decision or {}, fingerprint)
+    if kept["data"] != fingerprint:
+        page.put(FIRST, CHANGED, looks.WRAPPED.but(bold=True, colour=looks.SMOOTH), span=_LABEL + _ENTRY)
+        page.next()
     for place, field in enumerate(DECISION_FIELDS):
         value = kept.get(field)
         number = isinstance(value, int | float) and not isinstance(value, bool)
         look = looks.ENTRY.but(number_format=_DATE_FORMAT if field == "date" else "General", align="left")
+        if field == "data":
+            look = look.but(colour=looks.QUIET)
         page.put(FIRST, _LABELS[field], looks.TEXT.but(upright="vcenter"), span=_LABEL)
         column = FIRST + _LABEL
         page.put(column, value if number or value is None else str(value), look, span=_ENTRY)
@@ -43,6 +53,13 @@ def write_decision(page: Page, decision: Mapping[str, Value] | None) -> None:
             page.choices.append(Choice(page.row, column, _OPTIONS))
         page.names[f"{DECISION}{place + 1}"] = "=" + Area(page.row, column, page.row, column).on(page.title)
         page.next()
+
+
+def _with_data(decision: Mapping[str, Value], fingerprint: str) -> dict[str, Value]:
+    """The record with the fingerprint it is about: the one kept so far, or this one's while nothing is filled in."""
+    filled = any(decision.get(field) not in (None, "") for field in DECISION_FIELDS if field != "data")
+    data = decision.get("data") if filled else None
+    return {**decision, "data": str(data) if data not in (None, "") else fingerprint}
 
 
 def write_settings(

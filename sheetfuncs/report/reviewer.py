@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.report import style as looks
 from sheetfuncs.report.elements import Area, Column
 from sheetfuncs.report.formats import data_format, digits_format

@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.report import style as looks
-from sheetfuncs.report.elements import quoted
 from sheetfuncs.report.formats import column_format
 from sheetfuncs.report.layout import COUNT, FIRST, Head, Page
+from sheetfuncs.report.links import to_row
 from sheetfuncs.report.text import shortened
 
 NOTE = (
@@ -15,7 +15,7 @@ NOTE = (
 )
 
 
-def write_rows(page: Page, check: Check, data_sheet: str) -> None:
+def write_rows(page: Page, check: Check, data_sheet: str, data_area: str) -> None:
     page.section("rows", "Rows that deserve a look", NOTE if check.flagged else "")
     if not check.flagged:
         page.put(FIRST, check.fit.nothing_left() or "No row stands out.", looks.WRAPPED, span=COUNT)
@@ -30,16 +30,9 @@ def write_rows(page: Page, check: Check, data_sheet: str) -> None:
     places = [flag.index for flag in check.flagged]
     one_format = column_format([*response[places], *fitted[places]], 5)
     for flag in check.flagged:
-        page.put(FIRST, flag.row, looks.LINK, link=row_target(check, data_sheet, flag.row))
+        page.put(FIRST, flag.row, looks.LINK, link=to_row(data_sheet, data_area, flag.row))
         page.number(FIRST + 1, response[flag.index], one_format)
         page.number(FIRST + 2, fitted[flag.index], one_format)
         page.number(FIRST + 3, residuals[flag.index], column_format(residuals[places], 4))
         page.put(FIRST + 4, flag.reason, looks.BESIDE, span=COUNT - 4)
         page.next()
-
-
-def row_target(check: Check, data_sheet: str, row: int) -> str:
-    """The first cell of a data row, as a jump writes it."""
-    area = (check.settings.area or "A1").replace("$", "")
-    letters = "".join(c for c in area.partition(":")[0] if c.isalpha()) or "A"
-    return f"{quoted(data_sheet)}!{letters}{row}"

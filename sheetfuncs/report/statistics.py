@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 from sheetfuncs.core.results import Degrees, Result
 from sheetfuncs.report import style as looks
 from sheetfuncs.report.formats import PVALUE, digits_format

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from sheetfuncs.check import Check
+from sheetfuncs.checking import Check
 
 MOST_POINTS = 5_000
 SEED = 1

@@ -1,0 +1,164 @@
+"""The files host: read a range of a workbook, check it, and write the diagnostics sheet. No spreadsheet program."""
+
+from __future__ import annotations
+
+import io
+from collections.abc import Callable, Mapping
+from contextlib import nullcontext
+from dataclasses import dataclass, field
+from datetime import datetime
+from pathlib import Path
+from typing import Any
+
+from sheetfuncs.cells.address import format_area
+from sheetfuncs.cells.observations import read_observations
+from sheetfuncs.checking import Check, check_observations
+from sheetfuncs.errors import ArgumentError, WorkbookBusyError, WorkbookError
+from sheetfuncs.hosts.places import predictions_at
+from sheetfuncs.hosts.recorded import Earlier, earlier_sheet
+
+Step = Callable[[str], None]
+
+
+@dataclass(frozen=True)
+class Request:
+    """What the user asked for. Names are headers or column letters; None means the default."""
+
+    book: Path
+    range_text: str | None = None
+    response: str | None = None
+    predictors: tuple[str, ...] | None = None
+    order: str | None = None
+    date_predictors: tuple[str, ...] = ()
+    base_levels: Mapping[str, str] = field(default_factory=dict)
+    intercept: bool = True
+    level: float = 0.95
+    places: tuple[Mapping[str, str], ...] = ()
+    out: Path | None = None
+    in_place: bool = False
+    write: bool = True
+
+
+@dataclass(frozen=True, eq=False)
+class Done:
+    """What came of it. out: the workbook written, None where none was; sheet: the diagnostics sheet in it."""
+
+    check: Check
+    out: Path | None
+    sheet: str | None
+    replaced: bool
+    warnings: tuple[str, ...]
+    predictions: tuple[dict[str, Any], ...]
+
+    def figures(self) -> dict[str, Any]:
+        """Every figure, JSON-ready."""
+        figures = self.check.to_dict()
+        if self.predictions:
+            figures["predictions"] = list(self.predictions)
+        return figures
+
+
+def check_book(request: Request, step: Step = lambda text: None) -> Done:
+    """Check the requested range and, unless asked not to, write the diagnostics sheet right after the data's sheet."""
+    target = _target(request)
+    warnings = _busy_warnings(request, target)
+    step("Reading the range ...")
+    check = _read_and_check(request, step)
+    predictions = predictions_at(check, request.places, request.level)
+    if target is None:
+        return Done(check, None, None, False, warnings, predictions)
+    earlier = earlier_sheet(request.book, target, check.settings)
+    step("Drawing the sheet ...")
+    sheet, more = _write(request, check, target, earlier, step)
+    return Done(check, target, sheet, earlier.replace is not None, (*warnings, *more), predictions)
+
+
+def evaluate_cell(formula: str, book: Path) -> Any:
+    """The value of one worksheet formula of ours on a workbook's cells: a scalar, or a list of rows."""
+    from sheetfuncs.functions.formula import evaluate_formula
+    from sheetfuncs.workbook.read import open_book
+    from sheetfuncs.workbook.selection import resolve
+
+    with open_book(book) as opened:
+        return evaluate_formula(formula, lambda text: opened.read(resolve(opened, text)))
+
+
+def undo_check(book: Path, *, force: bool = False) -> str:
+    """Bring a workbook back to what it was before the latest check; returns the sentence that says so."""
+    from sheetfuncs.workbook import undo
+
+    undone = undo(book, force=force)
+    kept = f" The edited file is kept as {undone.edits}." if undone.edits else ""
+    return f"{book} is back as it was before the latest check.{kept}"
+
+
+def _target(request: Request) -> Path | None:
+    if not request.write:
+        return None
+    if request.in_place:
+        return request.book
+    target = request.out or request.book.with_name(f"{request.book.stem}-checked{request.book.suffix}")
+    if target.exists() and request.book.exists() and target.samefile(request.book):
+        raise ArgumentError(f"--out {target} is the workbook itself: use --in-place to write into it.")
+    if target.exists():
+        from sheetfuncs.workbook import find_our_sheets
+
+        if not find_our_sheets(target):
+            raise WorkbookError(
+                f"{target} is there already and holds no diagnostics sheet of ours, so it is left alone: "
+                "choose another name with --out."
+            )
+    return target
+
+
+def _busy_warnings(request: Request, target: Path | None) -> tuple[str, ...]:
+    from sheetfuncs.workbook import opened_by
+
+    if target is not None:
+        busy = opened_by(target)
+        if busy:
+            raise WorkbookBusyError(busy if request.in_place else f"{busy} Or choose another file with --out.")
+    busy = opened_by(request.book)
+    return (f"Note: {busy} What was saved last is what was checked.",) if busy else ()
+
+
+def _read_and_check(request: Request, step: Step) -> Check:
+    from sheetfuncs.workbook.read import open_book
+    from sheetfuncs.workbook.selection import read_selection, resolve
+
+    with open_book(request.book) as book:
+        area = resolve(book, request.range_text)
+        selection = read_selection(
+            book, area, response=request.response, predictors=request.predictors, order=request.order
+        )
+    observations = read_observations(
+        selection.response, selection.predictors, selection.order, dates="check",
+        date_predictors=request.date_predictors, base_levels=request.base_levels,
+    )
+    step("Checking ...")
+    return check_observations(
+        observations, intercept=request.intercept, level=request.level, remarks=selection.remarks,
+        date_predictors=request.date_predictors, base_levels=request.base_levels, book=request.book.name,
+        sheet=selection.area.sheet, area=format_area(selection.area.without_sheet()),
+    )
+
+
+def _write(
+    request: Request, check: Check, target: Path, earlier: Earlier, step: Step
+) -> tuple[str, tuple[str, ...]]:
+    from sheetfuncs.report.draw import draw_report
+    from sheetfuncs.workbook import insert_sheet, keep_for_undo
+
+    data_sheet, area = str(check.settings.sheet), str(check.settings.area)
+    drawn = io.BytesIO()
+    draw_report(
+        check, drawn, title=earlier.title, data_sheet=data_sheet, data_area=area, decision=earlier.decision,
+        checked_at=datetime.now(),
+    )
+    step("Writing the workbook ...")
+    # A file of ours that is replaced may hold work of the user's too: it can be brought back with undo.
+    with keep_for_undo(target) if target.exists() else nullcontext():
+        insertion = insert_sheet(
+            request.book, drawn, after=None if earlier.replace else data_sheet, replace=earlier.replace, out=target
+        )
+    return insertion.name, insertion.warnings

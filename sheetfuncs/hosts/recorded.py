@@ -1,0 +1,67 @@
+"""What an earlier check left in a workbook: which sheet to replace, and the decision record to keep."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from pathlib import Path
+
+from sheetfuncs.checking import Settings
+from sheetfuncs.report.elements import Value
+
+
+@dataclass(frozen=True)
+class Earlier:
+    """title: of the new sheet. replace: the sheet in the workbook that it replaces, or None. decision: to write back."""
+
+    title: str
+    replace: str | None
+    decision: Mapping[str, Value]
+
+
+def earlier_sheet(book: Path, target: Path, settings: Settings) -> Earlier:
+    """Look for our sheet of the same data in the workbook, and for its record there and in the file to be replaced."""
+    from sheetfuncs.workbook import sheet_title
+    from sheetfuncs.workbook.read import open_book
+
+    replace = _sheet_of(book, settings)
+    decision = dict(_decision(book, replace)) if replace else {}
+    if target != book and target.exists():
+        there = _sheet_of(target, settings)
+        decision.update({k: v for k, v in (_decision(target, there) if there else {}).items() if v is not None})
+    if replace:
+        return Earlier(replace, replace, decision)
+    with open_book(book) as opened:
+        taken = [sheet.name for sheet in opened.sheets]
+    return Earlier(sheet_title(f"Check of {settings.sheet}", taken=taken), None, decision)
+
+
+def _sheet_of(book: Path, settings: Settings) -> str | None:
+    """The title of our sheet for the same range; another range gets a sheet of its own."""
+    from sheetfuncs.workbook import find_our_sheets
+
+    for sheet in find_our_sheets(book):
+        kept = sheet.settings or {}
+        if (kept.get("sheet"), kept.get("area")) == (settings.sheet, settings.area):
+            return sheet.name
+    return None
+
+
+def _decision(book: Path, sheet: str) -> dict[str, Value]:
+    """The filled cells of the sheet's decision record, by field."""
+    from sheetfuncs.cells.address import parse_area
+    from sheetfuncs.report.names import DECISION
+    from sheetfuncs.report.record import DECISION_FIELDS
+    from sheetfuncs.workbook.read import open_book
+
+    found: dict[str, Value] = {}
+    with open_book(book) as opened:
+        for place, field in enumerate(DECISION_FIELDS, 1):
+            formula = opened.local_name(sheet, f"{DECISION}{place}")
+            if formula is None:
+                continue
+            block = opened.read(parse_area(formula))
+            value = block.value(0, 0) if block.row_count and block.column_count else None
+            if value is not None:
+                found[field] = value
+    return found
