@@ -22,6 +22,7 @@ from sheetfuncs.core.influence import RowMeasures, outlier_test, row_measures
 from sheetfuncs.core.mean import residual_mean
 from sheetfuncs.core.normality import jarque_bera, shapiro_wilk
 from sheetfuncs.core.results import Result
+from sheetfuncs.core.threads import few_threads
 from sheetfuncs.core.variance import breusch_pagan
 from sheetfuncs.errors import ArgumentError
 from sheetfuncs.judgement.evidence import Evidence, all_evidence
@@ -173,10 +174,15 @@ def check_observations(
         order.name if order else None, level, tuple(date_predictors), dict(base_levels or {}), book, sheet, area,
     )
     design = design_of(observations, intercept=intercept)
+    with few_threads(design.columns.size):
+        return _check(observations, design, settings, remarks)
+
+
+def _check(observations: Observations, design: Design, settings: Settings, remarks: Sequence[str]) -> Check:
     fit = fit_design(design)
     measures = row_measures(fit)
     statistics = tuple(all_statistics(fit))
-    inflation = tuple(variance_inflation(fit.basis, design.groups))
+    inflation = variance_inflation(fit.basis, design.groups)
     flagged = rows_to_look_at(fit, measures)
     return Check(
         settings, observations, design, fit, statistics, inflation, measures, flagged,
