@@ -126,6 +126,7 @@ def sheet_to_insert(name: str = "Check of Data", *, rows: int = 12, plain: bool 
     link = book.add_format({**base, "font_color": "#0072B2", "underline": 1})
     flagged = book.add_format({"font_color": "#D55E00", "num_format": "0.00"})
     sheet.set_column("A:A", 30, title)
+    sheet.set_column("B:D", 14)
     sheet.hide_gridlines(2)
     sheet.write(0, 0, "Do the errors grow with the size?", title)
     sheet.write_rich_string(1, 0, "evidence ", book.add_format({"bold": True}), "against", " it ", title)

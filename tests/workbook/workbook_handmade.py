@@ -113,7 +113,7 @@ def _placed(book: str, names: tuple[str, str], targets: tuple[str, str], styles:
     ids = [parts.relate(book, "worksheet", target) for target in targets]
     for name in names:
         parts.add(name, sheet(), SHEET_ML + "worksheet+xml")
-    parts.relate(book, "styles", f"/look/../{styles}")
+    parts.relate(book, "styles", f"/{styles}")
     parts.add(styles, STYLES, SHEET_ML + "styles+xml")
     parts.add(book, workbook([("Data", ids[0]), ("Notes", ids[1])]), SHEET_ML + "sheet.main+xml")
     return parts
