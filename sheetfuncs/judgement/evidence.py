@@ -122,11 +122,10 @@ def _variance(fit: Fit, result: Result) -> Evidence:
         part = "fifth" if groups == 5 else "half"
         if spread[0] > 0 and spread[-1] > 0:
             ratio = spread[-1] / spread[0]
-            wider, which = (ratio, "largest") if ratio >= 1 else (1 / ratio, "smallest")
+            apart = max(ratio, 1 / ratio)
             size = (
-                f"typical error {number(spread[-1], 2)} in the {part} with the largest fitted values, "
-                f"{number(spread[0], 2)} in the smallest: "
-                + (f"{times(wider)} as wide in the {which}" if wider >= ALIKE_BELOW else "equally wide in both")
+                f"typical error {number(spread[-1], 2)} in the {part} of largest fitted values, {number(spread[0], 2)} "
+                "in the smallest: " + (f"{times(apart)} apart" if apart >= ALIKE_BELOW else "equally wide")
             )
     return Evidence(
         "constant variance", "Are the errors equally wide everywhere?", strength, finding,

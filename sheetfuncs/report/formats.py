@@ -12,7 +12,7 @@ PVALUE = '[<0.001]"< 0.001";[<0.1]0.000;0.00'
 SCIENTIFIC = "0.00E+00"
 _LARGE, _SMALL = 1e9, 1e-4
 # What a column of the sheet takes: 82 pixels of nine-point figures.
-MOST_CHARACTERS = 11
+MOST_CHARACTERS, MOST_IN_POWERS = 11, 6
 
 
 def digits_format(value: float, digits: int = 4) -> str:
@@ -20,7 +20,7 @@ def digits_format(value: float, digits: int = 4) -> str:
     if value == 0 or not math.isfinite(value):
         return "0"
     if not _SMALL <= abs(value) < _LARGE:
-        return "0." + "0" * (digits - 1) + "E+00"
+        return "0." + "0" * (min(digits, MOST_IN_POWERS) - 1) + "E+00"
     return decimals_format(_that_fit(value, decimals(value, digits)))
 
 

@@ -56,9 +56,8 @@ class Page:
         array: bool = False, link: str | None = None,
     ) -> Cell:
         """A cell on the current row, over `span` grid columns; wrapped text makes the row as high as it needs."""
-        cell = Cell(
-            self.row, column, value, style, column + span - 1 if span > 1 else None, formula, array, link,
-        )
+        last_column = column + span - 1 if span > 1 else None
+        cell = Cell(self.row, column, None if value == "" else value, style, last_column, formula, array, link)
         self.cells.append(cell)
         if isinstance(value, str):
             self.ask_height(self._height_of(value, span, style))

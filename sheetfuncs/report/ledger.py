@@ -19,7 +19,7 @@ def write_ledger(page: Page, check: Check, data_sheet: str, data_area: str) -> N
     ledger = check.observations.ledger
     page.section("ledger", "Rows used and left out")
     used = counted(len(ledger.used), "row")
-    page.labelled("Used", f"{used} of {data_sheet}!{data_area}: {ranges_text(ledger.used)}.")
+    page.labelled("Used", f"{used} of {data_sheet}!{data_area}: {ranges_text(ledger.used.tolist())}.")
     hidden = (
         f"{counted(ledger.hidden, 'used row is', 'used rows are')} hidden or filtered out, and counted like the others."
         if ledger.hidden else "None of the used rows."
