@@ -91,9 +91,9 @@ def is_address(text: str) -> bool:
     text = text.strip().removeprefix("=")
     if "!" in text:
         return True
-    parts = text.split(":")
+    parts = re.split("[:,;]", text)
     forms = (_CELL,) if len(parts) == 1 else (_CELL, _COLUMN, _ROW)
-    return len(parts) <= 2 and all(any(form.fullmatch(part.strip()) for form in forms) for part in parts)
+    return all(any(form.fullmatch(part.strip()) for form in forms) for part in parts)
 
 
 def parse_area(text: str) -> Area:

@@ -121,7 +121,7 @@ def _all_numbers(rows: Sequence[Sequence[object]], height: int, width: int) -> n
     if not height or not set(map(type, chain.from_iterable(rows))) <= {float, int}:
         return None
     try:
-        numbers = np.fromiter(chain.from_iterable(rows), float, height * width)  # type: ignore[arg-type]
+        numbers = np.fromiter(chain.from_iterable(rows), float, height * width)
     except OverflowError:
         return None
     return np.asfortranarray(numbers.reshape(height, width)) if np.isfinite(numbers).all() else None

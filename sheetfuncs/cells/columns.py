@@ -57,7 +57,8 @@ def require_numbers(source: Source, start: int, end: int, counts: Sequence[int])
     position = start + int(np.argmax(source.kinds[start:end] == Kind.TEXT))
     text = source.texts[position]
     more = counts[Kind.TEXT] - 1
-    others = f", and so {'does' if more == 1 else 'do'} {more:,} more of its cells" if more else ""
+    cells = "1 more cell of the column holds" if more == 1 else f"{more:,} more cells of the column hold"
+    others = f", and {cells} text too" if more else ""
     where = f"{source.cell(position)}"
     if source.block.sheet is not None:
         where += f", in {source.label},"
