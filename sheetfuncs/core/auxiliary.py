@@ -1,36 +1,59 @@
-"""Auxiliary regressions: how much further columns explain, and the refusal that every test shares."""
+"""Auxiliary regressions: how much further columns explain, and the refusals that tests share."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 from scipy.linalg import lapack
 
-from sheetfuncs.core.basis import EPS
+from sheetfuncs.core.basis import EPS, ROUNDINGS, Basis
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply
 from sheetfuncs.core.threads import few_threads
 
+# A column of which no more than this share is left is determined by the others.
+DETERMINED = 1e-12
 
-def explained(target: np.ndarray, columns: np.ndarray) -> tuple[float, int]:
-    """Sum of squares of target (n,) that columns (n, m) explain, and the columns' rank.
 
-    Columns are scaled to unit length first; those that others determine (to within a few thousand roundings) do not
-    count, so that degrees of freedom are the rank and not the number of columns.
+@dataclass(frozen=True)
+class Addition:
+    """What added columns explain of residuals: part, and rest, which they leave (sums of squares); rank they add."""
+
+    part: float
+    rest: float
+    rank: int
+
+    def fits_perfectly(self, noise: float) -> bool:
+        """Whether the rest is rounding: noise is the length of the roundings that the residuals carry."""
+        return self.rest <= (ROUNDINGS * noise) ** 2 + DETERMINED**2 * self.part
+
+
+def add_columns(basis: Basis, residuals: np.ndarray, columns: np.ndarray) -> Addition:
+    """Add columns (n, m) to a regression on basis that left residuals (n,), orthogonal to it.
+
+    Each column is measured against what it was before the basis was taken off it, so that one that the basis or the
+    other columns determine adds nothing, and degrees of freedom are the rank and not the number of columns.
     """
-    lengths = np.linalg.norm(columns, axis=0)
-    kept = lengths > 0
-    if not kept.any():
-        return 0.0, 0
-    with few_threads(columns.size):
-        factors, _, tau, _, _ = lapack.dgeqp3(np.asfortranarray(columns[:, kept] / lengths[kept]))
+    with few_threads(basis.q.size + columns.size):
+        before = np.linalg.norm(columns, axis=0)
+        left = basis.project_out(columns)
+        after = np.linalg.norm(left, axis=0)
+        # Roundings of a column, relative to what is left of it.
+        share = np.maximum(DETERMINED, ROUNDINGS * EPS * basis.amplification) * before
+        kept = np.flatnonzero(after > share)
+        if not kept.size:
+            return Addition(0.0, float(residuals @ residuals), 0)
+        factors, pivot, tau, _, _ = lapack.dgeqp3(np.asfortranarray(left[:, kept] / after[kept]), overwrite_a=1)
         diagonal = np.abs(np.diag(factors))
-        rank = int(np.count_nonzero(diagonal > 4096 * EPS * diagonal[0]))
-        q, _, _ = lapack.dorgqr(factors[:, : diagonal.shape[0]], tau)
-        along = q[:, :rank].T @ target
-    return float(along @ along), rank
+        limit = (share[kept] / after[kept])[pivot[: diagonal.shape[0]] - 1]
+        rank = int(np.count_nonzero(diagonal > np.maximum(limit, DETERMINED)))
+        q = lapack.dorgqr(factors[:, : diagonal.shape[0]], tau, overwrite_a=1)[0][:, :rank]
+        along = q.T @ residuals
+        rest = residuals - q @ along
+    return Addition(float(along @ along), float(rest @ rest), rank)
 
 
 def refused(fit: Fit, method: str, args: Mapping[str, Any], variant: str, null: str) -> DoesNotApply | None:

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
-from scipy.linalg import lapack, solve_triangular
+from scipy.linalg import lapack
 
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import CollinearPredictorsError, NoVariationError, TooFewRowsError
@@ -20,6 +20,8 @@ from sheetfuncs.errors import CollinearPredictorsError, NoVariationError, TooFew
 EPS = float(np.finfo(float).eps)
 # A column that is this many roundings of its own values away from the others is determined by them.
 ROUNDINGS = 16.0
+# Below this the squares of what is left of a column lose digits to the end of the number range.
+SMALLEST = 1e-130
 
 
 @dataclass(frozen=True, eq=False)
@@ -63,15 +65,25 @@ class Basis:
         k = self.r.shape[0]
         inverse = np.empty((k, k))
         if k:
-            inverse[self.pivot] = solve_triangular(self.r, np.eye(k))
+            inverse[self.pivot] = back_substituted(self.r, np.eye(k))
         return inverse
 
     @cached_property
-    def cross_products(self) -> np.ndarray:
-        """(k, k) cross products of the scaled columns in their own order; with an intercept their correlations."""
+    def amplification(self) -> float:
+        """By how much at most a rounding in the scaled columns grows in the column space: 1 for unrelated columns."""
+        return max(1.0, float(np.linalg.norm(self.r_inverse)))
+
+    @cached_property
+    def scaled_coordinates(self) -> np.ndarray:
+        """(k, k) coordinates on q of the scaled columns, in their own order."""
         columns = np.empty_like(self.r)
         columns[:, self.pivot] = self.r
-        return columns.T @ columns
+        return columns
+
+    @property
+    def cross_products(self) -> np.ndarray:
+        """(k, k) cross products of the scaled columns in their own order; with an intercept their correlations."""
+        return self.scaled_coordinates.T @ self.scaled_coordinates
 
     @cached_property
     def coefficient_root(self) -> np.ndarray:
@@ -101,7 +113,8 @@ def factorize(columns: np.ndarray, names: Sequence[str], *, intercept: bool) -> 
 
     Refused (CollinearPredictorsError, naming the columns): a column that is constant beside an intercept, all zero,
     or determined by the others. The measure is the column itself: what is left of it after the others, against the
-    roundings that its own values carry. Refused too: fewer rows than coefficients.
+    roundings that its own values carry. Refused too: fewer rows than coefficients, and values too large or too small
+    for their squares.
     """
     n, k = columns.shape
     if n < k + int(intercept):
@@ -118,7 +131,7 @@ def factorize(columns: np.ndarray, names: Sequence[str], *, intercept: bool) -> 
             raise NoVariationError(
                 "The numbers are too large for their squares to be computed: express them in a larger unit."
             )
-        _refuse_empty_columns(names, scale, raw_norm, intercept)
+        _refuse_empty_columns(columns, names, scale, raw_norm, intercept)
         work /= scale
         q, r, pivot = _pivoted_qr(work)
         limit = EPS * ROUNDINGS * np.sqrt(n) * np.maximum(raw_norm / scale, 1.0)
@@ -147,9 +160,16 @@ def _pivoted_qr(work: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     return q, r, pivot.astype(np.intp) - 1
 
 
-def _refuse_empty_columns(names: Sequence[str], scale: np.ndarray, raw_norm: np.ndarray, intercept: bool) -> None:
+def _refuse_empty_columns(
+    columns: np.ndarray, names: Sequence[str], scale: np.ndarray, raw_norm: np.ndarray, intercept: bool
+) -> None:
     for j, name in enumerate(names):
-        if raw_norm[j] == 0:
+        if raw_norm[j] < SMALLEST:
+            if columns[:, j].any():
+                raise NoVariationError(
+                    f"The values of {name} are too small for their squares to be computed: express it in a smaller "
+                    "unit."
+                )
             raise CollinearPredictorsError(f"{name} is zero in every used row: leave it out.", (name,))
         if intercept and scale[j] <= EPS * ROUNDINGS * raw_norm[j]:
             raise CollinearPredictorsError(
@@ -166,7 +186,7 @@ def _refuse_dependent_columns(
         return
     rank = int(dependent[0])
     # Pivoting decides which column comes out last; the sentence names all that move together with it.
-    weights = solve_triangular(r[:rank, :rank], r[:rank, rank]) if rank else np.empty(0)
+    weights = back_substituted(r[:rank, :rank], r[:rank, rank])
     partners = [int(pivot[i]) for i in np.flatnonzero(np.abs(weights) > 1e-6)]
     together = tuple(names[j] for j in sorted([int(pivot[rank]), *partners]))
     constant = " and the intercept" if intercept else ""
@@ -175,6 +195,11 @@ def _refuse_dependent_columns(
     raise CollinearPredictorsError(
         f"{together[-1]} is determined exactly by {listed(together[:-1])}{constant}: leave one of them out.", together
     )
+
+
+def back_substituted(r: np.ndarray, right: np.ndarray) -> np.ndarray:
+    """Solve r x = right for an upper triangular r (k, k) without zeros on its diagonal."""
+    return lapack.dtrtrs(r, right)[0] if r.shape[0] else np.zeros(right.shape)
 
 
 def listed(names: Sequence[str]) -> str:

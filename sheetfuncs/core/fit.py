@@ -6,10 +6,9 @@ from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
-from scipy.linalg import solve_triangular
 from scipy.special import fdtrc, stdtr, stdtrit
 
-from sheetfuncs.core.basis import EPS, ROUNDINGS, Basis, centred, factorize
+from sheetfuncs.core.basis import EPS, ROUNDINGS, SMALLEST, Basis, back_substituted, centred, factorize
 from sheetfuncs.core.design import Design
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import NoVariationError
@@ -20,7 +19,8 @@ class Fit:
     """A least-squares fit.
 
     coefficients: (p,), the constant first. residuals: (n,) in the rows' own order. rss: their sum of squares.
-    perfect: the residuals are rounding noise and are stored as zeros.
+    perfect: the residuals are rounding noise and are stored as zeros. noise: the length (as of sqrt(rss)) of the
+    roundings that response and coefficients carry into the residuals.
     """
 
     design: Design
@@ -29,6 +29,7 @@ class Fit:
     residuals: np.ndarray
     rss: float
     perfect: bool
+    noise: float
 
     @property
     def n(self) -> int:
@@ -41,6 +42,11 @@ class Fit:
     @property
     def df(self) -> int:
         return self.n - self.p
+
+    @property
+    def relative_noise(self) -> float:
+        """The roundings in the residuals, relative to the residuals: 1 and more where they are nothing else."""
+        return self.noise / float(np.sqrt(self.rss)) if self.rss > 0 else 1.0
 
     @property
     def has_error_bars(self) -> bool:
@@ -100,12 +106,19 @@ class Fit:
         return self.coefficients - half, self.coefficients + half
 
     @cached_property
-    def tss(self) -> float:
-        """Total sum of squares: about the mean with an intercept, about zero without."""
+    def fitted_about_mean(self) -> np.ndarray:
+        """(n,): fitted values minus the response's mean, every digit kept where the response has a large offset;
+        without an intercept the fitted values themselves."""
         y = self.design.response
-        if self.design.intercept:
-            y = y - y.mean()
-        return float(y @ y)
+        return (centred(y)[0] if self.design.intercept else y) - self.residuals
+
+    @cached_property
+    def tss(self) -> float:
+        """Total sum of squares: about the mean with an intercept, about zero without; 0 where it is rounding only."""
+        y = self.design.response
+        left = centred(y)[0] if self.design.intercept else y
+        total = float(left @ left)
+        return total if total > (ROUNDINGS * EPS) ** 2 * float(y @ y) else 0.0
 
     @cached_property
     def r_squared(self) -> float:
@@ -158,6 +171,9 @@ class Fit:
                 f"{self.n} rows for {self.p} coefficients leave no degrees of freedom: the line passes through every "
                 "row. Add rows or use fewer predictors."
             )
+        if self.perfect and self.tss == 0.0:
+            same = "the same value" if self.design.intercept else "a zero"
+            return f"Every used row has {same} of {self.design.response_name}, so that there is nothing to explain."
         if self.perfect:
             return "The fit is perfect: what is left is rounding noise, and nothing can be tested on it."
         return ""
@@ -166,8 +182,8 @@ class Fit:
 def fit_design(design: Design) -> Fit:
     """Fit a Design by least squares.
 
-    Refused as `factorize` says, and where squares overflow. With n == p, or with residuals within a few roundings of
-    the data, the residuals are set to zero: what is computed there is noise.
+    Refused as `factorize` says, and where the response's squares overflow or underflow. With n == p, or with residuals
+    within a few roundings of the data, the residuals are set to zero: what is computed there is noise.
     """
     basis = factorize(design.columns, design.column_names, intercept=design.intercept)
     with few_threads(design.columns.size):
@@ -182,6 +198,10 @@ def _solve(design: Design, basis: Basis) -> Fit:
             raise NoVariationError(
                 "The response is too large for its squares to be computed: express it in a larger unit."
             )
+    if 0.0 < np.abs(y).max() < SMALLEST:
+        raise NoVariationError(
+            "The response is too small for its squares to be computed: express it in a smaller unit."
+        )
     projected = basis.q.T @ left
     left -= basis.q @ projected
     correction = basis.q.T @ left  # a second projection keeps the residuals orthogonal to the last digit
@@ -195,7 +215,7 @@ def _solve(design: Design, basis: Basis) -> Fit:
     perfect = bool(np.linalg.norm(left) <= ROUNDINGS * noise)
     if design.n == design.p or perfect:
         left[:] = 0.0
-    fit = Fit(design, basis, coefficients, left, float(left @ left), perfect and design.n > design.p)
+    fit = Fit(design, basis, coefficients, left, float(left @ left), perfect and design.n > design.p, noise)
     left[fit.fits_itself] = 0.0
     return fit
 
@@ -204,5 +224,5 @@ def _slopes(basis: Basis, coordinates: np.ndarray) -> np.ndarray:
     k = coordinates.shape[0]
     scaled = np.empty(k)
     if k:
-        scaled[basis.pivot] = solve_triangular(basis.r, coordinates)
+        scaled[basis.pivot] = back_substituted(basis.r, coordinates)
     return scaled / basis.scale

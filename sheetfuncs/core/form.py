@@ -7,7 +7,8 @@ from collections.abc import Sequence
 import numpy as np
 from scipy.special import fdtrc
 
-from sheetfuncs.core.auxiliary import explained, refused
+from sheetfuncs.core.auxiliary import add_columns, refused
+from sheetfuncs.core.basis import EPS, ROUNDINGS
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 from sheetfuncs.errors import ArgumentError
@@ -20,14 +21,15 @@ def reset(fit: Fit, powers: Sequence[int] = (2, 3), *, of: str = "fitted") -> Re
     """RESET: F of adding powers of the fitted values, or of the numeric predictors (Ramsey 1969, JRSS B 31:350-371).
 
     Powers are taken of centred and scaled values, so that large numbers cost no digit (without an intercept only
-    scaled: there the centre would change the test). The numerator's degrees of freedom are the rank that the powers
-    add.
+    scaled: there the centre would change the test). With 2, or 2 and 3, this is the same test as with powers of the
+    values themselves; with 3 alone it is not. The numerator's degrees of freedom are the rank that the powers add.
     """
     powers = tuple(powers)
     if of not in _TYPES:
         raise ArgumentError(f'"{of}" has no powers to take: use fitted or predictors.')
-    if not powers or any(power != int(power) or power < 2 for power in powers):
+    if not powers or any(not float(power).is_integer() or power < 2 for power in powers):
         raise ArgumentError(f"{list(powers)} are not powers to add: use whole numbers from 2 up.")
+    powers = tuple(sorted({int(power) for power in powers}))
     args = {"power": list(powers) if len(powers) > 1 else powers[0], "type": _TYPES[of]}
     what = "the fitted values" if of == "fitted" else "the predictors"
     variant = f"power{'s' if len(powers) > 1 else ''} {' and '.join(map(str, powers))} of {what}"
@@ -36,32 +38,42 @@ def reset(fit: Fit, powers: Sequence[int] = (2, 3), *, of: str = "fitted") -> Re
     if refusal:
         return refusal
 
-    def cannot(reason: str) -> DoesNotApply:
-        return DoesNotApply(method="reset", args=args, variant=variant, null=null, reason=reason)
+    def cannot(reason: str, cell_error: str = "#N/A") -> DoesNotApply:
+        return DoesNotApply(
+            method="reset", args=args, variant=variant, null=null, reason=reason, cell_error=cell_error
+        )
 
-    base = fit.fitted[:, None] if of == "fitted" else _numeric_columns(fit)
-    if fit.design.intercept:
-        base = base - base.mean(axis=0)
-    size = np.abs(base).max(axis=0)
-    base = base[:, size > 0] / size[size > 0]
+    base = _base(fit, of)
     if not base.shape[1]:
         return cannot(f"{what.capitalize()} do not vary, so they have no powers to add.")
-    added = fit.basis.project_out(np.hstack([base**power for power in powers]))
-    added[:, np.linalg.norm(added, axis=0) < 1e-10 * np.sqrt(fit.n)] = 0.0
-    part, rank = explained(fit.residuals, added)
-    left = fit.df - rank
-    if rank == 0 or (of == "fitted" and rank < len(powers)):
+    added = add_columns(fit.basis, fit.residuals, np.hstack([base**power for power in powers]))
+    left = fit.df - added.rank
+    if added.rank == 0 or (of == "fitted" and added.rank < min(len(powers), fit.df)):
         return cannot(f"The powers of {what} are already determined by the predictors, so nothing can be added.")
     if left < 1:
-        return cannot(f"{fit.n} rows are too few to add {rank} powers to {fit.p} coefficients.")
-    rest = fit.rss - part
-    if rest <= 0 or np.sqrt(rest) <= 1e-10 * np.sqrt(fit.rss):
-        return cannot("With the powers added the fit is perfect, so that there is nothing to compare with.")
-    statistic = part / rank / (rest / left)
+        return cannot(f"{fit.n} rows are too few to add powers of {what} to {fit.p} coefficients.", "#NUM!")
+    if added.fits_perfectly(fit.noise):
+        return cannot("With the powers added the fit is perfect, so that F has no denominator.", "#NUM!")
+    statistic = added.part / added.rank / (added.rest / left)
     return Statistic(
-        method="reset", args=args, variant=variant, statistic=statistic, df=(rank, left),
-        p=float(fdtrc(rank, left, statistic)), null=null,
+        method="reset", args=args, variant=variant, statistic=statistic, df=(added.rank, left),
+        p=float(fdtrc(added.rank, left, statistic)), null=null,
     )
+
+
+def _base(fit: Fit, of: str) -> np.ndarray:
+    """The columns to take powers of, (n, m): largest value 1, about their means where there is an intercept. Those that
+    do not vary beyond rounding are left out."""
+    if of == "fitted":
+        base, whole = fit.fitted_about_mean[:, None], fit.design.response[:, None]
+    else:
+        whole = _numeric_columns(fit)
+        base = whole - whole.mean(axis=0) if fit.design.intercept else whole
+    if not base.shape[1]:
+        return base
+    size = np.abs(base).max(axis=0)
+    varies = size > ROUNDINGS * EPS * np.abs(whole).max(axis=0)
+    return base[:, varies] / size[varies]
 
 
 def _numeric_columns(fit: Fit) -> np.ndarray:

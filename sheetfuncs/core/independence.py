@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from scipy.special import chdtrc, fdtrc
 
-from sheetfuncs.core.auxiliary import explained, refused
+from sheetfuncs.core.auxiliary import add_columns, refused
 from sheetfuncs.core.basis import factorize
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.quadratic_forms import durbin_watson_tails
@@ -74,7 +74,7 @@ def breusch_godfrey(
         raise ArgumentError(f'"{distribution}" is not a distribution of this test: use chi-square or F.')
     if before_first not in _FILLS:
         raise ArgumentError(f'"{before_first}" is not possible before the first row: use zeros or omitted.')
-    if lags < 1 or lags != int(lags):
+    if not float(lags).is_integer() or lags < 1:
         raise ArgumentError(f"{lags} is not a number of lags: use a whole number from 1 up.")
     lags = int(lags)
     args = {"order": lags, "type": _TYPES[distribution], "fill": _FILLS[before_first]}
@@ -86,24 +86,33 @@ def breusch_godfrey(
     n = fit.n if before_first == "zeros" else fit.n - lags
     left = n - fit.p - lags
 
-    def cannot(reason: str) -> DoesNotApply:
-        return DoesNotApply(method="breusch_godfrey", args=args, variant=variant, null=NO_CORRELATION, reason=reason)
+    def cannot(reason: str, cell_error: str = "#N/A") -> DoesNotApply:
+        return DoesNotApply(
+            method="breusch_godfrey", args=args, variant=variant, null=NO_CORRELATION, reason=reason,
+            cell_error=cell_error,
+        )
 
     if left < 1:
-        return cannot(f"{fit.n} rows are too few for {fit.p} coefficients and {lags} lags.")
+        rows = f"{fit.n} rows" if n == fit.n else f"{max(n, 0)} of {fit.n} rows"
+        return cannot(
+            f"{rows} are too few for {fit.p} coefficients and {lags} lag{'s' if lags > 1 else ''}: the auxiliary "
+            "regression would fit perfectly, whatever the data.", "#NUM!",
+        )
     try:
-        total, part, rank = _lagged_sums(fit, lags, zeros=before_first == "zeros")
+        part, rest, rank = _lagged_sums(fit, lags, zeros=before_first == "zeros")
     except NumbersError:
         return cannot("Without the first rows the predictors can no longer be told apart.")
     if rank < lags:
         return cannot("The lagged residuals cannot be told apart from the predictors.")
     if distribution == "chi-square":
-        statistic = n * part / total
+        statistic = n * part / (part + rest)
         return Statistic(
             method="breusch_godfrey", args=args, variant=variant, statistic=statistic, df=lags,
             p=float(chdtrc(lags, statistic)), null=NO_CORRELATION,
         )
-    statistic = part / lags / ((total - part) / left)
+    if rest == 0.0:
+        return cannot("The lagged residuals determine the residuals exactly, so that F has no denominator.", "#NUM!")
+    statistic = part / lags / (rest / left)
     return Statistic(
         method="breusch_godfrey", args=args, variant=variant, statistic=statistic, df=(lags, left),
         p=float(fdtrc(lags, left, statistic)), null=NO_CORRELATION,
@@ -111,18 +120,19 @@ def breusch_godfrey(
 
 
 def _lagged_sums(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float, int]:
-    """Sum of squares of the residuals, the part that design and lags explain, and the rank of the lags."""
+    """Sums of squares of the residuals that design and lags explain and leave (0 if rounding); the rank of the lags."""
     e = fit.design.in_order(fit.residuals)
-    lagged = np.column_stack([np.concatenate([np.zeros(lag), e[:-lag]]) for lag in range(1, lags + 1)])
+    lagged = np.zeros((fit.n, lags))
+    for lag in range(1, lags + 1):
+        lagged[lag:, lag - 1] = e[:-lag]
     if zeros:
         order = fit.design.order
-        back = slice(None) if order is None else np.argsort(order)
-        part, rank = explained(fit.residuals, fit.basis.project_out(lagged[back]))
-        return fit.rss, part, rank
+        added = add_columns(fit.basis, fit.residuals, lagged if order is None else lagged[np.argsort(order)])
+        return added.part, 0.0 if added.fits_perfectly(fit.noise) else added.rest, added.rank
     columns = fit.design.columns if fit.design.order is None else fit.design.columns[fit.design.order]
     basis = factorize(columns[lags:], fit.design.column_names, intercept=fit.design.intercept)
-    kept = e[lags:]
-    unexplained = basis.project_out(kept)
-    part, rank = explained(unexplained, basis.project_out(lagged[lags:]))
-    total = float(kept @ kept)
-    return total, total - float(unexplained @ unexplained) + part, rank
+    unexplained = basis.project_out(e[lags:])
+    by_design = e[lags:] - unexplained
+    added = add_columns(basis, unexplained, lagged[lags:])
+    rest = 0.0 if added.fits_perfectly(fit.noise) else added.rest
+    return float(by_design @ by_design) + added.part, rest, added.rank

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from sheetfuncs.core.auxiliary import refused
+from sheetfuncs.core.basis import ROUNDINGS
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import Result, Statistic
 
@@ -13,10 +14,11 @@ ZERO_BELOW = 1e-12
 
 
 def residual_mean(fit: Fit) -> Result:
-    """Mean of the residuals, in the response's units; details: mean_over_sd, its share of their standard deviation.
+    """Mean of the residuals, in the response's units; details: mean_over_sd, its share of their standard deviation
+    (divisor n - 1; left out where all residuals are equal).
 
-    With an intercept it is zero by construction and tells nothing. Without one it is what it is, and no test is made
-    of it: the fit forces something else to zero.
+    With an intercept it is zero by construction, up to rounding that is judged relative to the residuals, and tells
+    nothing. Without one it is what it is, and no test is made of it: the fit forces something else to zero.
     """
     with_intercept = fit.design.intercept
     variant = "zero by construction" if with_intercept else "no intercept, so not fixed by the fit"
@@ -26,13 +28,22 @@ def residual_mean(fit: Fit) -> Result:
         return refusal
     mean = float(fit.residuals.mean())
     spread = float(np.std(fit.residuals, ddof=1))
-    note = (
-        "An intercept takes up any mean, so this carries no information about the model."
-        if with_intercept else
-        "Without an intercept the residuals need not average zero; a mean that is large beside their spread says that "
-        "the line misses the middle of the data."
-    )
+    share = mean / spread if spread > ROUNDINGS * fit.noise else None
     return Statistic(
-        method="residual_mean", args={}, variant=variant, statistic=mean, null=null, note=note,
-        details={"mean_over_sd": mean / spread},
+        method="residual_mean", args={}, variant=variant, statistic=mean, null=null, note=_note(fit, share),
+        details={} if share is None else {"mean_over_sd": share},
     )
+
+
+def _note(fit: Fit, share: float | None) -> str:
+    if not fit.design.intercept:
+        return (
+            "Without an intercept the residuals need not average zero; a mean that is large beside their spread says "
+            "that the line misses the middle of the data."
+        )
+    if share is not None and abs(share) > ZERO_BELOW:
+        return (
+            "With an intercept this should be zero up to rounding and is not: the numbers are of such different sizes "
+            "that digits were lost."
+        )
+    return "An intercept takes up any mean, so this carries no information about the model."

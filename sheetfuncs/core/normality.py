@@ -6,11 +6,13 @@ import numpy as np
 from scipy.special import chdtrc, ndtr, ndtri
 
 from sheetfuncs.core.auxiliary import refused
+from sheetfuncs.core.basis import ROUNDINGS
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 
 NORMAL = "the errors are normal"
 RESIDUALS_NOTE = "Residuals are not independent draws, so p is approximate."
+EQUAL = "All residuals are equal, so that they have no shape."
 SHAPIRO_FEWEST, SHAPIRO_MOST = 3, 5000
 
 # Royston 1995, Algorithm AS R94, Applied Statistics 44:547-551: polynomial coefficients, lowest power first.
@@ -32,6 +34,10 @@ def shapiro_wilk(fit: Fit) -> Result:
         return DoesNotApply(
             method="shapiro_wilk", args={}, variant="Royston 1995", null=NORMAL,
             reason=f"Its p-value is established for {SHAPIRO_FEWEST} to {SHAPIRO_MOST:,} rows; there are {fit.n:,}.",
+        )
+    if _all_equal(fit):
+        return DoesNotApply(
+            method="shapiro_wilk", args={}, variant="Royston 1995", null=NORMAL, reason=EQUAL, cell_error="#NUM!"
         )
     w, p = shapiro_wilk_of(fit.residuals)
     return Statistic(
@@ -102,6 +108,10 @@ def jarque_bera(fit: Fit) -> Result:
     refusal = refused(fit, "jarque_bera", {}, variant, NORMAL)
     if refusal:
         return refusal
+    if _all_equal(fit):
+        return DoesNotApply(
+            method="jarque_bera", args={}, variant=variant, null=NORMAL, reason=EQUAL, cell_error="#NUM!"
+        )
     skewness, kurtosis = shape(fit.residuals)
     statistic = fit.n / 6.0 * (skewness**2 + (kurtosis - 3.0) ** 2 / 4.0)
     return Statistic(
@@ -111,8 +121,13 @@ def jarque_bera(fit: Fit) -> Result:
     )
 
 
+def _all_equal(fit: Fit) -> bool:
+    """Whether the residuals differ by rounding only: possible without an intercept."""
+    return float(np.ptp(fit.residuals)) <= ROUNDINGS * fit.noise
+
+
 def shape(values: np.ndarray) -> tuple[float, float]:
-    """Skewness and kurtosis (3 is normal), moments about the mean with divisor n."""
+    """Skewness and kurtosis (3 is normal) of values that are not all equal, moments about the mean with divisor n."""
     left = values - values.mean()
     left = left / np.abs(left).max()
     second = float(np.mean(left**2))

@@ -5,6 +5,7 @@ from __future__ import annotations
 from scipy.special import chdtrc
 
 from sheetfuncs.core.auxiliary import refused
+from sheetfuncs.core.basis import ROUNDINGS
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 
@@ -32,19 +33,17 @@ def breusch_pagan(fit: Fit, *, studentize: bool = True) -> Result:
                    + ("." if fit.design.intercept else ", or two predictors without one."),
         )
     ratio = fit.residuals**2 / (fit.rss / fit.n) - 1.0
-    along = fit.basis.q.T @ ratio
-    part = float(along @ along)
     total = float(ratio @ ratio)
-    if total == 0.0:
+    if total <= fit.n * (ROUNDINGS * fit.relative_noise) ** 2:
         return DoesNotApply(
-            method="breusch_pagan", args=args, variant=variant, null=CONSTANT,
+            method="breusch_pagan", args=args, variant=variant, null=CONSTANT, cell_error="#NUM!",
             reason="All residuals have the same size, so their squares show no variation to explain.",
         )
+    along = fit.basis.q.T @ ratio
+    part = float(along @ along)
     statistic = fit.n * part / total if studentize else part / 2.0
     note = "" if fit.design.intercept else "Auxiliary regression without a constant, as the fit has none."
     return Statistic(
         method="breusch_pagan", args=args, variant=variant, statistic=statistic, df=df,
         p=float(chdtrc(df, statistic)), null=CONSTANT, note=note,
     )
-
-
