@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from sheetfuncs.errors import AddressError
 
@@ -33,6 +33,9 @@ class Area:
 
     def __str__(self) -> str:
         return format_area(self)
+
+    def without_sheet(self) -> Area:
+        return replace(self, sheet=None)
 
     @property
     def is_cell(self) -> bool:

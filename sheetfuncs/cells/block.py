@@ -65,6 +65,14 @@ class Block:
         texts = self.texts.get(column)
         return None if texts is None else texts[row]
 
+    def value(self, row: int, column: int) -> float | bool | str | None:
+        """What a cell holds, as hosts hand it over: None for a blank, a serial number for a date."""
+        kind = self.kinds[row, column]
+        if kind in (Kind.TEXT, Kind.ERROR):
+            return self.text(row, column)
+        number = float(self.numbers[row, column])
+        return None if kind == Kind.BLANK else bool(number) if kind == Kind.BOOLEAN else number
+
     def worksheet_column(self, column: int) -> int:
         """The worksheet column (1-based) of a column of the block (0-based)."""
         return self.first_column + column if self.worksheet_columns is None else self.worksheet_columns[column]

@@ -74,7 +74,8 @@ class Book:
         self._whole: tuple[str, SheetCells] | None = None
         kinds = {relationship.id: relationship.kind for relationship in package.relationships(self._xml.part)}
         self._places = [
-            index for index in range(len(self._xml.sheets))
+            index
+            for index in range(len(self._xml.sheets))
             if kinds.get(self._xml.relationship_id(index)) == "worksheet"
         ]
         if not self._places:
@@ -132,6 +133,15 @@ class Book:
                 found.append(BookName(name.name, name.formula, sheet, hidden))
         return tuple(found)
 
+    def local_name(self, sheet: str, name: str) -> str | None:
+        """The formula behind a name that belongs to a sheet, without a leading "="; None where there is none."""
+        for found in self.defined_names:
+            if found.sheet is not None and (found.sheet.casefold(), found.name.casefold()) == (
+                sheet.casefold(), name.casefold()
+            ):
+                return found.formula
+        return None
+
     @cached_property
     def tables(self) -> tuple[Table, ...]:
         return tuple(table for sheet in self.sheets for table in self._tables_of(sheet))
@@ -148,7 +158,9 @@ class Book:
                 continue  # a damaged table is no place to look for data; its cells can still be given by address
             if root.tag == main("table") and area.last_row is not None:
                 yield Table(
-                    root.get("displayName", root.get("name", "")), area, integer(root, "headerRowCount", 1),
+                    root.get("displayName", root.get("name", "")),
+                    area,
+                    integer(root, "headerRowCount", 1),
                     integer(root, "totalsRowCount", 0),
                     tuple(column.get("name", "") for column in children(child(root, "tableColumns"), "tableColumn")),
                 )

@@ -19,8 +19,13 @@ _EARLIEST_DATE = 366.0  # below it a date format shows a time of day or a durati
 
 
 def read_selection(
-    book: Book, area: Area, *, response: str | None = None, predictors: Sequence[str] | None = None,
-    order: str | None = None, date_predictors: Collection[str] = (),
+    book: Book,
+    area: Area,
+    *,
+    response: str | None = None,
+    predictors: Sequence[str] | None = None,
+    order: str | None = None,
+    date_predictors: Collection[str] = (),
 ) -> tuple[Block, Block, Block | None, tuple[str, ...]]:
     """The response, the predictors and perhaps the order of a range, with a remark for each thing decided here.
 
@@ -73,7 +78,10 @@ class _Columns:
         ]
 
     def choose(
-        self, response: str | None, predictors: Sequence[str] | None, order: str | None,
+        self,
+        response: str | None,
+        predictors: Sequence[str] | None,
+        order: str | None,
         date_predictors: Collection[str],
     ) -> None:
         named_response = None if response is None else self._place(response, "response")
@@ -177,8 +185,13 @@ class _Columns:
         block = self.block
         last_row, last_column = block.first_row + block.row_count - 1, block.first_column + block.column_count - 1
         return format_area(
-            Area(block.sheet, block.first_row, block.first_column, max(last_row, block.first_row),
-                 max(last_column, block.first_column))
+            Area(
+                block.sheet,
+                block.first_row,
+                block.first_column,
+                max(last_row, block.first_row),
+                max(last_column, block.first_column),
+            )
         )
 
 
