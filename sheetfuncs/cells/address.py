@@ -14,8 +14,10 @@ _CELL = re.compile(r"\$?([A-Za-z]{1,3})\$?([0-9]{1,7})")
 _COLUMN = re.compile(r"\$?([A-Za-z]{1,3})")
 _ROW = re.compile(r"\$?([0-9]{1,7})")
 _BARE_SHEET = re.compile(r"[^\W\d][\w.]*")
-_LOOKS_LIKE_CELL = re.compile(r"[A-Za-z]{1,3}[0-9]+|[Rr]-?[0-9]*([Cc]-?[0-9]*)?|[Cc]-?[0-9]*|[Tt][Rr][Uu][Ee]|"
-                              r"[Ff][Aa][Ll][Ss][Ee]")
+_LOOKS_LIKE_CELL = re.compile(
+    r"[A-Za-z]{1,3}[0-9]+|[Rr]-?[0-9]*([Cc]-?[0-9]*)?|[Cc]-?[0-9]*|[Tt][Rr][Uu][Ee]|"
+    r"[Ff][Aa][Ll][Ss][Ee]"
+)
 
 
 @dataclass(frozen=True)
@@ -130,7 +132,7 @@ def _split_sheet(whole: str, text: str) -> tuple[str | None, str]:
                 f"{_shown(text)} has a sheet name in quotes that is not closed before '!'; write it as "
                 "'Job list'!B3:F64, and a quote inside the name twice."
             )
-        name, cells = match[1].replace("''", "'"), whole[match.end():]
+        name, cells = match[1].replace("''", "'"), whole[match.end() :]
     elif "!" in whole:
         name, cells = whole.split("!", 1)
         if "!" in cells and not re.search(r":\s*'?[^:]+!", cells):  # an unquoted name that holds "!" itself

@@ -11,10 +11,27 @@ import numpy as np
 
 from sheetfuncs.errors import CellKindError
 
-ERROR_TEXTS = frozenset({
-    "#NULL!", "#DIV/0!", "#VALUE!", "#REF!", "#NAME?", "#NUM!", "#N/A", "#GETTING_DATA",
-    "#SPILL!", "#CALC!", "#FIELD!", "#BLOCKED!", "#CONNECT!", "#UNKNOWN!", "#BUSY!", "#EXTERNAL!", "#PYTHON!",
-})
+ERROR_TEXTS = frozenset(
+    {
+        "#NULL!",
+        "#DIV/0!",
+        "#VALUE!",
+        "#REF!",
+        "#NAME?",
+        "#NUM!",
+        "#N/A",
+        "#GETTING_DATA",
+        "#SPILL!",
+        "#CALC!",
+        "#FIELD!",
+        "#BLOCKED!",
+        "#CONNECT!",
+        "#UNKNOWN!",
+        "#BUSY!",
+        "#EXTERNAL!",
+        "#PYTHON!",
+    }
+)
 
 
 class Kind(IntEnum):
@@ -84,18 +101,29 @@ class Block:
         first = places[0] if places else self.first_column
         adjacent = places == tuple(range(first, first + len(places)))
         return Block(
-            self.numbers[:, indices], self.kinds[:, indices],
+            self.numbers[:, indices],
+            self.kinds[:, indices],
             {new: self.texts[old] for new, old in enumerate(indices) if old in self.texts},
-            self.sheet, self.first_row, first, self.hidden, None if adjacent else places, self.date1904,
+            self.sheet,
+            self.first_row,
+            first,
+            self.hidden,
+            None if adjacent else places,
+            self.date1904,
         )
 
     def rows(self, start: int, stop: int) -> Block:
         """The block made of the rows start to stop - 1 (0-based)."""
         return Block(
-            self.numbers[start:stop], self.kinds[start:stop],
+            self.numbers[start:stop],
+            self.kinds[start:stop],
             {column: texts[start:stop] for column, texts in self.texts.items()},
-            self.sheet, self.first_row + start, self.first_column,
-            None if self.hidden is None else self.hidden[start:stop], self.worksheet_columns, self.date1904,
+            self.sheet,
+            self.first_row + start,
+            self.first_column,
+            None if self.hidden is None else self.hidden[start:stop],
+            self.worksheet_columns,
+            self.date1904,
         )
 
     @classmethod

@@ -146,7 +146,8 @@ def _refuse_levels(source: Source, levels: list[str], rows: int) -> None:
     if len(levels) == 1 < rows:
         raise CollinearPredictorsError(
             f"{source.label} holds the text {shown(levels[0])} in every used row, so it explains nothing; leave it out "
-            "of the predictors.", (source.name,)
+            "of the predictors.",
+            (source.name,),
         )
     if len(levels) == rows:
         raise CellKindError(
@@ -167,7 +168,9 @@ def _alike_remarks(source: Source, levels: Iterable[str]) -> list[str]:
         groups.setdefault(" ".join(level.split()).casefold(), []).append(level)
     remarks = [
         f"{source.label}: the levels {' and '.join(map(shown, alike))} differ only in spaces or capitals, and count as "
-        "different." for alike in groups.values() if len(alike) > 1
+        "different."
+        for alike in groups.values()
+        if len(alike) > 1
     ]
     if "" in groups:
         remarks.append(f"{source.label} has a level that is nothing but spaces.")

@@ -25,7 +25,13 @@ from sheetfuncs.cells.source import Source, make_sources, predictors_say_header,
 from sheetfuncs.errors import ArgumentError, BlockShapeError, TooFewRowsError
 
 __all__ = [
-    "CategoryColumn", "Column", "ExcludedRow", "Ledger", "Observations", "PredictorColumns", "read_observations",
+    "CategoryColumn",
+    "Column",
+    "ExcludedRow",
+    "Ledger",
+    "Observations",
+    "PredictorColumns",
+    "read_observations",
     "read_predictors",
 ]
 
@@ -72,8 +78,13 @@ class Observations:
 
 
 def read_observations(
-    response: Block, predictors: Block, order: Block | None = None, *, names: Sequence[str] | None = None,
-    dates: Literal["plain", "check"] = "plain", date_predictors: Collection[str] = (),
+    response: Block,
+    predictors: Block,
+    order: Block | None = None,
+    *,
+    names: Sequence[str] | None = None,
+    dates: Literal["plain", "check"] = "plain",
+    date_predictors: Collection[str] = (),
     base_levels: Mapping[str, str] | None = None,
 ) -> Observations:
     """Read a response (one column), its predictors (k columns) and perhaps an order (one column), equally high.
@@ -102,8 +113,15 @@ def read_observations(
     assert isinstance(columns[0], Column)
     assert not isinstance(read_order, CategoryColumn)
     return Observations(
-        columns[0], tuple(columns[1 : 1 + predictors.column_count]), read_order, reading.ledger(header),
-        tuple(remarks), header is not None, response.row_count, reading.positions, header,
+        columns[0],
+        tuple(columns[1 : 1 + predictors.column_count]),
+        read_order,
+        reading.ledger(header),
+        tuple(remarks),
+        header is not None,
+        response.row_count,
+        reading.positions,
+        header,
     )
 
 
@@ -117,7 +135,11 @@ def read_predictors(predictors: Block) -> PredictorColumns:
     reading = _Reading(sources, start if header is None else header + 1, end, DateRules(), {})
     columns = tuple(reading.columns())
     return PredictorColumns(
-        columns, reading.ledger(header), tuple(reading.remarks), header is not None, predictors.row_count,
+        columns,
+        reading.ledger(header),
+        tuple(reading.remarks),
+        header is not None,
+        predictors.row_count,
         reading.positions,
     )
 
@@ -125,9 +147,7 @@ def read_predictors(predictors: Block) -> PredictorColumns:
 class _Reading:
     """One pass over the columns: kinds are checked on all data rows, values are taken from the used ones."""
 
-    def __init__(
-        self, sources: list[Source], start: int, end: int, rules: DateRules, base_levels: Mapping[str, str]
-    ):
+    def __init__(self, sources: list[Source], start: int, end: int, rules: DateRules, base_levels: Mapping[str, str]):
         self.sources, self.start, self.end, self.rules, self.base_levels = sources, start, end, rules, base_levels
         self.remarks: list[str] = []
         self.counts = [_count_kinds(source.kinds[start:end]) for source in sources]

@@ -75,7 +75,8 @@ def _with_unique_names(sources: list[Source]) -> list[Source]:
         return sources
     return [
         replace(source, name=f"{source.name} ({source.role if source.block.sheet is None else source.letters})")
-        if source.role != "order" and taken.count(source.name) > 1 else source
+        if source.role != "order" and taken.count(source.name) > 1
+        else source
         for source in sources
     ]
 

@@ -137,7 +137,8 @@ class Book:
         """The formula behind a name that belongs to a sheet, without a leading "="; None where there is none."""
         for found in self.defined_names:
             if found.sheet is not None and (found.sheet.casefold(), found.name.casefold()) == (
-                sheet.casefold(), name.casefold()
+                sheet.casefold(),
+                name.casefold(),
             ):
                 return found.formula
         return None

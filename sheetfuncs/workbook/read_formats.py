@@ -40,7 +40,5 @@ def _from_styles(package: Package, name: str) -> np.ndarray:
         for element in children(child(root, "numFmts"), "numFmt")
     }
     numbers = [integer(element, "numFmtId") for element in children(child(root, "cellXfs"), "xf")] or [0]
-    dates = {
-        number: is_date_code(codes[number]) if number in codes else number in _BUILT_IN for number in set(numbers)
-    }
+    dates = {number: is_date_code(codes[number]) if number in codes else number in _BUILT_IN for number in set(numbers)}
     return np.array([dates[number] for number in numbers])

@@ -152,8 +152,14 @@ class Gathering:
             self._resize(height, width)
         hidden = _resized(self._hidden, max(len(self._hidden), self.first_row - 1 + height), self.hides_by_default)
         block = Block(
-            self.numbers, self.kinds, dict(sorted(self.texts.items())), sheet, self.first_row, self.first_column,
-            hidden[self.first_row - 1 : self.first_row - 1 + height], date1904=date1904,
+            self.numbers,
+            self.kinds,
+            dict(sorted(self.texts.items())),
+            sheet,
+            self.first_row,
+            self.first_column,
+            hidden[self.first_row - 1 : self.first_row - 1 + height],
+            date1904=date1904,
         )
         return SheetCells(block, self.formulas, self.unstored, self.used_row, self.used_column)
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 from sheetfuncs.cells.address import MAX_COLUMNS, MAX_ROWS, Area, cell_name, format_area, is_address, parse_area
 from sheetfuncs.cells.columns import suggestion
@@ -11,6 +11,9 @@ from sheetfuncs.cells.stored_text import shown
 from sheetfuncs.errors import AddressError
 from sheetfuncs.workbook.read import Book, BookName, Table
 from sheetfuncs.workbook.regions import block_around, first_block
+from sheetfuncs.workbook.selection_columns import Selection, read_selection
+
+__all__ = ["Selection", "find_selection", "read_selection", "resolve", "resolve_reference"]
 
 _TABLE_COLUMNS = re.compile(r"(?P<table>[^\[\]]+)\[(?P<inside>.*)\]", re.DOTALL)
 _SPECIAL = re.compile(r"\[?#(?P<word>[^\[\]]+)\]?\s*(?:,\s*(?P<columns>.+))?", re.DOTALL)
@@ -19,31 +22,38 @@ _ONE_COLUMN = r"(?:[^\[\]#']|'.)+"
 _COLUMN_RANGE = re.compile(rf"\[({_ONE_COLUMN})\]\s*:\s*\[({_ONE_COLUMN})\]|\[?({_ONE_COLUMN})\]?", re.DOTALL)
 
 
-@dataclass(frozen=True)
-class Selection:
-    """The area that was meant, and one sentence for each thing that was decided on the way."""
-
-    area: Area
-    remarks: tuple[str, ...] = ()
-
-
 def resolve(book: Book, text: str | None = None) -> Area:
-    """The area meant by an address, a table's or a defined name, or by nothing (see find_selection)."""
+    """The area meant by what the user typed (see find_selection)."""
     return find_selection(book, text).area
 
 
-def find_selection(book: Book, text: str | None = None, *, table_headers: bool = True) -> Selection:
-    """Find what the user typed. An address without a sheet is on the active sheet; a single cell means the block
-    around it; nothing means the block around the first filled cell of the active sheet, titles skipped.
+def find_selection(book: Book, text: str | None = None) -> Selection:
+    """Find the data that the user means by an address, a table's or a defined name, or by nothing.
 
-    A table comes without its totals row; `table_headers` says whether with its header row.
-    Raises AddressError or SheetNameError, with the closest name there is.
+    An address without a sheet is on the active sheet; a single cell means the block around it; nothing means the
+    block around the first filled cell of the active sheet, titles skipped. A table comes with its header row, without
+    its totals row. Raises AddressError or SheetNameError, with the closest name there is.
     """
     if text is None or not text.strip():
         return _first(book)
-    text = text.strip()
     if is_address(text):
         return _from_address(book, parse_area(text))
+    return _from_names(book, text, table_headers=True)
+
+
+def resolve_reference(book: Book, text: str) -> Area:
+    """The area that a reference in a formula means: a cell is that cell, a table its data rows without headers.
+
+    Raises as find_selection.
+    """
+    if not is_address(text):
+        return _from_names(book, text, table_headers=False).area
+    area = parse_area(text)
+    return replace(area, sheet=book.sheet(book.active_sheet if area.sheet is None else area.sheet).name)
+
+
+def _from_names(book: Book, text: str, *, table_headers: bool) -> Selection:
+    text = text.strip()
     wanted = text.removeprefix("=").strip()
     table = _table_called(book, wanted)
     if table is not None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Collection, Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -18,29 +19,56 @@ from sheetfuncs.workbook.regions import first_block
 _EARLIEST_DATE = 366.0  # below it a date format shows a time of day or a duration, which is no time order
 
 
+@dataclass(frozen=True)
+class Selection:
+    """The area that was meant, and one sentence for each thing that was decided on the way."""
+
+    area: Area
+    remarks: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, eq=False)
+class SelectedColumns:
+    """One column of response, the predictors, perhaps one column of order, all of one height, and their area."""
+
+    response: Block
+    predictors: Block
+    order: Block | None
+    remarks: tuple[str, ...]
+    area: Area
+
+
 def read_selection(
     book: Book,
-    area: Area,
+    where: Area | Selection,
     *,
     response: str | None = None,
     predictors: Sequence[str] | None = None,
     order: str | None = None,
     date_predictors: Collection[str] = (),
-) -> tuple[Block, Block, Block | None, tuple[str, ...]]:
-    """The response, the predictors and perhaps the order of a range, with a remark for each thing decided here.
+) -> SelectedColumns:
+    """The response, the predictors and perhaps the order of a range, with a remark for each thing that was decided.
 
     Columns are named by header or by letter. Without names the response is the first column and the predictors are
     all others; columns without values are skipped; a single column of dates that nobody named becomes the order.
     Raises ArgumentError for a name that is not there or used twice, BlockShapeError where no predictor is left.
     """
+    area = where if isinstance(where, Area) else where.area
+    earlier = () if isinstance(where, Area) else where.remarks
     cells = book.read_cells(area)
     block, titles = (cells.block, []) if area.last_row is not None else _below_titles(cells.block)
     chosen = _Columns(block)
     chosen.choose(response, predictors, order, date_predictors)
     used = [chosen.response, *chosen.predictors, *([] if chosen.order is None else [chosen.order])]
-    remarks = [*titles, *chosen.remarks, *_formula_remarks(book, cells, used, chosen)]
+    remarks = [*earlier, *titles, *chosen.remarks, *_formula_remarks(book, cells, used, chosen)]
     order_block = None if chosen.order is None else block.columns([chosen.order])
-    return block.columns([chosen.response]), block.columns(chosen.predictors), order_block, tuple(remarks)
+    return SelectedColumns(
+        block.columns([chosen.response]),
+        block.columns(chosen.predictors),
+        order_block,
+        tuple(remarks),
+        replace(area, sheet=block.sheet),
+    )
 
 
 def _below_titles(block: Block) -> tuple[Block, list[str]]:
