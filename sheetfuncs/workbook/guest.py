@@ -64,7 +64,7 @@ class Guest:
         roots = [self.package.document(part).root for part in parts if _is_xml(part)]
         return [root for root in roots if root.tag == main("table")]
 
-    def adapt(self, name: str, styles: StyleMerge | None) -> None:
+    def adapt(self, name: str, styles: StyleMerge) -> None:
         """Change its parts in memory so that they are right in the host, under its name there."""
         sheet = self.package.document(self.part).root
         _inline_strings(sheet, self.shared("sharedStrings"))
@@ -73,12 +73,11 @@ class Guest:
             if not _is_xml(part):
                 continue
             root = self.package.document(part).root
-            if styles is not None:
-                _map_formats(root, styles)
+            _map_formats(root, styles)
             if name != self.name:
                 _rename_in(root, self.name, name)
 
-    def transfer(self, host: Package, sheet_part: str | None = None) -> dict[str, str]:
+    def transfer(self, host: Package, name: str) -> dict[str, str]:
         """Add its parts to the host under free names; returns the old names with the new ones, the sheet first."""
         parts = [self.part, *sorted(self.package.reachable(self.part))]
         self._refuse_foreign_parts(parts)
@@ -89,17 +88,20 @@ class Guest:
         for part in parts:
             content = self.package.document(part) if _is_xml(part) else self.package.read(part)
             host.add(names[part], content, self.package.content_type(part))
-            self._transfer_relationships(part, names, host)
+            self._transfer_relationships(part, names, host, name)
         return names
 
-    def _transfer_relationships(self, part: str, names: dict[str, str], host: Package) -> None:
+    def _transfer_relationships(self, part: str, names: dict[str, str], host: Package, name: str) -> None:
         source = self.package.find(relationships_part(part))
         if source is None:
             return
         document = self.package.document(source)
         for element in document.root.iterfind(f"{{{PACKAGE_RELATIONSHIPS}}}Relationship"):
-            target = self.package.find(resolve(part, element.get("Target", "")))
-            if element.get("TargetMode") != "External" and target in names:
+            address = element.get("Target", "")
+            target = self.package.find(resolve(part, address))
+            if address.startswith("#"):  # a picture that leads to a cell
+                element.set("Target", "#" + rename_sheet(address[1:], self.name, name))
+            elif element.get("TargetMode") != "External" and target in names:
                 folder = posixpath.join("/", posixpath.dirname(names[part]))
                 element.set("Target", posixpath.relpath("/" + names[target], folder))
         host.add(relationships_part(names[part]), document, None)

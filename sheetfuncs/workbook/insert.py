@@ -7,7 +7,7 @@ import re
 from dataclasses import dataclass
 from typing import BinaryIO
 
-from sheetfuncs.errors import SheetNameError, WorkbookFormatError
+from sheetfuncs.errors import ArgumentError, SheetNameError, WorkbookFormatError
 from sheetfuncs.workbook.archive import ArchiveWriter
 from sheetfuncs.workbook.book import WorkbookXml
 from sheetfuncs.workbook.formats import EXTENSIONS, Book, extension_of, open_package
@@ -55,6 +55,8 @@ def insert_sheet(
     if isinstance(out, str | os.PathLike):
         with written_beside(out) as file:
             return _insert(book, sheet_book, after, replace, file, os.fspath(out))
+    if out is book or out is sheet_book:
+        raise ArgumentError("The output is the file object that is read; give another one, or a path.")
     return _insert(book, sheet_book, after, replace, out, "")
 
 
@@ -73,7 +75,7 @@ def _insert(
             name = book_xml.names[index]
             _take_out(host, book_xml, index)
         _merge(host, book_xml, guest, name)
-        names = guest.transfer(host)
+        names = guest.transfer(host, name)
         _list(host, book_xml, names[guest.part], index, name, new=replace is None)
         book_xml.define(guest.defined_names(index, name))
         writer = ArchiveWriter(out)
@@ -130,13 +132,10 @@ def _drop_calculation_chain(host: Package, book: WorkbookXml, sheet_id: str) -> 
 
 def _merge(host: Package, book: WorkbookXml, guest: Guest, name: str) -> None:
     """Adapt the guest to the host's styles and tables."""
-    guest_styles = guest.shared("styles")
-    styles = None
-    if guest_styles is not None:
-        part = _styles_part(host, book)
-        styles = StyleMerge(host.document(part), guest_styles)
+    part = _styles_part(host, book)
+    styles = StyleMerge(host.document(part), guest.shared("styles") or minimal_styles())
     guest.adapt(name, styles)
-    if styles is not None and styles.changed:
+    if styles.changed:
         host.mark_changed(part)
     tables = guest.own_tables()
     if tables:

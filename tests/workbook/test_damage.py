@@ -43,7 +43,7 @@ def test_every_attribute_may_be_missing_or_nonsense(part):
     text = book_with_our_sheet()[part]
     count = sum(len(element.attrib) for element in etree.fromstring(text).iter())
     for place in range(count):
-        for value in (None, "", "-1", "99999999999", "x"):
+        for value in (None, "-1", "x"):
             root = etree.fromstring(text)
             element, name = [(element, name) for element in root.iter() for name in element.attrib][place]
             if value is None:

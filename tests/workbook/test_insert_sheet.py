@@ -13,7 +13,7 @@ from workbook_build import MAIN, SHEET_ML, Parts, opened, sheet_to_insert, unzip
 from workbook_handmade import base, calculation_chain, old_macro_sheets, signed, two_windows
 from workbook_hosts import HOSTS
 
-from sheetfuncs.errors import SheetNameError, WorkbookFormatError
+from sheetfuncs.errors import ArgumentError, SheetNameError, WorkbookFormatError
 from sheetfuncs.workbook import Insertion, insert_sheet
 
 TITLE = "Check of Data"
@@ -242,6 +242,24 @@ def test_a_table_name_that_is_taken_is_refused():
     files = {name: data.replace(b"Figures", b"LOADS") for name, data in unzipped(rich_guest()).items()}
     with pytest.raises(SheetNameError, match="already has a table or name 'LOADS'"):
         insert(HOSTS["xlsxwriter: tables"](), zipped(files))
+
+
+def test_a_picture_that_leads_to_a_cell_follows_the_new_name():
+    buffer = io.BytesIO()
+    book = xlsxwriter.Workbook(buffer)
+    picture = next(data for name, data in unzipped(HOSTS["xlsxwriter: dressed"]()).items() if name.endswith(".png"))
+    options = {"image_data": io.BytesIO(picture), "url": "internal:Check!A1"}
+    book.add_worksheet("Check").insert_image(0, 0, "dot.png", options)
+    book.close()
+    book, _ = insert(plain(), buffer.getvalue(), replace="Other")
+    assert b"Target=\"#'Other'!A1\"" in unzipped(book)["xl/drawings/_rels/drawing1.xml.rels"]
+
+
+def test_the_file_object_that_is_read_cannot_be_the_output():
+    book = io.BytesIO(plain())
+    with pytest.raises(ArgumentError, match="give another one"):
+        insert_sheet(book, io.BytesIO(sheet_to_insert(TITLE)), out=book)
+    assert book.getvalue() == plain()
 
 
 @pytest.mark.parametrize("inline", [False, True])

@@ -27,6 +27,7 @@ def guest() -> bytes:
     return sheet_to_insert(TITLE)
 
 
+@cache
 def inserted(book: bytes) -> bytes:
     out = io.BytesIO()
     insert_sheet(io.BytesIO(book), io.BytesIO(guest()), after="Data", out=out)

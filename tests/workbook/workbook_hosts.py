@@ -6,6 +6,7 @@ import io
 import struct
 import zlib
 from collections.abc import Callable
+from functools import cache
 
 import openpyxl
 import xlsxwriter
@@ -235,3 +236,4 @@ HOSTS: dict[str, Callable[[], bytes]] = {
     "zip: reversed order": lambda: zipped(dict(reversed(unzipped(_plain()).items()))),
     **{f"by hand: {name}": build for name, build in BY_HAND.items()},
 }
+HOSTS = {name: cache(build) for name, build in HOSTS.items()}
