@@ -46,8 +46,8 @@ def by_row(observations: Observations, values: np.ndarray, heading: str) -> list
     cells: list[Cell] = [LEFT_OUT] * observations.block_rows
     for position, value in zip(observations.positions.tolist(), values.tolist(), strict=True):
         cells[position] = value if math.isfinite(value) else UNDEFINED
-    if observations.has_header:
-        cells[0] = heading
+    if observations.header_position is not None:
+        cells[observations.header_position] = heading
     return [[cell] for cell in cells]
 
 

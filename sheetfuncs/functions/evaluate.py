@@ -23,9 +23,7 @@ def evaluate(name: str, /, *args: object, **options: object) -> CellResult:
         >>> evaluate("FIT_DURBIN_WATSON", [[1.0], [2.5], [2.0], [4.5]], [[1.0], [2.0], [3.0], [4.0]])  # e.g. 3.39
     """
     try:
-        # What overflows or is undefined ends as an error value; a warning would only fill a host's log.
-        with np.errstate(all="ignore"):
-            return compute(name, *args, **options)
+        return compute(name, *args, **options)
     except SheetfuncsError as refusal:
         return refusal.cell_error
 
@@ -42,7 +40,10 @@ def why(name: str, /, *args: object, **options: object) -> str:
 def compute(name: str, /, *args: object, **options: object) -> CellResult:
     """As `evaluate`, but a refusal is raised as a SheetfuncsError."""
     function = find_function(name)
-    return function.compute(_call(function, _bound(function, args, options)))
+    call = _call(function, _bound(function, args, options))
+    # What overflows or is undefined ends as an error value; a warning would only fill a host's log.
+    with np.errstate(all="ignore"):
+        return function.compute(call)
 
 
 def find_function(name: object) -> WorksheetFunction:

@@ -6,6 +6,7 @@ p-values.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from typing import Any, NamedTuple
 
@@ -123,7 +124,7 @@ COLUMNS = [
 
 def per_row(case: Case, key: str) -> list[float]:
     if key in case.exact:
-        return [as_number(value) for value in case.exact[key]]
+        return [math.nan if "undefined" in str(value) else as_number(value) for value in case.exact[key]]
     return [as_number(value) for r in r_results(case) if isinstance(r.get(key), list) for value in r[key]]
 
 
@@ -229,5 +230,5 @@ def test_durbin_watson_in_the_order_of_another_column():
     Expected("FIT_BREUSCH_GODFREY_P", {"lags": 2}, None, 0), Expected("FIT_BREUSCH_GODFREY_P", {"lags": 4}, None, 0),
     Expected("FIT_RESET_P", {}, None, 0),
 ])
-def test_what_too_few_rows_cannot_test_does_not_apply(expected):
-    assert found(load_case("syn_smalln_a"), expected) == "#N/A"
+def test_too_few_rows_are_refused(expected):
+    assert found(load_case("syn_smalln_a"), expected) == "#NUM!"

@@ -158,7 +158,7 @@ def test_why_gives_the_sentence_behind_an_error():
         "The argument lags is 0.5; it may be a whole number from 1."
     )
     assert why("FIT_VIF", PREDICTORS, 3) == (
-        "There is no predictor 3: give a place from 1 to 2, or one of A, B."
+        "There is no predictor 3: give a place from 1 to 2, or one of predictor 1, predictor 2."
     )
 
 

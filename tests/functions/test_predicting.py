@@ -70,6 +70,8 @@ def test_headed_columns_may_stand_in_any_order():
     assert evaluate("FIT_PREDICT", *HEADED, [["Wood", "Load"], ["larch", 7.0]]) == usual
     assert evaluate("FIT_PREDICT", *HEADED, Block.from_rows([["Wood", "Load"], ["larch", 7.0]])) == usual
     assert usual[1:] == evaluate("FIT_PREDICT", *HEADED, [[7.0, "larch"]])
+    below_a_blank_row = [[None, ""], ["Wood", "Load"], ["larch", 7.0]]
+    assert evaluate("FIT_PREDICT", *HEADED, below_a_blank_row) == [["#N/A"] * 5, *usual]
 
 
 def test_rows_without_a_prediction_say_why_in_their_cells():

@@ -9,7 +9,7 @@ from hypothesis import strategies as st
 
 from sheetfuncs.cells.block import ERROR_TEXTS, Block
 from sheetfuncs.functions.evaluate import evaluate, why
-from sheetfuncs.functions.registry import REGISTRY, WorksheetFunction
+from sheetfuncs.functions.registry import REGISTRY
 
 ordinary = st.integers(-9, 9).map(float) | st.floats(-1e3, 1e3)
 extreme = st.sampled_from(
@@ -53,13 +53,16 @@ def ranges(draw) -> dict[str, object]:
 any_option = st.none() | wild | rare | text | st.sampled_from([[], [[1.0]], [[1.0, 2.0]], object(), -1, 0, 5])
 
 
+OPTIONS = {a.name: a for function in REGISTRY.values() for a in function.arguments if a.kind != "range"}
+
+
 @st.composite
-def chosen_options(draw, function: WorksheetFunction) -> dict[str, object]:
+def chosen_options(draw) -> dict[str, object]:
+    """Some options, mostly with values that they may have."""
     options = {}
-    for argument in function.arguments:
-        if argument.kind != "range" and draw(st.booleans()):
-            usual = st.sampled_from(argument.choices) if argument.choices else st.just(argument.default)
-            options[argument.name] = draw(usual | usual | any_option | st.integers(1, 3))
+    for argument in draw(st.lists(st.sampled_from(list(OPTIONS.values())), unique=True, max_size=4)):
+        usual = st.sampled_from(argument.choices) if argument.choices else st.just(argument.default)
+        options[argument.name] = draw(usual | usual | st.integers(0, 3) | any_option)
     return options
 
 
@@ -68,11 +71,12 @@ def is_cell(cell: object) -> bool:
 
 
 @settings(max_examples=1_000, deadline=None, suppress_health_check=[HealthCheck.too_slow, HealthCheck.data_too_large])
-@given(ranges(), st.data())
-def test_a_number_or_rows_or_an_error_value(blocks, data):
+@given(ranges(), chosen_options())
+def test_a_number_or_rows_or_an_error_value(blocks, chosen):
+    as_blocks = {name: Block.from_rows(rows) if isinstance(rows, list) else rows for name, rows in blocks.items()}
     for function in REGISTRY.values():
         given_ranges = {a.name: blocks[a.name] for a in function.arguments if a.kind == "range"}
-        options = data.draw(chosen_options(function))
+        options = {a.name: chosen[a.name] for a in function.arguments if a.name in chosen}
         value = evaluate(function.name, **given_ranges, **options)
         if isinstance(value, list):
             assert function.returns in ("column", "table")
@@ -93,5 +97,4 @@ def test_a_number_or_rows_or_an_error_value(blocks, data):
             assert function.returns == "number" or options.get("predictor") is not None
             if function.name.endswith("_P"):
                 assert 0.0 <= value <= 1.0
-        as_blocks = {k: Block.from_rows(v) if isinstance(v, list) else v for k, v in given_ranges.items()}
-        assert evaluate(function.name, **as_blocks, **options) == value
+        assert evaluate(function.name, **{name: as_blocks[name] for name in given_ranges}, **options) == value

@@ -7,8 +7,8 @@ import inspect
 import re
 
 import pytest
-from sheetfuncs.core.independence import breusch_godfrey
 
+from sheetfuncs.core.independence import breusch_godfrey
 from sheetfuncs.errors import UnknownFunctionError
 from sheetfuncs.functions.arguments import allowed
 from sheetfuncs.functions.listing import functions_markdown, functions_text

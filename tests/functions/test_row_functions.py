@@ -72,6 +72,13 @@ def test_blank_rows_below_the_data_are_na(name):
     assert found == [*evaluate(name, response, predictors), *[["#N/A"]] * 5]
 
 
+@functions
+def test_a_heading_stands_where_the_header_does(name):
+    response, predictors = columns()
+    found = evaluate(name, [[None], ["Litres"], *response], [["", ""], ["Hours", "Valve"], *predictors])
+    assert found == [["#N/A"], [HEADINGS[name]], *evaluate(name, response, predictors)]
+
+
 def lone_row() -> tuple[list[list[object]], list[list[object]]]:
     """The last row is the only one of its valve setting: leverage 1."""
     return columns(valve=[0.0] * 8 + [1.0])
