@@ -76,6 +76,14 @@ def draw_sheet(workbook: Workbook, plan: SheetPlan) -> Worksheet:
     return sheet
 
 
+class _Exact(float):
+    """A number that is written with all its digits. XlsxWriter asks for sixteen, and a copy of a column like
+    1e9 + u needs the seventeenth: without it the cross-check would fit other data than ours."""
+
+    def __format__(self, specification: str) -> str:
+        return repr(float(self))
+
+
 class _Formats:
     """Workbook formats by style, each made once."""
 
@@ -146,7 +154,7 @@ def _write_value(sheet: Worksheet, row: int, column: int, value: Value, look: Fo
     elif isinstance(value, str):
         sheet.write_string(row, column, value[:MOST_TEXT], look)
     elif math.isfinite(value):
-        sheet.write_number(row, column, value, look)
+        sheet.write_number(row, column, _Exact(value), look)
     else:
         raise ValueError(f"Row {row + 1}, column {column + 1} was planned as {value}, which no cell holds.")
 

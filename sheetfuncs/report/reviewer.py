@@ -69,7 +69,8 @@ def reserve_cross_check(page: Page, check: Check) -> int:
     """Heading and room for the comparison; returns its first row."""
     note = (
         "For a reviewer without Python. The formulas use the spreadsheet's own functions on a copy of the used rows, "
-        "which stands at the end of this sheet. They recalculate; the figures beside them are what this sheet reports."
+        "which stands at the end of this sheet. They recalculate; the figures beside them are what this sheet reports. "
+        "Where predictors lie far from zero, or nearly determine each other, a spreadsheet's own functions lose digits."
     )
     reason = why_no_copy(check)
     page.section("cross-check", "Cross-check in native formulas", "" if reason else note)

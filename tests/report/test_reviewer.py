@@ -3,14 +3,16 @@
 from __future__ import annotations
 
 import io
+import re
 import shutil
 import subprocess
+import zipfile
 
 import numpy as np
 import openpyxl
 import pytest
 from openpyxl.worksheet.formula import ArrayFormula
-from report_cases import CASES, TITLE, categories, drawn, opened, orders, planned, row_of, saturated, values_in
+from report_cases import CASES, TITLE, categories, drawn, opened, orders, parts, planned, row_of, saturated, values_in
 
 from sheetfuncs.report.reviewer import AGREEMENT
 
@@ -52,10 +54,15 @@ def _formula_cells(book: bytes) -> dict[str, object]:
 
 
 def _without_stored_values(book: bytes) -> bytes:
-    """Saved by openpyxl, which keeps formulas and drops their values: whatever comes back was calculated."""
-    workbook = openpyxl.load_workbook(io.BytesIO(book))
+    """The package with every formula's stored value taken out: whatever comes back was calculated."""
+    contents = parts(book)
+    sheet = contents["xl/worksheets/sheet1.xml"]
+    contents["xl/worksheets/sheet1.xml"], count = re.subn(rb"(<f[^>]*>[^<]*</f>)<v>[^<]*</v>", rb"\1", sheet)
+    assert count == sheet.count(b"<f") - sheet.count(b"<formula")
     out = io.BytesIO()
-    workbook.save(out)
+    with zipfile.ZipFile(out, "w", zipfile.ZIP_DEFLATED) as package:
+        for name, data in contents.items():
+            package.writestr(name, data)
     return out.getvalue()
 
 
