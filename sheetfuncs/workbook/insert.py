@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import os
-import re
 from dataclasses import dataclass
 from typing import BinaryIO
 
@@ -14,6 +13,7 @@ from sheetfuncs.workbook.formats import EXTENSIONS, Book, extension_of, open_pac
 from sheetfuncs.workbook.guest import Guest, renumber_tables
 from sheetfuncs.workbook.package import Package
 from sheetfuncs.workbook.properties import list_sheet
+from sheetfuncs.workbook.removal import take_out
 from sheetfuncs.workbook.saving import written_beside
 from sheetfuncs.workbook.styles import StyleMerge, minimal_styles
 from sheetfuncs.workbook.titles import check_title
@@ -21,8 +21,6 @@ from sheetfuncs.workbook.xml import integer, main
 
 _RELATIONSHIP_TYPE = "http://schemas.openxmlformats.org/officeDocument/2006/relationships/"
 _STYLES_TYPE = "application/vnd.openxmlformats-officedocument.spreadsheetml.styles+xml"
-_ANY_SHEET = re.compile(rb"\si\s*=")
-_FORMULA = re.compile(rb"<(?:[\w.-]+:)?f[\s/>]")
 
 
 @dataclass(frozen=True)
@@ -50,7 +48,8 @@ def insert_sheet(
     entry that need not change is carried as the bytes it was. `out` may be the path of `book` itself: a path is
     written atomically, and a file object receives nothing before everything is checked.
 
-    Raises WorkbookFormatError, WorkbookUnsafeError, WorkbookBusyError and SheetNameError, each with its sentence.
+    Raises WorkbookFormatError, WorkbookUnsafeError, WorkbookBusyError and SheetNameError, and WorkbookError where the
+    sheet to replace holds something that others may depend on (a pivot table, a slicer, a table), each with a sentence.
     """
     if isinstance(out, str | os.PathLike):
         with written_beside(out) as file:
@@ -73,14 +72,15 @@ def _insert(
         else:
             index = book_xml.index(replace)
             name = book_xml.names[index]
-            _take_out(host, book_xml, index)
+            own_tables = {table.get("displayName", "").casefold() for table in guest.own_tables()}
+            warnings += take_out(host, book_xml, index, own_tables)
         _merge(host, book_xml, guest, name)
         names = guest.transfer(host, name)
         _list(host, book_xml, names[guest.part], index, name, new=replace is None)
         book_xml.define(guest.defined_names(index, name))
         writer = ArchiveWriter(out)
         host.save(writer)
-        return Insertion(name, warnings, len(host.added), len(host.removed))
+        return Insertion(name, tuple(warnings), len(host.added), len(host.removed))
 
 
 def _place(book: WorkbookXml, after: str | None) -> int:
@@ -93,41 +93,6 @@ def _refuse_taken_name(book: WorkbookXml, name: str) -> None:
         raise SheetNameError(
             f"{book.package.label} already has a sheet {name!r}. Replace that sheet, or give the new one another name."
         )
-
-
-def _take_out(host: Package, book: WorkbookXml, index: int) -> None:
-    """Remove a sheet's part and what only it needs; its line in the list of sheets stays for the new one."""
-    part = book.sheet_part(index)
-    arrow = next(arrow for arrow in host.relationships(book.part) if arrow.id == book.relationship_id(index))
-    kept = host.reachable("", without=[arrow])
-    gone = ({part} | host.reachable(part)) - kept
-    if _holds_formulas(host, part):
-        _drop_calculation_chain(host, book, book.sheets[index].get("sheetId", ""))
-    for name in sorted(gone):
-        host.remove(name)
-    book.drop_names_of(index)
-
-
-def _holds_formulas(host: Package, part: str) -> bool:
-    overlap = b""
-    for chunk in host.archive.chunks(part):
-        if chunk[:2] in (b"\xff\xfe", b"\xfe\xff") and not overlap:
-            return True  # UTF-16: rare, and dropping the chain is always safe, for hosts build it again
-        if _FORMULA.search(overlap + chunk):
-            return True
-        overlap = chunk[-80:]
-    return False
-
-
-def _drop_calculation_chain(host: Package, book: WorkbookXml, sheet_id: str) -> None:
-    """Remove the order of calculation if it lists the sheet's cells; programs work it out again."""
-    listed = re.compile(rb"\si\s*=\s*[\"']" + sheet_id.encode() + rb"[\"']")
-    for arrow in host.relationships(book.part):
-        if arrow.kind == "calcChain" and (part := host.find(arrow.part)):
-            chain = host.read(part)
-            if listed.search(chain) or not _ANY_SHEET.search(chain):
-                host.unrelate(book.part, arrow.id)
-                host.remove(part)
 
 
 def _merge(host: Package, book: WorkbookXml, guest: Guest, name: str) -> None:
@@ -178,7 +143,7 @@ def _list(host: Package, book: WorkbookXml, part: str, index: int, name: str, *,
             view.set("tabSelected", "1")
 
 
-def _warnings(host: Package, book: WorkbookXml) -> tuple[str, ...]:
+def _warnings(host: Package, book: WorkbookXml) -> list[str]:
     found = []
     kinds = {arrow.kind for arrow in host.relationships("")}
     if "origin" in kinds:
@@ -190,7 +155,7 @@ def _warnings(host: Package, book: WorkbookXml) -> tuple[str, ...]:
         found.append(f"The structure of {host.label} is protected; the sheet was added, and the protection stays.")
     if any(arrow.kind == "revisionHeaders" for arrow in host.relationships(book.part)):
         found.append(f"{host.label} is a shared workbook with a change history; the new sheet is not in that history.")
-    return tuple(found)
+    return found
 
 
 def _refuse_other_extension(host: Package, out_name: str) -> None:

@@ -10,10 +10,10 @@ import xlsxwriter
 from lxml import etree
 from openxml_audit import FileFormat, OpenXmlValidator
 from workbook_build import MAIN, SHEET_ML, Parts, opened, sheet_to_insert, unzipped, zipped
-from workbook_handmade import base, calculation_chain, old_macro_sheets, signed, two_windows
+from workbook_handmade import base, calculation_chain, old_macro_sheets, pivot_and_slicer, signed, two_windows
 from workbook_hosts import HOSTS
 
-from sheetfuncs.errors import ArgumentError, SheetNameError, WorkbookFormatError
+from sheetfuncs.errors import ArgumentError, SheetNameError, WorkbookError, WorkbookFormatError
 from sheetfuncs.workbook import Insertion, insert_sheet
 
 TITLE = "Check of Data"
@@ -242,6 +242,20 @@ def test_a_table_name_that_is_taken_is_refused():
     files = {name: data.replace(b"Figures", b"LOADS") for name, data in unzipped(rich_guest()).items()}
     with pytest.raises(SheetNameError, match="already has a table or name 'LOADS'"):
         insert(HOSTS["xlsxwriter: tables"](), zipped(files))
+
+
+def test_what_others_depend_on_is_never_replaced_away():
+    with pytest.raises(WorkbookError, match="'Notes' holds a pivot table, which would be lost"):
+        insert(packed(pivot_and_slicer()), replace="Notes")
+    with pytest.raises(WorkbookError, match="holds the table 'Second'"):
+        insert(HOSTS["xlsxwriter: tables"](), replace="It's a name")
+
+
+def test_remarks_on_the_replaced_sheet_are_said_to_be_gone():
+    done = insert(HOSTS["xlsxwriter: notes_and_rules"](), replace="Data")[1]
+    assert "held notes; they are not on the sheet written anew" in done.warnings[0]
+    done = insert(HOSTS["by hand: threaded comments"](), replace="Data")[1]
+    assert "held comments" in done.warnings[0]
 
 
 def test_a_picture_that_leads_to_a_cell_follows_the_new_name():
