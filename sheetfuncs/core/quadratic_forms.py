@@ -42,15 +42,16 @@ def durbin_watson_tails(basis: Basis, d: float, order: np.ndarray | None = None)
     range one tail is 0 and the other 1.
     """
     n = basis.n
+    q = basis.q if order is None else basis.q[order]
     with few_threads(basis.q.size):
+        if n > EIGENVALUES_UP_TO:
+            return _from_determinants(q, basis.intercept, d)
         frequencies = 2.0 - 2.0 * np.cos(np.pi * np.arange(n) / n)
         # A is diagonal in the DCT-II basis (Durbin and Watson 1950, Biometrika 37:409-428, section 5).
-        spectrum = dct(basis.q if order is None else basis.q[order], type=2, axis=0, norm="ortho")
+        spectrum = dct(q, type=2, axis=0, norm="ortho")
         if basis.intercept:  # the constant is the basis vector of frequency 0
             frequencies, spectrum = frequencies[1:], spectrum[1:]
-        if n <= EIGENVALUES_UP_TO:
-            return _from_eigenvalues(frequencies - d, spectrum)
-        return _from_determinants(frequencies - d, spectrum)
+        return _from_eigenvalues(frequencies - d, spectrum)
 
 
 def durbin_watson_bounds(
@@ -110,23 +111,74 @@ def _of_eigenvalues(eigenvalues: np.ndarray) -> Tails:
     return _tails(log_determinant, 0.5 / negative, 0.5 / positive)
 
 
-def _from_determinants(shifted: np.ndarray, spectrum: np.ndarray) -> Tails:
-    """det(V'CV) = det(C) det(Q'C^-1 Q) for C = I - 2s(A - dI) and V orthogonal to Q: one k x k determinant a node."""
-    negative, positive = float(shifted.min()), float(shifted.max())
-    if negative >= 0:
+class _Moments:
+    """Sums over the frequencies of cos(m theta) q q', for m = 0, 1, ...: lagged cross products of q, no transform.
+
+    The DCT-II is the spectrum of the rows mirrored at both ends, so that these are cross products of each row with the
+    rows m places away, the ends folded back.
+    """
+
+    def __init__(self, q: np.ndarray):
+        self.q = q
+        self.found = [q.T @ q]
+
+    def upto(self, count: int) -> np.ndarray:
+        """(count, k, k): the first moments."""
+        while len(self.found) < count:
+            self.found.append(self._moment(len(self.found)))
+        return np.array(self.found[:count])
+
+    def _moment(self, lag: int) -> np.ndarray:
+        q = self.q
+        apart = q[:-lag].T @ q[lag:]
+        folded = q[:lag].T @ q[lag - 1::-1] if lag > 1 else np.outer(q[0], q[0])
+        end = q[-lag:]
+        folded = folded + end.T @ end[::-1]
+        return (apart + apart.T + folded) / 2.0
+
+
+def _from_determinants(q: np.ndarray, intercept: bool, d: float) -> Tails:
+    """det(V'CV) = det(C) det(Q'C^-1 Q) for C = I - 2s(A - dI) and V orthogonal to Q: a k x k determinant a node.
+
+    det(C) is a Chebyshev polynomial in closed form, and C^-1 its generating series
+    1/(a + 4s cos) = (1 + 2 sum (-r)^m cos(m theta)) / sqrt(a^2 - 16 s^2), which converges like r^m.
+    """
+    n = q.shape[0]
+    lowest_frequency, highest = (2.0 - 2.0 * np.cos(np.pi / n) if intercept else 0.0), 2.0 + 2.0 * np.cos(np.pi / n)
+    if d <= lowest_frequency:
         return Tails(0.0, 1.0)
-    if positive <= 0:
+    if d >= highest:
         return Tails(1.0, 0.0)
+    moments = _Moments(q)
 
     def log_determinant(s: np.ndarray) -> np.ndarray:
-        found = np.empty(s.shape, np.complex128)
-        for i, node in enumerate(s):
-            factors = 1.0 - 2.0 * node * shifted
-            sign, log_size = np.linalg.slogdet((spectrum.T / factors) @ spectrum)
-            found[i] = np.log(factors).sum() + np.log(complex(sign)) + log_size
-        return found
+        s = s.astype(np.complex128)
+        delta = s * (2.0 * d - 4.0)
+        root = np.sqrt(1.0 + delta - 4.0 * s) * np.sqrt(1.0 + delta + 4.0 * s)
+        beyond_one = (delta * (2.0 + delta) - 16.0 * s * s) / (root + 1.0)  # root - 1 without cancellation
+        log_larger = np.log1p((delta + beyond_one) / 2.0)
+        r = 2.0 * s * np.exp(-log_larger)
+        logs = n * log_larger + np.log1p(-(r * r) ** n) - np.log(root)
+        if not intercept:
+            logs = logs + np.log(1.0 + 2.0 * s * d)
+        return logs + _log_small_determinants(moments, r, root)
 
-    return _tails(log_determinant, 0.5 / negative, 0.5 / positive)
+    # Inside the range of the frequencies of A itself, which every node of the integral stays in.
+    return _tails(log_determinant, 0.5 / (lowest_frequency - d), 0.5 / (highest - d))
+
+
+def _log_small_determinants(moments: _Moments, r: np.ndarray, root: np.ndarray) -> np.ndarray:
+    """log det(Q'C^-1 Q) at every node, from the moments of Q."""
+    if not moments.q.shape[1]:
+        return np.zeros(r.shape, np.complex128)
+    largest = float(np.abs(r).max())
+    count = 2 + int(np.log(1e-17) / np.log(min(largest, 1.0 - 1e-9))) if largest > 1e-17 else 1
+    count = max(1, min(count, moments.q.shape[0] - 1))
+    weights = 2.0 * (-r[:, None]) ** np.arange(count)
+    weights[:, 0] = 1.0
+    small = np.tensordot(weights, moments.upto(count), axes=1) / root[:, None, None]
+    sign, size = np.linalg.slogdet(small)
+    return size + np.log(sign)
 
 
 def _tails(log_determinant: LogDeterminant, lowest: float, highest: float) -> Tails:
@@ -193,9 +245,13 @@ def _integral(log_determinant: LogDeterminant, place: float, width: float) -> fl
 
 
 def _reach(log_determinant: LogDeterminant, place: float, width: float) -> float:
-    """The x from which on the integrand is too small to count."""
-    x = np.linspace(0.0, _FARTHEST, 121)
-    s = place + 1j * width * np.sinh(x)
-    size = -0.5 * log_determinant(s).real - np.log(np.abs(s)) + x
-    beyond = np.flatnonzero(size < size[0] - 40.0)
-    return float(x[beyond[0]]) if beyond.size else _FARTHEST
+    """The x from which on the integrand is too small to count. Found from below: far out everything costs more."""
+
+    def size(x: float) -> float:
+        s = np.array([place + 1j * width * np.sinh(x)])
+        return float(-0.5 * log_determinant(s).real[0] - np.log(abs(s[0])) + x)
+
+    x, start = 1.0, size(0.0)
+    while x < _FARTHEST and size(x) > start - 40.0:
+        x *= 1.15
+    return x

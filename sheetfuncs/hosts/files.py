@@ -5,7 +5,7 @@ from __future__ import annotations
 import io
 from collections.abc import Callable, Mapping
 from contextlib import nullcontext
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import datetime
 from pathlib import Path
 from typing import Any
@@ -77,10 +77,10 @@ def evaluate_cell(formula: str, book: Path) -> Any:
     """The value of one worksheet formula of ours on a workbook's cells: a scalar, or a list of rows."""
     from sheetfuncs.functions.formula import evaluate_formula
     from sheetfuncs.workbook.read import open_book
-    from sheetfuncs.workbook.selection import resolve
+    from sheetfuncs.workbook.selection import resolve_reference
 
     with open_book(book) as opened:
-        return evaluate_formula(formula, lambda text: opened.read(resolve(opened, text)))
+        return evaluate_formula(formula, lambda text: opened.read(resolve_reference(opened, text)))
 
 
 def undo_check(book: Path, *, force: bool = False) -> str:
@@ -124,12 +124,13 @@ def _busy_warnings(request: Request, target: Path | None) -> tuple[str, ...]:
 
 def _read_and_check(request: Request, step: Step) -> Check:
     from sheetfuncs.workbook.read import open_book
-    from sheetfuncs.workbook.selection import read_selection, resolve
+    from sheetfuncs.workbook.selection import find_selection
+    from sheetfuncs.workbook.selection_columns import read_selection
 
     with open_book(request.book) as book:
-        area = resolve(book, request.range_text)
         selection = read_selection(
-            book, area, response=request.response, predictors=request.predictors, order=request.order
+            book, find_selection(book, request.range_text), response=request.response, predictors=request.predictors,
+            order=request.order,
         )
     observations = read_observations(
         selection.response, selection.predictors, selection.order, dates="check",
@@ -139,7 +140,7 @@ def _read_and_check(request: Request, step: Step) -> Check:
     return check_observations(
         observations, intercept=request.intercept, level=request.level, remarks=selection.remarks,
         date_predictors=request.date_predictors, base_levels=request.base_levels, book=request.book.name,
-        sheet=selection.area.sheet, area=format_area(selection.area.without_sheet()),
+        sheet=selection.area.sheet, area=format_area(replace(selection.area, sheet=None)),
     )
 
 

@@ -6,13 +6,15 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
+from sheetfuncs.cells.address import parse_area
+from sheetfuncs.cells.block import Block, Kind
 from sheetfuncs.checking import Settings
 from sheetfuncs.report.elements import Value
 
 
 @dataclass(frozen=True)
 class Earlier:
-    """title: of the new sheet. replace: the sheet in the workbook that it replaces, or None. decision: to write back."""
+    """title: of the new sheet. replace: the sheet that it replaces, or None. decision: what to write back."""
 
     title: str
     replace: str | None
@@ -49,7 +51,6 @@ def _sheet_of(book: Path, settings: Settings) -> str | None:
 
 def _decision(book: Path, sheet: str) -> dict[str, Value]:
     """The filled cells of the sheet's decision record, by field."""
-    from sheetfuncs.cells.address import parse_area
     from sheetfuncs.report.names import DECISION
     from sheetfuncs.report.record import DECISION_FIELDS
     from sheetfuncs.workbook.read import open_book
@@ -60,8 +61,13 @@ def _decision(book: Path, sheet: str) -> dict[str, Value]:
             formula = opened.local_name(sheet, f"{DECISION}{place}")
             if formula is None:
                 continue
-            block = opened.read(parse_area(formula))
-            value = block.value(0, 0) if block.row_count and block.column_count else None
+            value = _first_value(opened.read(parse_area(formula)))
             if value is not None:
                 found[field] = value
     return found
+
+
+def _first_value(block: Block) -> Value:
+    if not block.row_count or not block.column_count or block.kinds[0, 0] == Kind.BLANK:
+        return None
+    return block.text(0, 0) if block.kinds[0, 0] in (Kind.TEXT, Kind.ERROR) else float(block.numbers[0, 0])
