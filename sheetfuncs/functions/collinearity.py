@@ -40,8 +40,8 @@ def _the_one(inflation: Sequence[Inflation], wanted: Option) -> Inflation:
 FUNCTIONS = (
     WorksheetFunction(
         "FIT_VIF", "collinearity",
-        "Variance inflation factor of each predictor, or of the one named: how many times wider its squared error bar "
-        "is than without overlap with the others; generalized for categories.",
+        "Variance inflation factor of each predictor, or of the one named: how many times larger the squared error of "
+        "its coefficient is than without overlap with the others; generalized for categories.",
         (
             Argument("predictors", "Columns that explain the response, side by side; text above numbers in the first "
                                    "row is a header. Rows with a blank or an error in any column are left out."),

@@ -20,7 +20,8 @@ def evaluate(name: str, /, *args: object, **options: object) -> CellResult:
     an error text: #VALUE! cells or options of a wrong kind, #NUM! numbers that do not allow it, #N/A a method that does
     not apply, #NAME? an unknown function. Raises TypeError for an unknown option or too many arguments.
 
-        >>> evaluate("FIT_DURBIN_WATSON", [[1.0], [2.5], [2.0], [4.5]], [[1.0], [2.0], [3.0], [4.0]])  # e.g. 3.39
+        >>> round(evaluate("FIT_DURBIN_WATSON", [[1.0], [2.5], [2.0], [4.5]], [[1.0], [2.0], [3.0], [4.0]]), 12)
+        3.166666666667
     """
     try:
         return compute(name, *args, **options)

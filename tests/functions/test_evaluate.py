@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import doctest
 import subprocess
 import sys
 from pathlib import Path
@@ -146,6 +147,10 @@ def test_refusals_are_the_error_of_their_kind():
     assert evaluate("FIT_PRESS", RESPONSE, [[a, 2 * a] for a in AREA]) == "#NUM!"  # collinear
     assert evaluate("FIT_DURBIN_WATSON", [[2 * a + 1] for a in AREA], PREDICTORS) == "#NUM!"  # perfect fit
     assert evaluate("FIT_BREUSCH_GODFREY_P", RESPONSE, PREDICTORS, 500) in ("#N/A", "#NUM!")
+
+
+def test_the_example_gives_what_it_shows():
+    assert doctest.testmod(sys.modules[evaluate.__module__]) == (0, 1)
 
 
 def test_why_gives_the_sentence_behind_an_error():
