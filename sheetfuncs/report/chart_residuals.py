@@ -19,6 +19,7 @@ _FIFTHS_FROM, _HALVES_FROM = 25, 10
 
 
 def response_name(check: Check) -> str:
+    """The response's name, short enough for a title."""
     return shortened(check.settings.response, 28)
 
 

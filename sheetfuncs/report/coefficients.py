@@ -16,6 +16,7 @@ _PERCENT = 100.0
 
 
 def write_fit(page: Page, check: Check) -> None:
+    """The section: a line a term, then the figures about the whole fit, then base levels."""
     level = f"{check.settings.level * _PERCENT:.4g} %"
     page.section(
         "fit", "The fit",

@@ -25,6 +25,7 @@ _LEAST = 13.5  # rows stand closer here than below, so that all of it fits one s
 
 
 def write_first_screen(page: Page, check: Check, data_sheet: str, data_area: str) -> None:
+    """Everything that must be seen without scrolling; row 2 is left free for the jumps."""
     page.least = _LEAST
     page.put(FIRST, page.title, looks.TITLE, span=COUNT)
     page.ask_height(25.0)
@@ -64,6 +65,7 @@ def what_was_fitted(check: Check) -> str:
 
 
 def how_many_rows(check: Check) -> str:
+    """How many rows were used, left out, hidden, in one sentence."""
     ledger = check.observations.ledger
     parts = [f"{counted(len(ledger.used), 'row')} used"]
     if ledger.excluded:

@@ -38,6 +38,7 @@ def decimals(value: float, digits: int) -> int:
 
 
 def decimals_format(count: int) -> str:
+    """Thousands separated, so many decimals."""
     return WHOLE + ("." + "0" * count if count else "")
 
 

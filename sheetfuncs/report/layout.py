@@ -95,7 +95,7 @@ class Page:
         if note:
             self.put(FIRST, note, looks.QUIET_WRAPPED, span=COUNT)
             self.next()
-            self.gap(4.0)
+        self.gap(3.0)
 
     def subheading(self, title: str) -> None:
         self.gap(6.0)

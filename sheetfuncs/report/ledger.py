@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from sheetfuncs.checking import Check
 from sheetfuncs.judgement.words import counted
 from sheetfuncs.report import style as looks
+from sheetfuncs.report.first_screen import sentence
 from sheetfuncs.report.layout import COUNT, FIRST, Head, Page
 from sheetfuncs.report.links import to_row
 
@@ -16,6 +17,7 @@ MOST_REASONS = 50
 
 
 def write_ledger(page: Page, check: Check, data_sheet: str, data_area: str) -> None:
+    """The section: rows used, hidden, remarks, and the rows left out, one by one or by reason."""
     ledger = check.observations.ledger
     page.section("ledger", "Rows used and left out")
     used = counted(len(ledger.used), "row")
@@ -41,13 +43,13 @@ def _write_excluded(page: Page, data_sheet: str, data_area: str, excluded: Seque
     if len(excluded) <= ONE_BY_ONE:
         for row, reason in excluded:
             page.put(FIRST, row, looks.LINK, span=3, link=to_row(data_sheet, data_area, row))
-            page.put(FIRST + 3, reason, looks.BESIDE, span=COUNT - 3)
+            page.put(FIRST + 3, sentence(reason), looks.BESIDE, span=COUNT - 3)
             page.next()
         return
     groups = by_reason(excluded)
     for reason, rows in groups[:MOST_REASONS]:
         page.put(FIRST, counted(len(rows), "row"), looks.TEXT, span=3)
-        page.put(FIRST + 3, f"{reason}: {ranges_text(rows)}", looks.BESIDE, span=COUNT - 3)
+        page.put(FIRST + 3, sentence(f"{reason}: {ranges_text(rows)}"), looks.BESIDE, span=COUNT - 3)
         page.next()
     if len(groups) > MOST_REASONS:
         rest = [row for _, rows in groups[MOST_REASONS:] for row in rows]

@@ -18,7 +18,7 @@ from sheetfuncs.report.names import DECISION
 DECISION_FIELDS = ("decision", "reason", "by", "date", "reviewed by", "data")
 _LABELS = {
     "decision": "Decision", "reason": "Reason, and limits of use", "by": "Decided by", "date": "Date",
-    "reviewed by": "Reviewed by", "data": "Data decided on",
+    "reviewed by": "Reviewed by", "data": "Fingerprint of the data decided on",
 }
 _OPTIONS = ("Use it", "Use it within the limits given as reason", "Do not use it yet")
 _LABEL, _ENTRY = 3, 11
@@ -35,6 +35,7 @@ def write_decision(page: Page, decision: Mapping[str, Value] | None, fingerprint
         "decision", "Decision record",
         "Fill in the pale cells. They are kept when the check is run again on the same range.",
     )
+    first = page.kept.pop()[0]
     kept = _with_data(decision or {}, fingerprint)
     if kept["data"] != fingerprint:
         page.put(FIRST, CHANGED, looks.WRAPPED.but(bold=True, colour=looks.SMOOTH), span=_LABEL + _ENTRY)
@@ -53,6 +54,7 @@ def write_decision(page: Page, decision: Mapping[str, Value] | None, fingerprint
             page.choices.append(Choice(page.row, column, _OPTIONS))
         page.names[f"{DECISION}{place + 1}"] = "=" + Area(page.row, column, page.row, column).on(page.title)
         page.next()
+    page.kept.append((first, page.row - 1))  # a record that is signed stands on one page
 
 
 def _with_data(decision: Mapping[str, Value], fingerprint: str) -> dict[str, Value]:
@@ -65,6 +67,7 @@ def _with_data(decision: Mapping[str, Value], fingerprint: str) -> dict[str, Val
 def write_settings(
     page: Page, check: Check, data_sheet: str, data_area: str, checked_at: datetime | None, fingerprint: str
 ) -> None:
+    """The section: what the sheet was made with, in cells, and the fingerprint of the data."""
     settings = check.settings
     page.section(
         "settings", "Settings and versions",
@@ -98,4 +101,5 @@ def write_settings(
 
 
 def fingerprint_of(check: Check) -> str:
+    """The fingerprint of the used data of a check."""
     return data_fingerprint(check.design)

@@ -84,6 +84,7 @@ def reserve_cross_check(page: Page, check: Check) -> int:
 
 
 def write_cross_check(page: Page, check: Check, start: int, copy: Copy) -> None:
+    """The comparison, on the rows kept free for it, with formulas over the copy."""
     with page.at(start):
         page.table_head([
             Head(FIRST, _LABEL, "Figure"), Head(_OURS, 1, "Reported here", right=True),

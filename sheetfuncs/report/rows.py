@@ -16,6 +16,7 @@ NOTE = (
 
 
 def write_rows(page: Page, check: Check, data_sheet: str, data_area: str) -> None:
+    """The section: the rows to look at, most urgent first."""
     page.section("rows", "Rows that deserve a look", NOTE if check.flagged else "")
     if not check.flagged:
         page.put(FIRST, check.fit.nothing_left() or "No row stands out.", looks.WRAPPED, span=COUNT)

@@ -19,6 +19,7 @@ _NAME = 5
 
 
 def write_separation(page: Page, check: Check) -> None:
+    """The section: a line a predictor."""
     page.section("separation", "Predictors that move together")
     if len(check.inflation) < 2:
         page.put(FIRST, "There is one predictor: nothing to confuse it with.", looks.WRAPPED, span=COUNT)

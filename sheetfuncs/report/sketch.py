@@ -43,12 +43,15 @@ class Sketch:
 
 
 def numbers(name: str, values: Iterable[float] | np.ndarray) -> Figures:
+    """A column of numbers; those that are not finite leave a gap."""
     return Figures(name, tuple(float(v) for v in values))
 
 
 def counts(name: str, values: Iterable[float] | np.ndarray) -> Figures:
+    """A column of whole numbers: rows, lags, places."""
     return Figures(name, tuple(int(v) for v in values), "count")
 
 
 def texts(name: str, values: Iterable[str]) -> Figures:
+    """A column of labels."""
     return Figures(name, tuple(values), "text")

@@ -42,6 +42,7 @@ _MANY = {"breusch_godfrey", "reset"}
 
 
 def write_statistics(page: Page, check: Check) -> None:
+    """The section: the statistics that the first screen reads, then the same tests in other variants."""
     page.section("statistics", "Every statistic", NOTE)
     shown, others = _split(check.statistics)
     _write_table(page, shown)

@@ -14,6 +14,7 @@ STRETCHES = 1_000
 
 
 def is_thinned(check: Check) -> bool:
+    """Whether point charts show a choice of the rows only."""
     return check.design.n > MOST_POINTS
 
 
