@@ -314,9 +314,13 @@ def _refuse_entry(entry: Entry, label: str) -> None:
         )
     if name[:1] in ("", "/") or ".." in name.split("/") or min(name) < " " or set(name) & set("\\:\ufffd"):
         raise WorkbookUnsafeError(
-            f"{label} holds a zip entry named {name!r}, which is no part of a workbook and could point outside it."
+            f"{label} holds a zip entry named {name!r}, which is no part of a workbook and could point outside it. "
+            f"Save it again from the spreadsheet program."
         )
-    if entry.size > MAX_ENTRY or (entry.size > RATIO_FROM and entry.size > MAX_RATIO * max(entry.packed, 1)):
+    # A picture of one colour may shrink 1,000 times; it is copied and never inflated. Text is what may be read.
+    text = name.casefold().endswith((".xml", ".rels", ".vml"))
+    unpacked_limit = MAX_RATIO * max(entry.packed, RATIO_FROM // MAX_RATIO) if text else MAX_ENTRY
+    if entry.size > min(unpacked_limit, MAX_ENTRY):
         raise WorkbookUnsafeError(
             f"The zip entry {name!r} of {label} inflates from {entry.packed:,} to {entry.size:,} bytes; more than "
             f"{MAX_RATIO} times or {MAX_ENTRY:,} bytes is not opened."

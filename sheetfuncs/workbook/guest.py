@@ -42,6 +42,11 @@ class Guest:
         self.name = self.book.names[0]
         self.part = self.book.sheet_part(0)
 
+    @property
+    def sheet(self) -> etree._Element:
+        """The root of the sheet's own part."""
+        return self.package.document(self.part).root
+
     def shared(self, kind: str) -> Document | None:
         """A part that the whole package shares, by the last word of its relationship, for instance "styles"."""
         for relationship in self.package.relationships(self.book.part):
@@ -66,9 +71,8 @@ class Guest:
 
     def adapt(self, name: str, styles: StyleMerge) -> None:
         """Change its parts in memory so that they are right in the host, under its name there."""
-        sheet = self.package.document(self.part).root
-        _inline_strings(sheet, self.shared("sharedStrings"))
-        _unselect(sheet)
+        _inline_strings(self.sheet, self.shared("sharedStrings"))
+        _unselect(self.sheet)
         for part in [self.part, *sorted(self.package.reachable(self.part))]:
             if not _is_xml(part):
                 continue

@@ -15,8 +15,9 @@ from sheetfuncs.workbook.package import Package
 from sheetfuncs.workbook.properties import list_sheet
 from sheetfuncs.workbook.removal import take_out
 from sheetfuncs.workbook.saving import written_beside
-from sheetfuncs.workbook.styles import StyleMerge, minimal_styles
+from sheetfuncs.workbook.styles import StyleMerge, default_font, minimal_styles
 from sheetfuncs.workbook.titles import check_title
+from sheetfuncs.workbook.widths import fit_widths
 from sheetfuncs.workbook.xml import integer, main
 
 _RELATIONSHIP_TYPE = "http://schemas.openxmlformats.org/officeDocument/2006/relationships/"
@@ -98,7 +99,9 @@ def _refuse_taken_name(book: WorkbookXml, name: str) -> None:
 def _merge(host: Package, book: WorkbookXml, guest: Guest, name: str) -> None:
     """Adapt the guest to the host's styles and tables."""
     part = _styles_part(host, book)
-    styles = StyleMerge(host.document(part), guest.shared("styles") or minimal_styles())
+    host_styles, guest_styles = host.document(part), guest.shared("styles") or minimal_styles()
+    fit_widths(guest.sheet, default_font(guest_styles.root), default_font(host_styles.root))
+    styles = StyleMerge(host_styles, guest_styles)
     guest.adapt(name, styles)
     if styles.changed:
         host.mark_changed(part)

@@ -48,6 +48,15 @@ def minimal_styles() -> Document:
     return parse(_MINIMAL, "the minimal styles")
 
 
+def default_font(root: etree._Element) -> etree._Element | None:
+    """The font of the Normal style, in which column widths are counted."""
+    formats = children(child(root, "cellStyleXfs"), "xf") or children(child(root, "cellXfs"), "xf")
+    fonts = children(child(root, "fonts"), "font")
+    place = _normal_style(root, len(formats))
+    index = integer(formats[place], "fontId") if place < len(formats) else 0
+    return fonts[index] if 0 <= index < len(fonts) else None
+
+
 class _Shelf:
     """One list of formats in the host, with the places of those that are there."""
 
@@ -199,7 +208,7 @@ class _NumberFormats:
 def _normal_style(root: etree._Element, count: int) -> int:
     """The place of the style named Normal, whatever its name in the host's language."""
     for style in children(child(root, "cellStyles"), "cellStyle"):
-        if style.get("builtinId") == "0" and integer(style, "xfId") < count:
+        if style.get("builtinId") == "0" and 0 <= integer(style, "xfId") < count:
             return integer(style, "xfId")
     return 0
 

@@ -68,6 +68,11 @@ def test_an_entry_that_inflates_beyond_reason_is_refused():
     refused(zipped({**files(), "xl/big.xml": bytes(30 << 20)}), WorkbookUnsafeError, "more than 400 times")
 
 
+def test_a_picture_of_one_colour_is_carried_however_small_it_packs():
+    book = zipped({**files(), "xl/media/image1.bmp": bytes(30 << 20)})
+    assert len(unzipped(insert_into(book))["xl/media/image1.bmp"]) == 30 << 20
+
+
 def test_an_entry_that_inflates_beyond_what_it_declares_is_refused():
     """A small size in the directory, a large stream behind it: only as much as declared is ever inflated."""
     book = zipped({**files(), "xl/workbook.xml": bytes(3 << 20)})

@@ -78,6 +78,19 @@ def test_the_other_sheets_look_as_before(name):
                 assert (look(twin), twin.style) == (look(cell), cell.style), (sheet.title, cell.coordinate)
 
 
+@pytest.mark.parametrize(("font", "size", "factor"), [("Calibri", 11, 1), ("Arial", 10, 1), ("Calibri", 8, 7 / 5),
+                                                      ("Verdana", 12, 7 / 10)])  # fmt: skip
+def test_columns_take_the_pixels_they_were_drawn_for(font, size, factor):
+    """Widths count digits of the host's default font: 7 pixels in Calibri 11 at 96 dpi (ISO/IEC 29500-1, 18.3.1.13)."""
+    parts = base()
+    own = f'<sz val="{size}"/><name val="{font}"/>'.encode()
+    parts.content["xl/styles.xml"] = parts.content["xl/styles.xml"].replace(b'<sz val="11"/><name val="Calibri"/>', own)
+    drawn, there = opened(guest())[TITLE], opened(inserted(packed(parts)))[TITLE]
+    for letter in ("A", "B"):
+        width = drawn.column_dimensions[letter].width
+        assert there.column_dimensions[letter].width == pytest.approx(width * factor, rel=1e-5)
+
+
 def test_lists_count_what_they_hold():
     for name in HOSTS:
         if name.startswith("xlsxwriter"):
