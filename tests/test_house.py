@@ -12,7 +12,7 @@ import pytest
 
 ROOT = Path(__file__).parents[1]
 TOP = {"README.md", "DEVELOPERS.md", "pyproject.toml", "sheetfuncs", "tests", "templates"}
-MADE_BY_RUNNING = {"demo", "build", "dist", "venv", "__pycache__"}  # .gitignore names them too
+MADE_BY_RUNNING = {"demo", "sheetfuncs-demo", "build", "dist", "venv", "__pycache__"}  # .gitignore names them too
 MODULES = sorted((ROOT / "sheetfuncs").rglob("*.py"))
 # Folders of this machine, whichever it is, and of machines like those on which such projects are built.
 OWN_FOLDERS = "|".join(re.escape(str(folder)) for folder in (ROOT, Path.home()) if len(folder.parts) > 1)
