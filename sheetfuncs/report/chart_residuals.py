@@ -84,7 +84,6 @@ def normality_chart(check: Check) -> Sketch | None:
     values = np.sort(standardized[np.isfinite(standardized)])
     if values.size < _FEWEST:
         return None
-    scores = normal_scores(values.size)
     note = ""
     if values.size > MOST_IN_LINE:
         keep = np.unique(np.linspace(0, values.size - 1, STRETCHES).round().astype(int))
@@ -93,6 +92,7 @@ def normality_chart(check: Check) -> Sketch | None:
         note = f" Shown: {keep.size:,} of {values.size:,} rows, evenly by rank, and the outermost hundred at both ends."
     else:
         keep = np.arange(values.size)
+    scores = normal_scores(values.size, keep)
     line = np.linspace(scores[0], scores[-1], 41)
     low, high = pointwise_limits(line, values.size)
     name = response_name(check)
@@ -100,7 +100,7 @@ def normality_chart(check: Check) -> Sketch | None:
         "scatter", f"Do the errors of {name} follow a normal curve?",
         "Points along the line speak for a normal curve. Dashed: pointwise 95 % limits, normal score ± 1.96 times the "
         "standard error of an order statistic; with many points some leave them by chance." + note,
-        (numbers("Normal score", scores[keep]), numbers("Residuals", values[keep]),
+        (numbers("Normal score", scores), numbers("Residuals", values[keep]),
          numbers("Normal score", line), numbers("Normal curve", line),
          numbers("Pointwise limits", low), numbers("Upper limit", high)),
         (Line(0, 1, points_look(keep.size)), Line(2, 3, "line"), Line(2, 4, "limit"), Line(2, 5, "limit")),

@@ -9,10 +9,14 @@ import numpy as np
 _NORMAL = NormalDist()
 
 
-def normal_scores(n: int) -> np.ndarray:
-    """Expected places of n ordered standard normal values, (n,): quantiles at (i - 3/8)/(n + 1/4) (Blom 1958)."""
+def normal_scores(n: int, places: np.ndarray | None = None) -> np.ndarray:
+    """Expected places of n ordered standard normal values: quantiles at (i - 3/8)/(n + 1/4), i from 1 (Blom 1958).
+
+    places: which of them, from 0; None gives all n.
+    """
     inverse = _NORMAL.inv_cdf
-    return np.array([inverse((i - 0.375) / (n + 0.25)) for i in range(1, n + 1)])
+    wanted = range(n) if places is None else places.tolist()
+    return np.array([inverse((i + 0.625) / (n + 0.25)) for i in wanted])
 
 
 def pointwise_limits(scores: np.ndarray, n: int, level: float = 0.95) -> tuple[np.ndarray, np.ndarray]:
