@@ -17,9 +17,10 @@ from sheetfuncs.workbook.book import WorkbookXml
 from sheetfuncs.workbook.formats import Book as BookFile
 from sheetfuncs.workbook.formats import open_package
 from sheetfuncs.workbook.package import Package
-from sheetfuncs.workbook.read_cells import read_one_by_one
+from sheetfuncs.workbook.read_cells import CellReader
 from sheetfuncs.workbook.read_formats import date_formats
 from sheetfuncs.workbook.read_gather import Gathering, SheetCells, cut_cells
+from sheetfuncs.workbook.read_scan import scan_cells
 from sheetfuncs.workbook.read_strings import shared_strings
 from sheetfuncs.workbook.xml import child, children, integer, main
 
@@ -194,7 +195,8 @@ class Book:
 
     def _read_part(self, sheet: Sheet, area: Area) -> SheetCells:
         gathering = Gathering(area, f"Sheet “{sheet.name}” of {self.label}")
-        read_one_by_one(self._package.archive.chunks(sheet.part), gathering, self._date_formats, self.date1904)
+        reader = CellReader(gathering, self._date_formats, self.date1904)
+        scan_cells(self._package.archive.chunks(sheet.part), reader)
         return gathering.finish(self._strings if gathering.has_shared else [], sheet.name, self.date1904)
 
     def read_sheet(self, name: str) -> SheetCells:

@@ -23,16 +23,9 @@ _TAGS = ("sheetData", "row", "c", "v", "f", "is", "t", "rPh", "sheetFormatPr")
 _SHEET_DATA, _ROW, _CELL, _VALUE, _FORMULA, _INLINE, _TEXT, _PHONETIC, _FORMAT = (f"{MAIN} {tag}" for tag in _TAGS)
 
 
-def read_one_by_one(chunks: Iterable[bytes], gathering: Gathering, date_formats: np.ndarray, date1904: bool) -> None:
-    """Read a worksheet part with an XML parser: slower than a scan, and knows every form that a cell may take."""
-    reader = _CellReader(gathering, date_formats, date1904)
-    parser = expat.ParserCreate(namespace_separator=" ")
-    parser.StartElementHandler, parser.EndElementHandler = reader.start, reader.end
-    parser.CharacterDataHandler = reader.characters
-    feed(parser, chunks, gathering.where)
+class CellReader:
+    """Puts cells into a gathering with an XML parser, which knows every form that a cell may take."""
 
-
-class _CellReader:
     def __init__(self, gathering: Gathering, date_formats: np.ndarray, date1904: bool):
         self.gathering, self.date1904 = gathering, date1904
         self.date_formats: list[bool] = date_formats.tolist()
@@ -44,7 +37,14 @@ class _CellReader:
         self.collecting = False
         self.pieces: list[str] = []
 
-    def start(self, name: str, attributes: dict[str, str]) -> None:
+    def read_part(self, chunks: Iterable[bytes]) -> None:
+        """Read a worksheet part, or a piece of one in a root of its own; rows count on from the piece before."""
+        parser = expat.ParserCreate(namespace_separator=" ")
+        parser.StartElementHandler, parser.EndElementHandler = self._start, self._end
+        parser.CharacterDataHandler = self._characters
+        feed(parser, chunks, self.gathering.where)
+
+    def _start(self, name: str, attributes: dict[str, str]) -> None:
         if name == _CELL and self.in_data:
             self._start_cell(attributes)
         elif self.in_cell and not self.phonetic and (name == _VALUE or (name == _TEXT and self.in_inline)):
@@ -63,7 +63,7 @@ class _CellReader:
         elif name == _FORMAT and attributes.get("zeroHeight") in _TRUE:
             self.gathering.hide_by_default()
 
-    def end(self, name: str) -> None:
+    def _end(self, name: str) -> None:
         if name in (_VALUE, _TEXT):
             self.collecting = False
         elif name == _CELL and self.in_cell:
@@ -75,7 +75,7 @@ class _CellReader:
         elif name == _SHEET_DATA:
             self.in_data = False
 
-    def characters(self, text: str) -> None:
+    def _characters(self, text: str) -> None:
         if self.collecting:
             self.pieces.append(text)
 

@@ -110,9 +110,14 @@ class Gathering:
         columns.append(column - self.first_column)
         strings.append(string)
 
+    def put_many(self, rows: np.ndarray, columns: np.ndarray, kinds: np.ndarray | Kind, numbers: np.ndarray) -> None:
+        """Store cells without text, for arrays of 0-based places in the area, for which there is room."""
+        self.kinds[rows, columns] = kinds
+        self.numbers[rows, columns] = numbers
+
     def put_many_shared(self, rows: np.ndarray, columns: np.ndarray, strings: np.ndarray) -> None:
         """As put_shared, for arrays of 0-based places in the area, for which there is room."""
-        self.kinds[rows, columns] = Kind.TEXT
+        self.put_many(rows, columns, Kind.TEXT, np.full(len(rows), np.nan))
         self._shared.append((rows, columns, strings))
 
     @property
@@ -123,6 +128,12 @@ class Gathering:
         if index not in self.texts:
             self.texts[index] = np.full(len(self.kinds), None, object)
         return self.texts[index]
+
+    def count_formulas(self, columns: np.ndarray, stored: np.ndarray) -> None:
+        """Note formulas in 0-based columns of the area, and which of them have a stored value."""
+        width = len(self.formulas)
+        self.formulas += np.bincount(columns, minlength=width)
+        self.unstored += np.bincount(columns[~stored], minlength=width)
 
     def count_formula(self, column: int, *, stored: bool) -> None:
         """Note a formula in the area, and whether its value is stored."""
