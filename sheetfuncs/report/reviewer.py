@@ -101,7 +101,7 @@ def _write_line(page: Page, line: Line) -> None:
     difference = Area(row, _DIFFERENCE, row, _DIFFERENCE).plain
     page.put(FIRST, line.label, looks.WRAPPED, span=_LABEL)
     _value(page, _OURS, line.ours, line.number_format)
-    _value(page, _NATIVE, line.native, line.number_format, line.formula, array=True)
+    _value(page, _NATIVE, line.native, line.number_format, line.formula, array="LINEST" in line.formula)
     _value(page, _DIFFERENCE, line.native - line.ours, "0.0E+00", f"{native}-{ours}")
     limit = AGREEMENT * line.scale
     agrees = abs(line.native - line.ours) <= limit
