@@ -17,7 +17,7 @@ from sheetfuncs.core.collinearity import Inflation, variance_inflation
 from sheetfuncs.core.design import Category, Design, Numeric, build_design
 from sheetfuncs.core.fit import Fit, fit_design
 from sheetfuncs.core.form import reset
-from sheetfuncs.core.independence import breusch_godfrey, durbin_watson
+from sheetfuncs.core.independence import breusch_godfrey, durbin_watson, durbin_watson_tests
 from sheetfuncs.core.influence import RowMeasures, outlier_test, row_measures
 from sheetfuncs.core.mean import residual_mean
 from sheetfuncs.core.normality import jarque_bera, shapiro_wilk
@@ -208,6 +208,7 @@ def all_statistics(fit: Fit) -> list[Result]:
     return [
         residual_mean(fit),
         durbin_watson(fit),
+        *durbin_watson_tests(fit),
         *(
             breusch_godfrey(fit, lags, distribution=distribution, before_first=before_first)
             for lags in (1, 2, 4) for distribution in ("chi-square", "F") for before_first in ("zeros", "omitted")

@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+from typing import Any
+
 import numpy as np
 from scipy.special import chdtrc, fdtrc
 
 from sheetfuncs.core.auxiliary import add_columns, refused
-from sheetfuncs.core.basis import factorize
+from sheetfuncs.core.basis import ROUNDINGS, factorize
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.quadratic_forms import durbin_watson_tails
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
@@ -16,6 +19,7 @@ NO_CORRELATION = "errors are not correlated with earlier ones"
 _FILLS = {"zeros": "0", "omitted": "drop first rows"}
 _TYPES = {"chi-square": "Chisq", "F": "F"}
 _ALTERNATIVES = {"positive": "greater", "negative": "less", "two-sided": "two.sided"}
+_EXACT_NOTE = "Exact for normal errors and predictors that hold no earlier value of the response."
 
 
 def durbin_watson(fit: Fit) -> Result:
@@ -36,28 +40,65 @@ def durbin_watson(fit: Fit) -> Result:
     )
 
 
+def durbin_watson_tests(fit: Fit) -> tuple[Result, ...]:
+    """The exact test against each alternative, "positive", "negative" and "two-sided", from one computation."""
+    refusal = _durbin_watson_refusal(fit)
+    if refusal is not None:
+        return tuple(replace(refusal, **_named(alternative)) for alternative in _ALTERNATIVES)
+    d = float(durbin_watson(fit).statistic or 0.0)
+    tails = durbin_watson_tails(fit.basis, d, fit.design.order)
+    both = min(1.0, 2.0 * min(tails.lower, tails.upper))
+    return tuple(
+        Statistic(
+            method="durbin_watson_test", statistic=d, p=float(p), null=NO_CORRELATION, note=_EXACT_NOTE,
+            **_named(alternative),
+        )
+        for alternative, p in zip(_ALTERNATIVES, (tails.lower, tails.upper, both), strict=True)
+    )
+
+
 def durbin_watson_test(fit: Fit, alternative: str = "positive") -> Result:
     """Exact p of the Durbin-Watson statistic for normal errors, at any n; see `quadratic_forms`.
 
     alternative: "positive" correlation (small statistic), "negative" or "two-sided" (twice the smaller tail).
-    Does not hold where a lagged response stands among the predictors.
+    Does not apply where a predictor is the response of the row before: the p-value does not hold there
+    (Durbin 1970, Econometrica 38:410-421).
     """
     if alternative not in _ALTERNATIVES:
         raise ArgumentError(f'"{alternative}" is not an alternative: use positive, negative or two-sided.')
-    args = {"alternative": _ALTERNATIVES[alternative], "exact": True}
-    variant = f"exact, against {alternative} correlation" if alternative != "two-sided" else "exact, two-sided"
-    refusal = refused(fit, "durbin_watson_test", args, variant, NO_CORRELATION)
+    return durbin_watson_tests(fit)[list(_ALTERNATIVES).index(alternative)]
+
+
+def _named(alternative: str) -> dict[str, Any]:
+    against = "two-sided" if alternative == "two-sided" else f"against {alternative} correlation"
+    return {
+        "args": {"alternative": _ALTERNATIVES[alternative], "exact": True}, "variant": f"exact, {against}",
+    }
+
+
+def _durbin_watson_refusal(fit: Fit) -> DoesNotApply | None:
+    refusal = refused(fit, "durbin_watson_test", {}, "", NO_CORRELATION)
     if refusal:
         return refusal
-    d = float(durbin_watson(fit).statistic or 0.0)
-    tails = durbin_watson_tails(fit.basis, d, fit.design.order)
-    p = {
-        "positive": tails.lower, "negative": tails.upper, "two-sided": min(1.0, 2.0 * min(tails.lower, tails.upper))
-    }[alternative]
-    return Statistic(
-        method="durbin_watson_test", args=args, variant=variant, statistic=d, p=p, null=NO_CORRELATION,
-        note="Exact for normal errors; not valid with an earlier value of the response among the predictors.",
+    lagged = lagged_response(fit)
+    if lagged is None:
+        return None
+    return DoesNotApply(
+        method="durbin_watson_test", args={}, variant="", null=NO_CORRELATION,
+        reason=f"{lagged} is the response of the row before, and with that among the predictors the p-value does not "
+               "hold. Use Breusch-Godfrey.",
     )
+
+
+def lagged_response(fit: Fit) -> str | None:
+    """The predictor that is the response of the row before, in time order; None where there is none."""
+    response = fit.design.in_order(fit.design.response)
+    if fit.n < 4 or np.ptp(response) == 0:
+        return None
+    for name, column in zip(fit.design.column_names, fit.design.columns.T, strict=True):
+        if np.array_equal(fit.design.in_order(column)[1:], response[:-1]):
+            return name
+    return None
 
 
 def breusch_godfrey(
@@ -102,6 +143,8 @@ def breusch_godfrey(
         part, rest, rank = _lagged_sums(fit, lags, zeros=before_first == "zeros")
     except NumbersError:
         return cannot("Without the first rows the predictors can no longer be told apart.")
+    if part + rest == 0.0:
+        return cannot("Without the first rows the fit is perfect, so that nothing can be tested on it.", "#NUM!")
     if rank < lags:
         return cannot("The lagged residuals cannot be told apart from the predictors.")
     if distribution == "chi-square":
@@ -131,6 +174,8 @@ def _lagged_sums(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float, int
         return added.part, 0.0 if added.fits_perfectly(fit.noise) else added.rest, added.rank
     columns = fit.design.columns if fit.design.order is None else fit.design.columns[fit.design.order]
     basis = factorize(columns[lags:], fit.design.column_names, intercept=fit.design.intercept)
+    if np.linalg.norm(e[lags:]) <= ROUNDINGS * fit.noise:
+        return 0.0, 0.0, 0
     unexplained = basis.project_out(e[lags:])
     by_design = e[lags:] - unexplained
     added = add_columns(basis, unexplained, lagged[lags:])

@@ -9,6 +9,7 @@ import numpy as np
 
 from sheetfuncs.core.collinearity import Inflation
 from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.normality import shape
 from sheetfuncs.core.results import Result
 from sheetfuncs.core.smooth import autocorrelations, local_line, spread_by_groups
 from sheetfuncs.judgement.rows import FlaggedRow
@@ -53,8 +54,7 @@ def all_evidence(
         _mean(fit, _find(statistics, "residual_mean")),
         _form(fit, _find(statistics, "reset", power=[2, 3])),
         _variance(fit, _find(statistics, "breusch_pagan", studentize=True)),
-        _independence(fit, _find(statistics, "breusch_godfrey", order=1, type="Chisq", fill="0"),
-                      _find(statistics, "durbin_watson")),
+        _independence(fit, statistics),
         _normality(fit, statistics),
         _collinearity(fit, inflation),
         _rows(fit, flagged),
@@ -135,16 +135,20 @@ def _variance(fit: Fit, result: Result) -> Evidence:
     )
 
 
-def _independence(fit: Fit, result: Result, durbin_watson: Result) -> Evidence:
+def _independence(fit: Fit, statistics: Sequence[Result]) -> Evidence:
+    result, name = _find(statistics, "durbin_watson_test", alternative="two.sided"), "Durbin-Watson"
+    if not result.applies:
+        result, name = _find(statistics, "breusch_godfrey", order=1, type="Chisq", fill="0"), "Breusch-Godfrey"
     strength, finding = _tested("independence", "independent errors", result)
     size = ""
+    durbin_watson = _find(statistics, "durbin_watson")
     if durbin_watson.applies and durbin_watson.statistic is not None and fit.n > 2:
         r1 = autocorrelations(fit.design.in_order(fit.residuals), 1)[0]
         size = f"neighbouring errors correlate {r1:+.2f}; Durbin-Watson {durbin_watson.statistic:.2f} (2 is none)"
     order = "the given order" if fit.design.order is not None else "the rows' order"
     return Evidence(
         "independence", "Is each error free of the one before?", strength, finding,
-        f"{_named('Breusch-Godfrey', result)}, in {order}", size,
+        f"{_named(name, result)}, in {order}", size,
         "Positive correlation makes error bars too narrow: there is less information than rows.", result.p,
     )
 
@@ -157,9 +161,7 @@ def _normality(fit: Fit, statistics: Sequence[Result]) -> Evidence:
     strength, finding = _tested("normality", "normal errors", result)
     size = ""
     if fit.has_error_bars:
-        e = fit.residuals - fit.residuals.mean()
-        m2 = float(np.mean(e**2))
-        skew, kurtosis = float(np.mean(e**3)) / m2**1.5, float(np.mean(e**4)) / m2**2
+        skew, kurtosis = shape(fit.residuals)
         size = (
             f"skewness {skew:+.2f} (0 is symmetric), kurtosis {kurtosis:.2f} (3 is normal); "
             f"largest residual {number(float(np.abs(fit.residuals).max()) / fit.sigma, 2)} standard deviations"
