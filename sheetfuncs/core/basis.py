@@ -20,6 +20,8 @@ from sheetfuncs.errors import CollinearPredictorsError, NoVariationError, TooFew
 EPS = float(np.finfo(float).eps)
 # A column that is this many roundings of its own values away from the others is determined by them.
 ROUNDINGS = 16.0
+# Columns of which at least this share is left after the others are told apart without a closer look.
+SUSPICIOUS = 1e-6
 # Below this the squares of what is left of a column lose digits to the end of the number range.
 SMALLEST = 1e-130
 
@@ -135,7 +137,7 @@ def factorize(columns: np.ndarray, names: Sequence[str], *, intercept: bool) -> 
         work /= scale
         q, r, pivot = _pivoted_qr(work)
         limit = EPS * ROUNDINGS * np.sqrt(n) * np.maximum(raw_norm / scale, 1.0)
-        _refuse_dependent_columns(names, r, pivot, limit, intercept)
+        _refuse_dependent_columns(names, r, pivot, limit[pivot], intercept)
     return Basis(q, r, pivot, scale, np.asarray(centre), raw_norm, intercept)
 
 
@@ -181,12 +183,18 @@ def _refuse_empty_columns(
 def _refuse_dependent_columns(
     names: Sequence[str], r: np.ndarray, pivot: np.ndarray, limit: np.ndarray, intercept: bool
 ) -> None:
-    dependent = np.flatnonzero(np.abs(np.diag(r)) <= limit[pivot])
-    if not dependent.size:
-        return
-    rank = int(dependent[0])
+    # Roundings of the columns that determine it count too, as far as they take part; only columns of which little is
+    # left need that look.
+    for rank in np.flatnonzero(np.abs(np.diag(r)) <= np.maximum(SUSPICIOUS, limit.max(initial=0.0) * r.shape[0])):
+        weights = back_substituted(r[:rank, :rank], r[:rank, rank])
+        if abs(r[rank, rank]) <= limit[rank] + np.abs(weights) @ limit[:rank]:
+            _refuse_dependent_column(names, pivot, int(rank), weights, intercept)
+
+
+def _refuse_dependent_column(
+    names: Sequence[str], pivot: np.ndarray, rank: int, weights: np.ndarray, intercept: bool
+) -> None:
     # Pivoting decides which column comes out last; the sentence names all that move together with it.
-    weights = back_substituted(r[:rank, :rank], r[:rank, rank])
     partners = [int(pivot[i]) for i in np.flatnonzero(np.abs(weights) > 1e-6)]
     together = tuple(names[j] for j in sorted([int(pivot[rank]), *partners]))
     constant = " and the intercept" if intercept else ""
