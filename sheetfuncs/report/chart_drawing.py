@@ -109,8 +109,15 @@ def _dress(native: NativeChart, chart: Chart) -> None:
     else:
         native.set_legend({"none": True})
     native.set_chartarea({"border": {"color": looks.HAIRLINE}, "fill": {"color": "#FFFFFF"}})
-    native.set_plotarea({"fill": {"none": True}})
+    native.set_plotarea({"fill": {"none": True}, "layout": _plot_place(chart)})
     native.show_blanks_as("gap")
+
+
+def _plot_place(chart: Chart) -> dict[str, float]:
+    """The plot's place in shares of the chart: without one, programs leave half of a low chart to its texts."""
+    left = 0.2 if chart.kind == "bars" else 0.1
+    height = 0.54 if len(chart.series) > 1 else 0.62
+    return {"x": left, "y": 0.15, "width": 0.96 - left, "height": height}
 
 
 def _axis(axis: Axis, *, gridlines: bool) -> dict[str, Any]:

@@ -24,7 +24,7 @@ METHODS = (
     ("Constant variance", "white", "White"),
     ("Constant variance", "goldfeld_quandt", "Goldfeld-Quandt"),
     ("Independence", "durbin_watson", "Durbin-Watson"),
-    ("Independence", "durbin_watson_test", "Durbin-Watson, exact p"),
+    ("Independence", "durbin_watson_test", "Durbin-Watson"),
     ("Independence", "breusch_godfrey", "Breusch-Godfrey"),
     ("Independence", "ljung_box", "Ljung-Box"),
     ("Independence", "box_pierce", "Box-Pierce"),
