@@ -7,7 +7,7 @@ import difflib
 import numpy as np
 
 from sheetfuncs.errors import ArgumentError, SheetfuncsError, UnknownFunctionError
-from sheetfuncs.functions.arguments import is_error, read_option
+from sheetfuncs.functions.arguments import Argument, is_error, read_option
 from sheetfuncs.functions.declaration import Call, CellResult, WorksheetFunction
 from sheetfuncs.functions.registry import REGISTRY
 
@@ -80,12 +80,18 @@ def _call(function: WorksheetFunction, given: dict[str, object]) -> Call:
         value = given[argument.name]
         if argument.kind != "range":
             options[argument.name] = read_option(argument, value)
+            if options[argument.name] is None and not argument.optional:
+                raise _missing(argument, function)
             continue
         if is_error(value):
             refusal = ArgumentError(f"The range {argument.name} is the error {value}: give a range that exists.")
             refusal.cell_error = str(value)
             raise refusal
         if value is None and not argument.optional:
-            raise ArgumentError(f"The argument {argument.name} is missing: {function.signature}.")
+            raise _missing(argument, function)
         ranges[argument.name] = value
     return Call(ranges, options)
+
+
+def _missing(argument: Argument, function: WorksheetFunction) -> ArgumentError:
+    return ArgumentError(f"The argument {argument.name} is missing: {function.signature}.")

@@ -62,6 +62,7 @@ def chosen_options(draw) -> dict[str, object]:
     options = {}
     for argument in draw(st.lists(st.sampled_from(list(OPTIONS.values())), unique=True, max_size=4)):
         usual = st.sampled_from(argument.choices) if argument.choices else st.just(argument.default)
+        usual = usual if argument.optional else st.integers(0, 30)
         options[argument.name] = draw(usual | usual | st.integers(0, 3) | any_option)
     return options
 

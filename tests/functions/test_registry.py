@@ -14,11 +14,13 @@ from sheetfuncs.functions.arguments import allowed
 from sheetfuncs.functions.listing import functions_markdown, functions_text
 from sheetfuncs.functions.registry import REGISTRY, WorksheetFunction
 
+WITHOUT_RESPONSE = ("FIT_VIF",)
 HELP_LIMIT = 255  # what a spreadsheet's function wizard shows
 
 ORDER = [
     "FIT_COEFFICIENTS", "FIT_FITTED", "FIT_RESIDUALS", "FIT_PREDICT", "FIT_WHY", "FIT_RESIDUAL_MEAN",
-    "FIT_DURBIN_WATSON", "FIT_BREUSCH_GODFREY_P", "FIT_BREUSCH_PAGAN_P", "FIT_NORMALITY_P", "FIT_NORMAL_SCORES",
+    "FIT_DURBIN_WATSON", "FIT_DURBIN_WATSON_P", "FIT_DURBIN_WATSON_BOUNDS", "FIT_BREUSCH_GODFREY_P",
+    "FIT_BREUSCH_PAGAN_P", "FIT_NORMALITY_P", "FIT_NORMAL_SCORES",
     "FIT_VIF", "FIT_RESET_P", "FIT_LEVERAGE", "FIT_COOKS_DISTANCE", "FIT_DFFITS", "FIT_OUTLIER_P", "FIT_PRESS",
 ]
 
@@ -56,8 +58,11 @@ def test_arguments_are_well_formed(function: WorksheetFunction):
     assert all(re.fullmatch("[a-z]+(_[a-z]+)*", name) for name in names)
     optional = [argument.optional for argument in function.arguments]
     assert optional == sorted(optional)  # what may be omitted comes last
-    assert names[0] == ("predictors" if function.name == "FIT_VIF" else "response")
-    assert names[-1] == ("intercept" if function.name == "FIT_VIF" else "order")
+    first = ["predictors"] if function.name in WITHOUT_RESPONSE else ["response"]
+    if function.name == "FIT_DURBIN_WATSON_BOUNDS":
+        first = ["row_count", "predictor_count"]
+    assert names[: len(first)] == first
+    assert names[-1] == ("order" if first == ["response"] else "intercept")
     for argument in function.arguments:
         assert (argument.kind == "choice") == bool(argument.choices)
         if argument.choices:
@@ -66,7 +71,7 @@ def test_arguments_are_well_formed(function: WorksheetFunction):
             assert argument.choices == tuple(word.lower() for word in argument.choices)
         if argument.default not in (None, True):
             assert str(argument.default) in argument.help
-        assert argument.optional or argument.kind == "range"
+        assert argument.optional or argument.kind == "range" or argument.name in first
 
 
 @functions
