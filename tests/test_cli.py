@@ -52,8 +52,8 @@ def decide(path: Path, sheet: str, text: str) -> None:
             if info.filename == part.lstrip("/"):
                 head, tail = data.split(f'<c r="{cell}"'.encode(), 1)
                 style, rest = tail.split(b"/>", 1)
-                filled = f'<c r="{cell}"'.encode() + style + b' t="inlineStr"><is><t>' + text.encode() + b"</t></is></c>"
-                data = head + filled + rest
+                value = b' t="inlineStr"><is><t>' + text.encode() + b"</t></is></c>"
+                data = head + f'<c r="{cell}"'.encode() + style + value + rest
             new.writestr(info, data)
 
 

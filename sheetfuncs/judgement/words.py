@@ -9,7 +9,7 @@ def number(value: float, digits: int = 3) -> str:
     """A figure with so many significant digits, thousands separated: 12,300; 0.0456; 3.10e-07."""
     if value == 0 or not math.isfinite(value):
         return "0" if value == 0 else "not a number"
-    size = math.floor(math.log10(abs(value)))
+    size = math.floor(math.log10(abs(float(f"{value:.{digits - 1}e}"))))  # of the rounded figure: 9.999 is 10.0
     if size >= 9 or size < -4:
         return f"{value:.{digits - 1}e}"
     decimals = max(digits - 1 - size, 0)
