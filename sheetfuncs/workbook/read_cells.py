@@ -107,14 +107,13 @@ class CellReader:
         self.in_cell = self.collecting = False
         gathering, row, column = self.gathering, self.row, self.column
         text = "".join(self.pieces)
+        if text or self.has_formula:
+            gathering.touch(row, column)
         covered = gathering.covers(row, column)
         if covered and self.has_formula:
             stored = bool(text) or (self.kind == "str" and self.has_value)
-            gathering.count_formula(column, stored=stored)
-        if not text:
-            return
-        gathering.touch(row, column)
-        if covered:
+            gathering.mark_formula(row, column, stored=stored)
+        if covered and text:
             self._put(text)
 
     def _put(self, text: str) -> None:

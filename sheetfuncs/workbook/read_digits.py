@@ -81,7 +81,7 @@ def parse_decimals(
     fraction, fraction_good = parse_whole(words, dot + 1, places)
     good &= (fraction_good | (dot == ends)) & (dot - first + places <= _MOST_DIGITS)
     places = np.where(good, places, 0)
-    value, sure = _divide(whole * _POWERS[places] + fraction, places)
+    value, sure = _divide(np.where(good, whole * _POWERS[places] + fraction, 0).astype(np.uint64), places)
     value = np.where(negative, -value, value)
     good &= sure
     for index in np.flatnonzero(~good).tolist():

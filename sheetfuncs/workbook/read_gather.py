@@ -15,19 +15,36 @@ MAX_CELLS = 50_000_000
 _START_ROWS = 1024
 
 
+_STORED, _UNSTORED = 1, 2
+
+
 @dataclass(frozen=True, eq=False)
 class SheetCells:
-    """A block as read, and what its formulas are like.
+    """A block as read, and where its formulas are.
 
-    formulas, unstored: int64 (columns,): how many cells hold a formula, and how many of those hold no stored value.
-    last_row, last_column: of the last filled cells anywhere on the sheet; 0 for an empty one.
+    marks: uint8 (rows, columns), 1 for a formula with a stored value and 2 for one without; None without formulas.
+    last_row, last_column: of the last filled cells or formulas anywhere on the sheet; 0 for an empty one.
     """
 
     block: Block
-    formulas: np.ndarray
-    unstored: np.ndarray
+    marks: np.ndarray | None
     last_row: int
     last_column: int
+
+    @property
+    def formulas(self) -> np.ndarray:
+        """int64 (columns,): how many cells hold a formula."""
+        return self._count(_STORED) + self.unstored
+
+    @property
+    def unstored(self) -> np.ndarray:
+        """int64 (columns,): how many cells hold a formula without a stored value."""
+        return self._count(_UNSTORED)
+
+    def _count(self, mark: int) -> np.ndarray:
+        if self.marks is None:
+            return np.zeros(self.block.column_count, np.int64)
+        return np.count_nonzero(self.marks == mark, axis=0)
 
 
 class Gathering:
@@ -43,7 +60,7 @@ class Gathering:
         self.used_row = self.used_column = 0
         self.hides_by_default = False
         self.texts: dict[int, np.ndarray] = {}
-        self.formulas, self.unstored = np.zeros(0, np.int64), np.zeros(0, np.int64)
+        self.marks: np.ndarray | None = None
         self.numbers = np.empty((0, 0), order="F")
         self.kinds = np.empty((0, 0), np.uint8, order="F")
         self._hidden = np.zeros(0, bool)
@@ -69,14 +86,11 @@ class Gathering:
 
     def _resize(self, rows: int, columns: int) -> None:
         self._require_size(rows, columns)
-        numbers = np.full((rows, columns), np.nan, order="F")
-        kinds = np.zeros((rows, columns), np.uint8, order="F")
-        kept_rows, kept_columns = min(rows, len(self.kinds)), min(columns, self.kinds.shape[1])
-        numbers[:kept_rows, :kept_columns] = self.numbers[:kept_rows, :kept_columns]
-        kinds[:kept_rows, :kept_columns] = self.kinds[:kept_rows, :kept_columns]
+        self.numbers = _moved(self.numbers, np.full((rows, columns), np.nan, order="F"))
+        self.kinds = _moved(self.kinds, np.zeros((rows, columns), np.uint8, order="F"))
+        if self.marks is not None:
+            self.marks = _moved(self.marks, np.zeros((rows, columns), np.uint8, order="F"))
         self.texts = {column: _resized(texts, rows, None) for column, texts in self.texts.items() if column < columns}
-        self.formulas, self.unstored = _resized(self.formulas, columns, 0), _resized(self.unstored, columns, 0)
-        self.numbers, self.kinds = numbers, kinds
 
     def _require_size(self, rows: int, columns: int) -> None:
         if rows * columns > MAX_CELLS:
@@ -129,18 +143,21 @@ class Gathering:
             self.texts[index] = np.full(len(self.kinds), None, object)
         return self.texts[index]
 
-    def count_formulas(self, columns: np.ndarray, stored: np.ndarray) -> None:
-        """Note formulas in 0-based columns of the area, and which of them have a stored value."""
-        width = len(self.formulas)
-        self.formulas += np.bincount(columns, minlength=width)
-        self.unstored += np.bincount(columns[~stored], minlength=width)
+    def mark_formulas(self, rows: np.ndarray, columns: np.ndarray, stored: np.ndarray) -> None:
+        """Note formulas at 0-based places in the area, for which there is room; stored: which have a value."""
+        if len(rows):
+            self._marks()[rows, columns] = np.where(stored, _STORED, _UNSTORED)
 
-    def count_formula(self, column: int, *, stored: bool) -> None:
-        """Note a formula in the area, and whether its value is stored."""
-        index = column - self.first_column
-        self.reserve(0, index + 1)
-        self.formulas[index] += 1
-        self.unstored[index] += not stored
+    def mark_formula(self, row: int, column: int, *, stored: bool) -> None:
+        """Note one formula in the area."""
+        at, index = row - self.first_row, column - self.first_column
+        self.reserve(at + 1, index + 1)
+        self._marks()[at, index] = _STORED if stored else _UNSTORED
+
+    def _marks(self) -> np.ndarray:
+        if self.marks is None:
+            self.marks = np.zeros(self.kinds.shape, np.uint8, order="F")
+        return self.marks
 
     def hide(self, row: int, hidden: bool = True) -> None:
         """Say whether a worksheet row is hidden."""
@@ -172,7 +189,7 @@ class Gathering:
             hidden[self.first_row - 1 : self.first_row - 1 + height],
             date1904=date1904,
         )
-        return SheetCells(block, self.formulas, self.unstored, self.used_row, self.used_column)
+        return SheetCells(block, self.marks, self.used_row, self.used_column)
 
     def _fill_shared(self, strings: list[str]) -> None:
         rows, columns, places = self._single
@@ -194,6 +211,13 @@ class Gathering:
                 self.texts[column][at[here][found == ""]] = None
 
 
+def _moved(old: np.ndarray, new: np.ndarray) -> np.ndarray:
+    """The new rectangle with what it shares with the old one."""
+    rows, columns = min(len(old), len(new)), min(old.shape[1], new.shape[1])
+    new[:rows, :columns] = old[:rows, :columns]
+    return new
+
+
 def _resized(array: np.ndarray, length: int, fill: object) -> np.ndarray:
     """The array cut or filled up to a length."""
     made = np.full(length, fill, array.dtype)
@@ -207,7 +231,6 @@ def cut_cells(whole: SheetCells, area: Area) -> SheetCells | None:
     last_row, last_column = area.last_row or whole.last_row, area.last_column or whole.last_column
     if not (area.first_row <= last_row <= block.row_count and area.first_column <= last_column <= block.column_count):
         return None
-    columns = range(area.first_column - 1, last_column)
-    cut = block.rows(area.first_row - 1, last_row).columns(columns)
-    picked = slice(columns.start, columns.stop)
-    return replace(whole, block=cut, formulas=whole.formulas[picked], unstored=whole.unstored[picked])
+    rows, columns = slice(area.first_row - 1, last_row), slice(area.first_column - 1, last_column)
+    cut = block.rows(rows.start, rows.stop).columns(range(columns.start, columns.stop))
+    return replace(whole, block=cut, marks=None if whole.marks is None else whole.marks[rows, columns])

@@ -22,7 +22,7 @@ from sheetfuncs.workbook.read_digits import digits_before_quote, parse_decimals,
 from sheetfuncs.workbook.read_gather import Gathering
 from sheetfuncs.workbook.xml import MAIN
 
-SEGMENT = 2 << 20
+SEGMENT = 1 << 20
 _MOST_WITHOUT_ROW = 32 << 20
 _MOST_HEAD = 1 << 20
 _PAD = b" " * 64
@@ -155,6 +155,8 @@ class _Marks:
         cell_marks = is_cell[marks]
         if (following[~cell_marks] - marks[~cell_marks] != 1).any():
             return None  # something else stands between rows, or a cell in another form begins a row
+        if cell_marks[-1] or (cell_marks[:-1] & is_row[marks[1:]]).any():
+            return None  # a row is not closed
         rows, cells = tags[is_row], marks[cell_marks]
         if not len(rows) or not _starts_with(words[rows + 4], b' r="').all():
             return None
@@ -198,14 +200,15 @@ class _Cells:
         """Store the cells; returns the bytes of those that the scan cannot read."""
         filled = np.flatnonzero(self.valued)
         other = ~(self.valued | self.blank)
-        if len(filled):
-            gathering.touch(int(self.row[filled].max()), int(self.column[filled].max()))
+        used = np.flatnonzero(self.valued | self.unstored)
+        if len(used):
+            gathering.touch(int(self.row[used].max()), int(self.column[used].max()))
         row, column = self.row - gathering.first_row, self.column - gathering.first_column
         inside = (self.row >= gathering.first_row) & (self.row <= gathering.last_row)
         inside &= (self.column >= gathering.first_column) & (self.column <= gathering.last_column)
         chosen = filled[inside[filled]]
-        noted = np.flatnonzero(inside & (self.valued | self.unstored) & self.formula)
-        needed = chosen if not len(noted) else np.concatenate([chosen, noted])
+        noted = used[(inside & self.formula)[used]]
+        needed = used[inside[used]]
         if len(needed):
             gathering.reserve(int(row[needed].max()) + 1, int(column[needed].max()) + 1)
         for kind, put in ((_NUMBER, self._numbers), (_SHARED, self._strings), (_BOOLEAN, self._booleans)):
@@ -213,8 +216,8 @@ class _Cells:
             if len(picked):
                 good = put(gathering, picked, row[picked], column[picked])
                 other[picked[~good]] = True
-        noted = noted[~other[noted]]  # the parser counts the formulas that it reads
-        gathering.count_formulas(column[noted], ~self.unstored[noted])
+        noted = noted[~other[noted]]  # the parser marks the formulas that it reads
+        gathering.mark_formulas(row[noted], column[noted], ~self.unstored[noted])
         tags, cells, following = self.marks.tags, self.marks.cells, np.append(self.marks.tags, len(self.marks.data))
         odd = np.flatnonzero(other)
         bounds = zip(tags[cells[odd]].tolist(), following[self.marks.next_marks[odd]].tolist(), strict=True)
