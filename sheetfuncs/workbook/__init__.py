@@ -16,7 +16,6 @@ _HOME = {
     "OurSheet": "settings",
     "find_our_sheets": "settings",
     "settings_from_names": "settings",
-    "settings_to_names": "settings",
     "sheet_title": "titles",
 }
 

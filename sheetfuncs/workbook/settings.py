@@ -8,15 +8,15 @@ from __future__ import annotations
 
 import json
 import re
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Any
 
+from sheetfuncs.report.names import SETTINGS
 from sheetfuncs.workbook.book import WorkbookXml
 from sheetfuncs.workbook.formats import Book, open_package
 
-SETTINGS_NAME = "_sheetfuncs_settings"
-MAX_CONSTANT = 255
+SETTINGS_NAME = SETTINGS.rstrip("_")
 _NUMBERED = re.compile(re.escape(SETTINGS_NAME) + r"(?:_(\d{1,6}))?", re.IGNORECASE)
 
 
@@ -31,15 +31,6 @@ class OurSheet:
     def settings(self) -> dict[str, Any] | None:
         """The settings; None where the text was damaged."""
         return _parsed(self.settings_json)
-
-
-def settings_to_names(settings: Mapping[str, Any]) -> list[tuple[str, str]]:
-    """Names and formulas (with "=") that hold the settings, ready to be defined for the sheet."""
-    text = json.dumps(settings, ensure_ascii=True, allow_nan=False, separators=(",", ":"))
-    constants = [f'="{piece}"' for piece in _pieces(text)]
-    if len(constants) == 1:
-        return [(SETTINGS_NAME, constants[0])]
-    return [(f"{SETTINGS_NAME}_{number}", constant) for number, constant in enumerate(constants, start=1)]
 
 
 def settings_from_names(names: Iterable[tuple[str, str]]) -> dict[str, Any] | None:
@@ -59,17 +50,6 @@ def find_our_sheets(book: Book) -> list[OurSheet]:
             if text is not None:
                 found.append(OurSheet(title, text))
         return found
-
-
-def _pieces(text: str) -> list[str]:
-    """The text, its quotes doubled, in pieces that fit into a constant even when the doubled quotes are counted."""
-    pieces = [""]
-    for character in text:
-        escaped = '""' if character == '"' else character
-        if len(pieces[-1]) + len(escaped) > MAX_CONSTANT:
-            pieces.append("")
-        pieces[-1] += escaped
-    return pieces
 
 
 def _settings_text(names: Iterable[tuple[str, str]]) -> str | None:

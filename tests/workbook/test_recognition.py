@@ -12,13 +12,8 @@ from workbook_build import opened, sheet_to_insert
 from workbook_hosts import HOSTS
 
 from sheetfuncs.errors import SheetNameError
-from sheetfuncs.workbook import (
-    find_our_sheets,
-    insert_sheet,
-    settings_from_names,
-    settings_to_names,
-    sheet_title,
-)
+from sheetfuncs.report.names import settings_to_names
+from sheetfuncs.workbook import find_our_sheets, insert_sheet, settings_from_names, sheet_title
 from sheetfuncs.workbook.references import rename_sheet
 from sheetfuncs.workbook.titles import check_title
 
@@ -65,7 +60,7 @@ json_values = st.recursive(
 
 @given(st.dictionaries(st.text(), json_values, max_size=8))
 def test_settings_come_back_from_their_names(settings):
-    names = settings_to_names(settings)
+    names = list(settings_to_names(settings).items())
     assert settings_from_names(names) == settings
     for _, formula in names:
         assert formula.startswith('="')
@@ -79,7 +74,7 @@ def test_long_settings_survive_a_round_through_files():
     buffer = io.BytesIO()
     book = xlsxwriter.Workbook(buffer)
     book.add_worksheet("Check of Data").write(0, 0, 1)
-    names = settings_to_names(settings)
+    names = list(settings_to_names(settings).items())
     assert len(names) > 3
     for name, formula in names:
         book.define_name(f"'Check of Data'!{name}", formula)
