@@ -145,7 +145,7 @@ def _split_sheet(whole: str, text: str) -> tuple[str | None, str]:
         raise AddressError(f"{_shown(text)} points into another workbook; only the workbook that was given is read.")
     if ":" in name:
         raise AddressError(f"{_shown(text)} spans several sheets; give an area of one sheet, such as Jobs!B3:F64.")
-    return name, cells.strip()
+    return name if whole.startswith("'") else name.strip(), cells.strip()
 
 
 def _area(sheet: str | None, first: str, last: str, text: str) -> Area:

@@ -6,6 +6,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from enum import IntEnum
 from itertools import chain
+from typing import SupportsFloat, SupportsIndex
 
 import numpy as np
 
@@ -205,7 +206,9 @@ def _read_cell(value: object) -> tuple[Kind, float, str | None]:
     if isinstance(value, bool | np.bool_):
         return Kind.BOOLEAN, float(value), None
     try:
-        number = float(value)  # type: ignore[arg-type]
+        if not isinstance(value, SupportsFloat | SupportsIndex):  # float would read bytes as text
+            raise TypeError
+        number = float(value)
     except OverflowError:
         number = np.inf
     except (TypeError, ValueError):

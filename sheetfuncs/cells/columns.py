@@ -102,6 +102,7 @@ def check_dates(source: Source, start: int, end: int, counts: Sequence[int], rul
 
 
 def boolean_remark(source: Source, counts: Sequence[int]) -> str | None:
+    """A remark where TRUE and FALSE count as 1 and 0."""
     if not counts[Kind.BOOLEAN]:
         return None
     return f"{source.label} holds TRUE and FALSE; they count as 1 and 0."

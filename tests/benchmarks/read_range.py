@@ -2,7 +2,8 @@
 
     python tests/benchmarks/read_range.py [rows] [book.xlsx]
 
-Prints one line a way: seconds of processor time, cells a second, and the most memory it took. Each way runs in a process of its own.
+Prints one line a way: seconds of processor time, cells a second, and the most memory it took. Each way runs in a
+process of its own.
 """
 
 from __future__ import annotations
