@@ -1,0 +1,73 @@
+"""A fit on some of the rows only, from the whole fit's basis and residuals."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.linalg import lapack
+
+from sheetfuncs.core.auxiliary import DETERMINED
+from sheetfuncs.core.basis import EPS, ROUNDINGS
+from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.threads import few_threads
+
+# Cross products of columns of which at least this share is left after the others lose no digit that matters.
+WELL_APART = 1e-3
+
+
+@dataclass(frozen=True)
+class PartialFit:
+    """rows: how many; rank: of the predictors there, the constant counted; rss: what they leave of the response."""
+
+    rows: int
+    rank: int
+    rss: float
+
+
+def fit_rows(fit: Fit, rows: slice | np.ndarray) -> PartialFit:
+    """Fit the same model on these rows alone.
+
+    The design's columns are combinations of the basis, and the response is fitted values plus residuals, so that what
+    the rows' own fit leaves of the residuals is what it leaves of the response. The rank may be lower than the whole
+    design's: a category that does not occur there, a predictor that does not vary.
+    """
+    basis = fit.basis
+    q, e = basis.q[rows], fit.residuals[rows]
+    with few_threads(q.size):
+        if basis.intercept:
+            q = q - q.mean(axis=0)
+            e = e - e.mean()
+        left, rank = _apart(q, e)
+        if left is None:
+            left, rank = _by_pivoting(q, e, max(DETERMINED, ROUNDINGS * EPS * basis.amplification))
+    return PartialFit(e.shape[0], rank + int(basis.intercept), float(left @ left))
+
+
+def _apart(q: np.ndarray, e: np.ndarray) -> tuple[np.ndarray | None, int]:
+    """What q (m, k) leaves of e, and k, by cross products; None where the columns are too close to each other."""
+    k = q.shape[1]
+    if k == 0:
+        return e, 0
+    gram = q.T @ q
+    length = np.sqrt(np.diag(gram))
+    if q.shape[0] < k or length.min() < WELL_APART:
+        return None, 0
+    root, info = lapack.dpotrf(gram / np.outer(length, length), lower=1)
+    if info != 0 or np.diag(root).min() < WELL_APART:
+        return None, 0
+    left = e
+    for _ in range(2):  # the second step takes back the roundings of the first
+        weights, _ = lapack.dpotrs(root, (q.T @ left) / length, lower=1)
+        left = left - q @ (weights / length)
+    return left, k
+
+
+def _by_pivoting(q: np.ndarray, e: np.ndarray, limit: float) -> tuple[np.ndarray, int]:
+    """The same by Householder QR with column pivoting; directions no longer than limit are roundings."""
+    factors, _, tau, _, _ = lapack.dgeqp3(np.array(q, order="F"), overwrite_a=1)
+    width = min(factors.shape)
+    rank = int(np.count_nonzero(np.abs(np.diag(factors)) > limit))
+    directions = lapack.dorgqr(factors[:, :width], tau[:width], overwrite_a=1)[0][:, :rank]
+    left = e - directions @ (directions.T @ e)
+    return left - directions @ (directions.T @ left), rank
