@@ -23,7 +23,7 @@ from sheetfuncs.core.mean import residual_mean
 from sheetfuncs.core.normality import jarque_bera, shapiro_wilk
 from sheetfuncs.core.results import Result
 from sheetfuncs.core.threads import few_threads
-from sheetfuncs.core.variance import breusch_pagan
+from sheetfuncs.core.variance import breusch_pagan, breusch_pagan_fitted
 from sheetfuncs.errors import ArgumentError
 from sheetfuncs.judgement.evidence import Evidence, all_evidence
 from sheetfuncs.judgement.rows import FlaggedRow, rows_to_look_at
@@ -215,6 +215,7 @@ def all_statistics(fit: Fit) -> list[Result]:
         ),
         breusch_pagan(fit, studentize=True),
         breusch_pagan(fit, studentize=False),
+        breusch_pagan_fitted(fit),
         shapiro_wilk(fit),
         jarque_bera(fit),
         *(reset(fit, powers, of=of) for of in ("fitted", "predictors") for powers in ((2, 3), (2,))),

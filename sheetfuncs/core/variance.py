@@ -5,7 +5,7 @@ from __future__ import annotations
 from scipy.special import chdtrc
 
 from sheetfuncs.core.auxiliary import refused
-from sheetfuncs.core.basis import ROUNDINGS
+from sheetfuncs.core.basis import EPS, ROUNDINGS
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 
@@ -46,4 +46,27 @@ def breusch_pagan(fit: Fit, *, studentize: bool = True) -> Result:
     return Statistic(
         method="breusch_pagan", args=args, variant=variant, statistic=statistic, df=df,
         p=float(chdtrc(df, statistic)), null=CONSTANT, note=note,
+    )
+
+
+def breusch_pagan_fitted(fit: Fit) -> Result:
+    """The original test with the fitted values as the one possible cause (Cook and Weisberg 1983, Biometrika 70:1-10).
+
+    Half the sum of squares that the fitted values explain of e^2/sigma^2; chi-square with 1 degree of freedom.
+    """
+    args, variant = {"z": "fitted values", "studentize": False}, "original, on the fitted values"
+    refusal = refused(fit, "ncv_test_fitted", args, variant, CONSTANT)
+    if refusal:
+        return refusal
+    direction = fit.fitted - fit.fitted.mean()
+    length = float(direction @ direction)
+    if length <= (64.0 * EPS * float(abs(fit.fitted).max())) ** 2 * fit.n:
+        return DoesNotApply(
+            method="ncv_test_fitted", args=args, variant=variant, null=CONSTANT,
+            reason="The fitted values do not vary, so they can explain no variance.",
+        )
+    part = float(direction @ (fit.residuals**2 / (fit.rss / fit.n))) ** 2 / length
+    return Statistic(
+        method="ncv_test_fitted", args=args, variant=variant, statistic=part / 2.0, df=1,
+        p=float(chdtrc(1, part / 2.0)), null="the errors have the same variance whatever the fitted value is",
     )

@@ -17,7 +17,7 @@ from sheetfuncs.core.influence import outlier_test
 from sheetfuncs.core.mean import residual_mean
 from sheetfuncs.core.normality import jarque_bera, shapiro_wilk
 from sheetfuncs.core.quadratic_forms import durbin_watson_bounds
-from sheetfuncs.core.variance import breusch_pagan
+from sheetfuncs.core.variance import breusch_pagan, breusch_pagan_fitted
 
 # "results" are R's on the original scale, where R drops a column or loses digits; these have exact results instead.
 HARD = ("syn_constcol_a", "syn_nearcol_a", "syn_offset_a", "syn_tiny_a")
@@ -34,7 +34,7 @@ def all_tests(fit):
             breusch_godfrey(fit, lags, distribution=distribution, before_first=before_first)
             for lags in (1, 2, 4) for distribution in ("chi-square", "F") for before_first in ("zeros", "omitted")
         ),
-        breusch_pagan(fit, studentize=True), breusch_pagan(fit, studentize=False),
+        breusch_pagan(fit, studentize=True), breusch_pagan(fit, studentize=False), breusch_pagan_fitted(fit),
         shapiro_wilk(fit), jarque_bera(fit),
         *(reset(fit, powers, of=of) for powers in ((2, 3), (2,)) for of in ("fitted", "predictors")),
         outlier_test(fit),
