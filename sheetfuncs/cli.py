@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import json
+import os
 import shlex
 import sys
 from collections.abc import Callable, Iterator
@@ -23,6 +24,8 @@ class OneSentence(click.Group):
     def invoke(self, context: click.Context) -> Any:
         try:
             return super().invoke(context)
+        except (click.ClickException, click.exceptions.Exit, click.Abort):
+            raise
         except SheetfuncsError as refused:
             _stop(str(refused))
         except MemoryError:
@@ -32,6 +35,13 @@ class OneSentence(click.Group):
         except OSError as trouble:
             name = f" ({trouble.filename})" if trouble.filename else ""
             _stop(f"The file could not be read or written{name}: {trouble.strerror or trouble}.")
+        except Exception as defect:
+            if os.environ.get("SHEETFUNCS_TRACEBACK"):
+                raise
+            _stop(
+                f"sheetfuncs made a mistake ({type(defect).__name__}: {str(defect)[:200]}) and wrote nothing. Please "
+                "report it; with SHEETFUNCS_TRACEBACK=1 set it says where."
+            )
 
 
 def _stop(sentence: str) -> None:

@@ -177,6 +177,21 @@ def test_files_that_are_no_workbooks_are_refused_in_a_sentence(tmp_path, content
     run("cell", "=FIT_VIF(A1:B9)", path, exit_code=1)
 
 
+def test_a_mistake_of_ours_is_a_sentence_too(orders, monkeypatch):
+    def broken(*_):
+        raise ZeroDivisionError("division by zero")
+
+    monkeypatch.setattr("sheetfuncs.hosts.files.check_book", broken)
+    assert "made a mistake (ZeroDivisionError" in run("check", orders, exit_code=1).stderr
+    monkeypatch.setenv("SHEETFUNCS_TRACEBACK", "1")
+    with pytest.raises(ZeroDivisionError):
+        run("check", orders)
+
+
+def test_a_folder_is_no_workbook(tmp_path):
+    assert "is a folder" in run("check", tmp_path, exit_code=1).stderr
+
+
 def test_a_missing_file(tmp_path):
     assert "none.xlsx" in run("check", tmp_path / "none.xlsx", exit_code=1).stderr
 

@@ -93,6 +93,8 @@ def undo_check(book: Path, *, force: bool = False) -> str:
 
 
 def _target(request: Request) -> Path | None:
+    if request.book.is_dir():
+        raise WorkbookError(f"{request.book} is a folder. Give the workbook in it.")
     if not request.write:
         return None
     if request.in_place:
