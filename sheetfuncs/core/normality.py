@@ -35,7 +35,7 @@ def shapiro_wilk(fit: Fit) -> Result:
             method="shapiro_wilk", args={}, variant="Royston 1995", null=NORMAL,
             reason=f"Its p-value is established for {SHAPIRO_FEWEST} to {SHAPIRO_MOST:,} rows; there are {fit.n:,}.",
         )
-    if _all_equal(fit):
+    if all_equal(fit):
         return DoesNotApply(
             method="shapiro_wilk", args={}, variant="Royston 1995", null=NORMAL, reason=EQUAL, cell_error="#NUM!"
         )
@@ -108,7 +108,7 @@ def jarque_bera(fit: Fit) -> Result:
     refusal = refused(fit, "jarque_bera", {}, variant, NORMAL)
     if refusal:
         return refusal
-    if _all_equal(fit):
+    if all_equal(fit):
         return DoesNotApply(
             method="jarque_bera", args={}, variant=variant, null=NORMAL, reason=EQUAL, cell_error="#NUM!"
         )
@@ -121,7 +121,7 @@ def jarque_bera(fit: Fit) -> Result:
     )
 
 
-def _all_equal(fit: Fit) -> bool:
+def all_equal(fit: Fit) -> bool:
     """Whether the residuals differ by rounding only: possible without an intercept."""
     return float(np.ptp(fit.residuals)) <= ROUNDINGS * fit.noise
 
