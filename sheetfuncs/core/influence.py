@@ -23,6 +23,8 @@ class RowMeasures:
 
     internally_studentized: e / (s sqrt(1 - h)); externally_studentized: the same with the s of the other rows;
     leave_one_out: e / (1 - h), the error when the row is predicted from the others; cooks_distance, dffits.
+    covratio: determinant of the coefficients' covariance without the row over that with it: above 1, the row makes the
+    coefficients more certain. sigma_without: residual standard deviation of the fit without the row.
     spoils_perfect_fit: bool, rows without which the others fit perfectly: externally studentized they are infinitely
     far off, and stand as NaN.
     """
@@ -33,6 +35,8 @@ class RowMeasures:
     leave_one_out: np.ndarray
     cooks_distance: np.ndarray
     dffits: np.ndarray
+    covratio: np.ndarray
+    sigma_without: np.ndarray
     spoils_perfect_fit: np.ndarray
 
     @property
@@ -46,7 +50,7 @@ def row_measures(fit: Fit) -> RowMeasures:
     h = fit.leverage
     if not fit.has_error_bars:
         nothing = np.full(fit.n, np.nan)
-        return RowMeasures(h, nothing, nothing, nothing, nothing, nothing, np.zeros(fit.n, bool))
+        return RowMeasures(h, nothing, nothing, nothing, nothing, nothing, nothing, nothing, np.zeros(fit.n, bool))
     gap = np.where(fit.fits_itself, np.nan, 1.0 - h)
     leave_one_out = fit.residuals / gap
     internal = fit.residuals / (fit.sigma * np.sqrt(gap))
@@ -54,8 +58,16 @@ def row_measures(fit: Fit) -> RowMeasures:
     external = fit.residuals / (np.where(without > 0.0, without, np.nan) * np.sqrt(gap))
     ratio = h / gap
     return RowMeasures(
-        h, internal, external, leave_one_out, internal**2 * ratio / fit.p, external * np.sqrt(ratio), without == 0.0
+        h, internal, external, leave_one_out, internal**2 * ratio / fit.p, external * np.sqrt(ratio),
+        _covratio(fit, without, gap), without, without == 0.0,
     )
+
+
+def _covratio(fit: Fit, without: np.ndarray, gap: np.ndarray) -> np.ndarray:
+    """(s(i)/s)^(2p) / (1 - h_i) (Belsley, Kuh and Welsch 1980, equation 2.36, number from memory); by its logarithm,
+    so that many coefficients do not overflow before the leverage makes up for it."""
+    with np.errstate(divide="ignore"):
+        return np.exp(2.0 * fit.p * np.log(without / fit.sigma) - np.log(gap))
 
 
 def _sigma_without(fit: Fit, internal: np.ndarray, leave_one_out: np.ndarray) -> np.ndarray:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.influence import RowMeasures
 
 
 def coefficient_shifts(fit: Fit) -> np.ndarray:
@@ -16,13 +17,31 @@ def coefficient_shifts(fit: Fit) -> np.ndarray:
     """
     if not fit.has_error_bars:
         return np.full((fit.n, fit.p), np.nan)
+    return -_standardized_changes(fit) / fit.sigma
+
+
+def dfbetas(fit: Fit, measures: RowMeasures) -> np.ndarray:
+    """DFBETAS (n, p): (b_j - b_j without row i) over s(i) sqrt((X'X)^-1_jj), s(i) from the fit without the row
+    (Belsley, Kuh and Welsch 1980, equation 2.7, number from memory).
+
+    NaN for rows of leverage 1, for rows without which the others fit perfectly, and where there are no error bars.
+    """
+    if not fit.has_error_bars:
+        return np.full((fit.n, fit.p), np.nan)
+    without = np.where(measures.sigma_without > 0.0, measures.sigma_without, np.nan)
+    return _standardized_changes(fit) / without[:, None]
+
+
+def _standardized_changes(fit: Fit) -> np.ndarray:
+    """(n, p): (b_j - b_j without row i) / sqrt((X'X)^-1_jj)."""
     basis = fit.basis
     with np.errstate(divide="ignore", invalid="ignore"):
         alone = np.where(fit.fits_itself, np.nan, fit.residuals / (1.0 - fit.leverage))
     root = basis.coefficient_root
-    directions = root / np.linalg.norm(root, axis=1)[:, None] / fit.sigma
+    directions = root / np.linalg.norm(root, axis=1)[:, None]
     if basis.intercept:
         along = basis.q @ directions[:, 1:].T + directions[:, 0] / np.sqrt(fit.n)
     else:
         along = basis.q @ directions.T
-    return -along * alone[:, None]
+    along *= alone[:, None]
+    return along

@@ -1,0 +1,295 @@
+"""Box-Cox: which power of the response, on these predictors, is the most likely one?"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from itertools import pairwise
+
+import numpy as np
+from scipy.special import chdtrc, chdtri
+
+from sheetfuncs.core.auxiliary import refused
+from sheetfuncs.core.basis import EPS, ROUNDINGS
+from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.threads import few_threads
+from sheetfuncs.errors import ArgumentError
+
+POWERS = np.linspace(-5.0, 5.0, 21)  # where the highest likelihood is looked for first
+ZERO_AND_ONE = [10, 12]
+THIN = 4000  # rows that are enough to find out where to start
+CHUNK = 16384  # rows at a time, which stay in the processor's cache
+SMALL = 0.005
+# (k + 1)/(k + 2)!: the series of (x e^x - e^x + 1)/x^2, as exact as doubles below SMALL; highest power first.
+_SERIES = (5 / 720, 4 / 120, 3 / 24, 2 / 6, 1 / 2)
+FEWEST_DF = 2
+
+
+def box_cox(fit: Fit, *, level: float = 0.95, without_intercept: bool = False) -> Result:
+    """The power lambda of the response with the highest likelihood, by exact maximum of the profile (Box and Cox 1964,
+    JRSS B 26:211-252), with the interval of all powers that a likelihood ratio test at 1 - level does not reject.
+
+    The profile is -n/2 log rss of ((y/g)^lambda - 1)/lambda on the predictors (log(y/g) for 0), g the geometric mean.
+    Refused without an intercept, where the likeliest power depends on what the response is divided by;
+    without_intercept=True computes it for the response divided by its geometric mean, and says so.
+
+    details: lambda; ci95 (or as level says), None for an end that is not there; loglik_max; LR_lambda_0 and
+    LR_lambda_1, the likelihood ratio tests of the logarithm and of no power: statistic, and p from chi-square with 1
+    degree of freedom.
+    """
+    if not 0.5 <= level <= 0.9999:
+        raise ArgumentError(f"The level {level:g} is not between 0.5 and 0.9999: 0.95 gives a 95 % interval.")
+    variant = "maximum likelihood, interval from the likelihood ratio"
+
+    def cannot(reason: str, cell_error: str = "#N/A") -> DoesNotApply:
+        return DoesNotApply(method="box_cox", args={}, variant=variant, reason=reason, cell_error=cell_error)
+
+    refusal = refused(fit, "box_cox", {}, variant, "")
+    if refusal:
+        return refusal
+    y = fit.design.response
+    lowest = int(np.argmin(y))
+    if y[lowest] <= 0.0:
+        return cannot(f"Powers need a positive response: row {int(fit.design.rows[lowest])} has {y[lowest]:g}.")
+    if not fit.design.intercept and not without_intercept:
+        return cannot(
+            "Without an intercept the likeliest power changes with what the response is divided by, so that it says "
+            "nothing about the data alone."
+        )
+    if fit.df < FEWEST_DF:
+        return cannot(f"{fit.n} rows are too few to find a power beside {fit.p} coefficients.", "#NUM!")
+    with few_threads(fit.basis.q.size):
+        profile = _Profile(_log_ratio(y), fit.basis.q, fit.design.intercept)
+        best = _likeliest(profile)
+        if best.rss <= (ROUNDINGS * EPS) ** 2 * profile.squares(best.power):
+            return cannot(
+                f"With the power {best.power:.6g} the fit is perfect, so that nothing can be tested on it.", "#NUM!"
+            )
+        ends = _interval(profile, best, float(chdtri(1, 1.0 - level)))
+        tests = _ratio_tests(profile, best)
+    note = "1 leaves the response as it is, 0 is its logarithm."
+    if not fit.design.intercept:
+        note += " Fitted without an intercept: for the response divided by its geometric mean, and only for that."
+    return Statistic(
+        method="box_cox", args={}, variant=variant, statistic=best.power, note=note,
+        details={
+            "lambda": best.power, f"ci{100 * level:g}": [end if np.isfinite(end) else None for end in ends],
+            "loglik_max": -0.5 * fit.n * float(np.log(best.rss)), **tests,
+        },
+    )
+
+
+def _log_ratio(y: np.ndarray) -> np.ndarray:
+    """log(y / geometric mean), every digit kept where the values lie close together."""
+    centre = float(np.exp(np.log(y).mean()))
+    off = (y - centre) / centre
+    u = np.where(np.abs(off) < 0.5, np.log1p(np.maximum(off, -0.5)), np.log(y / centre))
+    return u - u.mean()
+
+
+@dataclass(frozen=True, eq=False)
+class _Profile:
+    """Residual sum of squares of z = (e^(power u) - 1)/power on the predictors, for several powers at once.
+
+    u: (n,) log of the response over its geometric mean. q: (n, k) orthonormal basis of the predictors.
+    """
+
+    u: np.ndarray
+    q: np.ndarray
+    intercept: bool
+
+    def at(self, powers: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """rss (m,) and half its derivative (m,) at powers (m,); infinite where the powers of the response overflow."""
+        n = self.u.shape[0]
+        with np.errstate(over="ignore", invalid="ignore"):
+            if n <= CHUNK:
+                z, slope = _power(self.u, powers)
+                left = z - self.q @ (self.q.T @ z)
+                if self.intercept:
+                    left -= z.sum(axis=0) / n
+                rss, half = np.einsum("ij,ij->j", left, left), np.einsum("ij,ij->j", left, slope)
+            else:
+                rss, half = self._in_chunks(powers)
+        if not (np.isfinite(rss).all() and np.isfinite(half).all()):
+            bad = ~(np.isfinite(rss) & np.isfinite(half))
+            rss[bad], half[bad] = np.inf, np.copysign(np.inf, powers[bad])
+        return rss, half
+
+    def _in_chunks(self, powers: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        n, m = self.u.shape[0], powers.shape[0]
+        z, slope = np.empty((n, m)), np.empty((n, m))
+        along, mean, rss, half = np.zeros((self.q.shape[1], m)), np.zeros(m), np.zeros(m), np.zeros(m)
+        chunks = [slice(start, start + CHUNK) for start in range(0, n, CHUNK)]
+        for rows in chunks:
+            z[rows], slope[rows] = _power(self.u[rows], powers)
+            along += self.q[rows].T @ z[rows]
+            if self.intercept:
+                mean += z[rows].sum(axis=0) / n
+        for rows in chunks:
+            left = z[rows] - self.q[rows] @ along - mean
+            rss += np.einsum("ij,ij->j", left, left)
+            half += np.einsum("ij,ij->j", left, slope[rows])
+        return rss, half
+
+    def one(self, power: float) -> tuple[float, float]:
+        """rss, and half the derivative of log rss (only its sign where powers overflow, or nothing is left)."""
+        rss, half = self.at(np.array([power]))
+        return float(rss[0]), _ratio(float(rss[0]), float(half[0]))
+
+    def squares(self, power: float) -> float:
+        """Sum of squares of z itself."""
+        z, _ = _power(self.u, np.array([power]))
+        return float(np.sum(z * z))
+
+
+@dataclass(frozen=True)
+class _Least:
+    """The power with the least rss; slope: the second derivative of half the logarithm of rss there.
+
+    grid: rss at whole and half powers, where these were looked at on all rows.
+    """
+
+    power: float
+    rss: float
+    slope: float
+    grid: np.ndarray | None = None
+
+
+def _ratio(rss: float, half: float) -> float:
+    return half / rss if 0.0 < rss < np.inf else float(np.sign(half))
+
+
+def _power(u: np.ndarray, powers: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """z = (e^(power u) - 1)/power, u for power 0, and its derivative in the power, (n, m) both."""
+    x = u[:, None] * powers
+    grown = np.expm1(x)
+    zero = powers == 0.0
+    divisor = powers
+    if zero.any():
+        divisor = np.where(zero, 1.0, powers)
+    z = grown / divisor
+    if divisor is not powers:
+        z[:, zero] = u[:, None]
+    grown += 1.0
+    grown *= u[:, None]
+    grown -= z
+    grown /= divisor
+    small = np.abs(x) < SMALL
+    if small.any():
+        near, value = x[small], np.zeros(())
+        for coefficient in _SERIES:
+            value = value * near + coefficient
+        grown[small] = value * np.broadcast_to((u * u)[:, None], x.shape)[small]
+    return z, grown
+
+
+def _likeliest(profile: _Profile) -> _Least:
+    n = profile.u.shape[0]
+    if n <= 2 * THIN:
+        return _least(profile)
+    some = slice(None, None, n // THIN)
+    q = profile.q[some] - (profile.q[some].mean(axis=0) if profile.intercept else 0.0)
+    thin = _least(_Profile(profile.u[some], np.linalg.qr(q)[0], profile.intercept))
+    if thin.slope > 0.0:
+        # Five standard errors of the thinned rows to either side hold the root of all rows, or the search starts anew.
+        reach = 5.0 / np.sqrt(thin.slope * THIN)
+        found = _root(profile, thin.power, thin.slope, thin.power - reach, thin.power + reach)
+        if abs(found.power - thin.power) < 0.99 * reach:
+            return found
+    return _least(profile)
+
+
+def _least(profile: _Profile) -> _Least:
+    powers = POWERS
+    grid = None
+    for _ in range(60):
+        rss, half = profile.at(powers)
+        grid = rss if grid is None else grid
+        place = int(np.argmin(rss))
+        left = place - 1 if half[place] >= 0.0 else place
+        if left < 0 or left + 1 == powers.shape[0]:  # it lies further out
+            edge = float(powers[0 if left < 0 else -1])
+            powers = np.array([2.0 * edge, edge] if left < 0 else [edge, 2.0 * edge])
+        elif half[left] < 0.0 <= half[left + 1]:
+            break
+        else:  # several bends in one step: look closer
+            powers = np.linspace(powers[left], powers[left + 1], 9)
+    around = slice(max(left - 1, 0), left + 3)
+    slopes = [_ratio(*pair) for pair in zip(rss[around].tolist(), half[around].tolist(), strict=True)]
+    low, high = float(powers[left]), float(powers[left + 1])
+    at_low, at_high = (_ratio(float(rss[i]), float(half[i])) for i in (left, left + 1))
+    start = _inverse(powers[around].tolist(), slopes)
+    if not low < start < high:
+        start = (low * at_high - high * at_low) / (at_high - at_low)
+    found = _root(profile, start, (at_high - at_low) / (high - low), low, high)
+    return _Least(found.power, found.rss, found.slope, grid)
+
+
+def _inverse(x: list[float], y: list[float]) -> float:
+    """Where y, at most four values, is zero: Neville's polynomial of x in y; NaN where y does not rise."""
+    if any(b <= a for a, b in pairwise(y)):
+        return float("nan")
+    x = list(x)
+    for width in range(1, len(x)):
+        for i in range(len(x) - width):
+            x[i] = (y[i + width] * x[i] - y[i] * x[i + 1]) / (y[i + width] - y[i])
+    return x[0]
+
+
+def _root(profile: _Profile, start: float, slope: float, low: float, high: float) -> _Least:
+    """The power between low and high where the derivative of log rss turns positive: secant steps from a known slope,
+    kept in the bracket, which halves where they are of no use."""
+    now, (rss, at_now) = start, profile.one(start)
+    size = max(abs(low), abs(high))
+    for turn in range(200):
+        low, high = (now, high) if at_now < 0.0 else (low, now)
+        following = now - at_now / slope if slope > 0.0 else np.nan
+        if not low < following < high or turn % 8 == 7:
+            following = 0.5 * (low + high)
+        before, at_before = now, at_now
+        now = float(following)
+        if at_before == 0.0 or high - low <= 1e-14 * size:
+            return _Least(before, rss, slope)
+        rss, at_now = profile.one(now)
+        if abs(now - before) <= 1e-9 * size:  # nearer, differences are rounding
+            return _Least(now - at_now / slope if slope > 0.0 else now, rss, slope)
+        slope = (at_now - at_before) / (now - before)
+    return _Least(now, rss, slope)
+
+
+def _interval(profile: _Profile, best: _Least, cut: float) -> tuple[float, float]:
+    """Both powers at which n log(rss / best) is cut; infinite where there is none.
+
+    Newton steps on the root of that figure, which is nearly straight, kept between a power inside and one outside.
+    """
+    n = profile.u.shape[0]
+    side = np.array([-1.0, 1.0])
+    goal = np.sqrt(cut / n)
+    inside, outside = np.zeros(2), np.full(2, np.inf)  # distances from the best power
+    distance = np.full(2, goal / np.sqrt(best.slope) if best.slope > 0.0 else 1.0)
+    for _ in range(100):
+        rss, half = profile.at(best.power + side * distance)
+        with np.errstate(invalid="ignore", divide="ignore"):
+            height = np.sqrt(np.log1p(np.maximum(rss - best.rss, 0.0) / best.rss))
+            following = distance + (goal - height) * height * rss / (side * half)
+        below = height <= goal
+        inside, outside = np.where(below, distance, inside), np.where(below, outside, distance)
+        known = np.isfinite(outside)
+        middle = np.where(known, 0.5 * (inside + np.where(known, outside, 0.0)), 2.0 * distance)
+        stays = (following > inside) & (following < np.minimum(outside, 4.0 * distance))
+        following = np.where(stays, following, middle)
+        near = (np.abs(following - distance) <= 1e-7 * distance) | (height == goal)
+        distance = np.where(height == goal, distance, following)
+        if near.all():
+            break
+    low, high = np.where(near, best.power + side * distance, side * np.inf)
+    return float(low), float(high)
+
+
+def _ratio_tests(profile: _Profile, best: _Least) -> dict[str, dict[str, float]]:
+    rss = best.grid[ZERO_AND_ONE] if best.grid is not None else profile.at(np.array([0.0, 1.0]))[0]
+    tests = {}
+    for name, value in zip(("LR_lambda_0", "LR_lambda_1"), rss.tolist(), strict=True):
+        statistic = profile.u.shape[0] * float(np.log1p(max(0.0, value - best.rss) / best.rss))
+        tests[name] = {"statistic": statistic, "p": float(chdtrc(1, statistic))}
+    return tests
