@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from math import isfinite, sqrt
 
 import numpy as np
 from scipy.special import fdtrc, stdtr, stdtrit
 
 from sheetfuncs.core.basis import EPS, ROUNDINGS, SMALLEST, Basis, back_substituted, centred, factorize
 from sheetfuncs.core.design import Design
+from sheetfuncs.core.refinement import ill_conditioned, loses_digits, refined_basis, refined_solution
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import NoVariationError
 
@@ -192,14 +194,17 @@ def fit_design(design: Design) -> Fit:
     """
     basis = factorize(design.columns, design.column_names, intercept=design.intercept)
     with few_threads(design.columns.size):
+        if ill_conditioned(basis):
+            basis = refined_basis(basis, design.columns)
         return _solve(design, basis)
 
 
 def _solve(design: Design, basis: Basis) -> Fit:
     y = design.response
-    left, mean = centred(y) if design.intercept else (y.copy(), 0.0)
     with np.errstate(over="ignore", invalid="ignore"):
-        if not np.isfinite(left @ left):
+        left, mean = centred(y) if design.intercept else (y.copy(), 0.0)
+        total = float(left @ left)
+        if not isfinite(total):
             raise NoVariationError(
                 "The response is too large for its squares to be computed: express it in a larger unit."
             )
@@ -216,11 +221,15 @@ def _solve(design: Design, basis: Basis) -> Fit:
     slopes = _slopes(basis, projected + correction)
     coefficients = np.concatenate([[mean - basis.centre @ slopes], slopes]) if design.intercept else slopes
 
-    noise = EPS * (float(np.linalg.norm(y)) + float(np.abs(slopes) @ basis.raw_norm))
-    perfect = bool(np.linalg.norm(left) <= ROUNDINGS * noise)
+    noise = EPS * (sqrt(y @ y) + float(np.abs(slopes) @ basis.raw_norm))
+    rss = float(left @ left)
+    if design.n > design.p and loses_digits(basis, total, rss, noise, coefficients, float(mean)):
+        coefficients, left = refined_solution(design, basis, coefficients, left)
+        rss = float(left @ left)
+    perfect = sqrt(rss) <= ROUNDINGS * noise
     if design.n == design.p or perfect:
-        left[:] = 0.0
-    fit = Fit(design, basis, coefficients, left, float(left @ left), perfect and design.n > design.p, noise)
+        left[:] = rss = 0.0
+    fit = Fit(design, basis, coefficients, left, rss, perfect and design.n > design.p, noise)
     left[fit.fits_itself] = 0.0
     return fit
 
