@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 
 import numpy as np
 
@@ -49,6 +50,17 @@ def by_row(observations: Observations, values: np.ndarray, heading: str) -> list
     if observations.header_position is not None:
         cells[observations.header_position] = heading
     return [[cell] for cell in cells]
+
+
+def side_by_side(observations: Observations, values: np.ndarray, headings: Sequence[str]) -> list[list[Cell]]:
+    """`by_row` for several columns (n, m): a row of cells for each row of the response block."""
+    cells: list[list[Cell]] = [[LEFT_OUT] * len(headings) for _ in range(observations.block_rows)]
+    finite = np.isfinite(values).all(axis=1).tolist()
+    for position, row, whole in zip(observations.positions.tolist(), values.tolist(), finite, strict=True):
+        cells[position] = row if whole else [value if math.isfinite(value) else UNDEFINED for value in row]
+    if observations.header_position is not None:
+        cells[observations.header_position] = list(headings)
+    return cells
 
 
 def table(*columns: object) -> list[list[Cell]]:

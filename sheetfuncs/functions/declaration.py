@@ -47,7 +47,8 @@ class WorksheetFunction:
     """A worksheet function, declared once; hosts and lists are made from it.
 
     summary: help of at most 255 characters, which names the variant. returns: what comes back; shape: its size in
-    words; columns: names of a table's columns. compute raises a SheetfuncsError where a value cannot be given.
+    words; columns: names of a table's columns. term_columns: what further columns hold, one a coefficient. compute
+    raises a SheetfuncsError where a value cannot be given.
     """
 
     name: str
@@ -58,6 +59,7 @@ class WorksheetFunction:
     shape: str
     compute: Callable[[Call], CellResult]
     columns: tuple[str, ...] = ()
+    term_columns: str = ""
 
     @property
     def signature(self) -> str:

@@ -51,7 +51,8 @@ def _one(function: WorksheetFunction) -> str:
 
 
 def _columns(function: WorksheetFunction) -> str:
-    return f": {', '.join(function.columns)}" if function.columns else ""
+    names = [*function.columns, *([f"{function.term_columns} of each term"] if function.term_columns else [])]
+    return f": {', '.join(names)}" if names else ""
 
 
 def _brackets(argument: Argument) -> str:

@@ -5,12 +5,17 @@ from __future__ import annotations
 import numpy as np
 
 from sheetfuncs.core.influence import outlier_test
+from sheetfuncs.core.shifts import dfbetas
 from sheetfuncs.errors import NoVariationError
-from sheetfuncs.functions.answers import by_row, p_value
+from sheetfuncs.functions.answers import by_row, p_value, side_by_side
 from sheetfuncs.functions.arguments import on_rows
 from sheetfuncs.functions.declaration import AS_HIGH_AS_RESPONSE, ONE_NUMBER, Call, CellResult, WorksheetFunction
 
 GROUP = "rows"
+ROWS = (
+    "fitted", "residual", "internally studentized residual", "externally studentized residual",
+    "leave-one-out residual", "leverage", "Cook's distance", "DFFITS", "COVRATIO",
+)
 
 
 def _leverage(call: Call) -> CellResult:
@@ -23,6 +28,16 @@ def _cooks_distance(call: Call) -> CellResult:
 
 def _dffits(call: Call) -> CellResult:
     return by_row(call.regression.observations, call.regression.measures.dffits, "DFFITS")
+
+
+def _rows(call: Call) -> CellResult:
+    fit, measures = call.fit, call.regression.measures
+    fixed = (
+        fit.fitted, fit.residuals, measures.internally_studentized, measures.externally_studentized,
+        measures.leave_one_out, measures.leverage, measures.cooks_distance, measures.dffits, measures.covratio,
+    )
+    headings = [*ROWS, *(f"DFBETAS {term}" for term in fit.design.terms)]
+    return side_by_side(call.regression.observations, np.column_stack([*fixed, dfbetas(fit, measures)]), headings)
 
 
 def _press(call: Call) -> CellResult:
@@ -65,5 +80,11 @@ FUNCTIONS = (
         "Sum of squared leave-one-out residuals (PRESS, Allen 1974): how well the fit predicts rows that it has not "
         "seen. Less is better; in squared units of the response.",
         on_rows(), "number", ONE_NUMBER, _press,
+    ),
+    WorksheetFunction(
+        "FIT_ROWS", GROUP,
+        "All measures of each row side by side: fitted value, four residuals, leverage, Cook's distance, DFFITS, "
+        "COVRATIO, and the DFBETAS of every coefficient, the intercept first (Belsley, Kuh and Welsch 1980).",
+        on_rows(), "table", "a table, as high as the response", _rows, ROWS, "DFBETAS",
     ),
 )

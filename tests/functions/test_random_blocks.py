@@ -83,7 +83,10 @@ def test_a_number_or_rows_or_an_error_value(blocks, chosen):
             assert function.returns in ("column", "table")
             assert value
             assert all(is_cell(cell) for row in value for cell in row)
-            assert {len(row) for row in value} == {len(function.columns) or 1}
+            terms = 0
+            if function.term_columns:
+                terms = len(evaluate("FIT_COEFFICIENTS", **given_ranges, **options))
+            assert {len(row) for row in value} == {(len(function.columns) or 1) + terms}
             if function.returns == "column" and function.name != "FIT_VIF":
                 assert len(value) == len(blocks["response"])
         elif function.returns == "text" and value not in ERROR_TEXTS:
