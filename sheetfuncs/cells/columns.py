@@ -181,5 +181,5 @@ def _alike_remarks(source: Source, levels: Iterable[str]) -> list[str]:
 def suggestion(wanted: str, there: Iterable[str]) -> str:
     """ " (did you mean ...?)" where something close is there, else nothing."""
     names: Mapping[str, str] = {name.casefold(): name for name in there}
-    close = difflib.get_close_matches(wanted.casefold(), list(names), 1, 0.6)
+    close = difflib.get_close_matches(wanted.casefold(), list(names), 1, 0.65)
     return f" (did you mean {shown(names[close[0]])}?)" if close else ""

@@ -22,6 +22,7 @@ from sheetfuncs.cells.columns import (
 )
 from sheetfuncs.cells.ledger import ExcludedRow, Ledger, excluded_rows
 from sheetfuncs.cells.source import Source, make_sources, predictors_say_header, response_says_header
+from sheetfuncs.cells.stored_text import shown
 from sheetfuncs.errors import ArgumentError, BlockShapeError, TooFewRowsError
 
 __all__ = [
@@ -216,7 +217,7 @@ class _Reading:
             if not any(_is_called(source, name) for source in categories):
                 there = [source.name for source in categories]
                 raise ArgumentError(
-                    f"A base level is given for “{name}”, which is no text column among the predictors"
+                    f"A base level is given for {shown(name)}, which is no text column among the predictors"
                     f"{suggestion(name, there)}; "
                     + (f"text columns are {', '.join(there)}." if there else "none of the predictors is text.")
                 )
@@ -266,7 +267,7 @@ def _date_rules(sources: list[Source], dates: str, date_predictors: Collection[s
         if not found:
             there = [source.name for source in predictors]
             raise ArgumentError(
-                f"No predictor is called “{name}”{suggestion(name, there)}; the predictors are {', '.join(there)}."
+                f"No predictor is called {shown(name)}{suggestion(name, there)}; the predictors are {', '.join(there)}."
             )
         allowed.update(found)
     return DateRules(dates == "check", frozenset(allowed))

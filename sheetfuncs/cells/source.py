@@ -10,7 +10,7 @@ import numpy as np
 from sheetfuncs.cells.address import cell_name, column_letters
 from sheetfuncs.cells.block import Block, Kind
 from sheetfuncs.cells.serial_dates import text_of_serial
-from sheetfuncs.cells.stored_text import reads_as_number
+from sheetfuncs.cells.stored_text import on_one_line, reads_as_number
 
 
 @dataclass(frozen=True, eq=False)
@@ -85,7 +85,7 @@ def header_text(block: Block, position: int, index: int) -> str | None:
     """A header cell's text on one line; numbers and dates as text; None for a blank or an error."""
     kind = block.kinds[position, index]
     if kind == Kind.TEXT:
-        return " ".join((block.text(position, index) or "").split()) or None
+        return on_one_line(block.text(position, index) or "") or None
     number = float(block.numbers[position, index])
     if kind == Kind.BOOLEAN:
         return "TRUE" if number else "FALSE"
@@ -95,7 +95,10 @@ def header_text(block: Block, position: int, index: int) -> str | None:
 
 
 def is_text_above_numbers(block: Block, start: int, index: int) -> bool:
-    """Whether the cell at `start` is text and the next one below that is neither blank nor an error is a number."""
+    """Whether the cell at `start` is text and the next one below that is neither blank nor an error is no text.
+
+    Text above nothing at all counts too: a header without data.
+    """
     if block.kinds[start, index] != Kind.TEXT:
         return False
     below = block.kinds[start + 1 :, index]
@@ -103,7 +106,7 @@ def is_text_above_numbers(block: Block, start: int, index: int) -> bool:
         filled = below[:length][(below[:length] != Kind.BLANK) & (below[:length] != Kind.ERROR)]
         if len(filled):
             return bool(filled[0] != Kind.TEXT)
-    return False
+    return True
 
 
 def response_says_header(response: Block, others: Sequence[Block], start: int) -> bool:

@@ -20,6 +20,11 @@ def reads_as_number(text: str) -> bool:
     return len(text) <= 60 and _NUMBER.fullmatch(text) is not None
 
 
+def on_one_line(text: str) -> str:
+    """The text with single spaces in place of line breaks and of anything that cannot be printed."""
+    return " ".join("".join(character if character.isprintable() else " " for character in text).split())
+
+
 def shown(text: str, longest: int = 40) -> str:
     """A cell's text in quotes for a sentence, on one line and not too long."""
     text = "".join(character if character.isprintable() else " " for character in text)

@@ -12,6 +12,7 @@ import numpy as np
 from sheetfuncs.cells.address import Area, parse_area
 from sheetfuncs.cells.block import Block
 from sheetfuncs.cells.columns import suggestion
+from sheetfuncs.cells.stored_text import shown
 from sheetfuncs.errors import AddressError, SheetNameError, WorkbookFormatError
 from sheetfuncs.workbook.book import WorkbookXml
 from sheetfuncs.workbook.formats import Book as BookFile
@@ -173,8 +174,8 @@ class Book:
             if sheet.name.casefold() == name.casefold():
                 return sheet
         there = [sheet.name for sheet in self.sheets]
-        listed = ", ".join(f"“{other}”" for other in there[:8]) + (", ..." if len(there) > 8 else "")
-        raise SheetNameError(f"{self.label} has no worksheet “{name}”{suggestion(name, there)}; it has {listed}.")
+        listed = ", ".join(shown(other) for other in there[:8]) + (", ..." if len(there) > 8 else "")
+        raise SheetNameError(f"{self.label} has no worksheet {shown(name)}{suggestion(name, there)}; it has {listed}.")
 
     def read(self, area: Area) -> Block:
         """The cells of an area (its sheet: the active one where it names none), with formulas as stored values.

@@ -136,8 +136,8 @@ def _table_part(book: Book, name: str, inside: str, headers: bool) -> Area:
         word, columns = special["word"].strip().casefold(), special["columns"]
         if word not in ("all", "data"):
             raise AddressError(
-                f"“{name}[{inside}]” asks for a part of the table that holds no rows of data; give {name}, or "
-                f"{name}[{table.columns[0] if table.columns else 'column'}]."
+                f"{shown(f'{name}[{inside}]')} asks for a part of the table that holds no rows of data; give {name}, "
+                f"or {name}[{table.columns[0] if table.columns else 'column'}]."
             )
         headers = headers if word == "all" else False
     area = _table_area(table, headers)
@@ -145,7 +145,9 @@ def _table_part(book: Book, name: str, inside: str, headers: bool) -> Area:
         return area
     match = _COLUMN_RANGE.fullmatch(columns.strip())
     if match is None:
-        raise AddressError(f"“{name}[{inside}]” is not understood; give {name}[[first column]:[last column]].")
+        raise AddressError(
+            f"{shown(f'{name}[{inside}]')} is not understood; give {name}[[first column]:[last column]]."
+        )
     first, last = (match[1], match[2]) if match[3] is None else (match[3], match[3])
     places = sorted(_column_place(table, re.sub("'(.)", r"\1", column).strip()) for column in (first, last))
     return replace(area, first_column=area.first_column + places[0], last_column=area.first_column + places[1])
@@ -166,8 +168,9 @@ def _from_name(book: Book, text: str) -> Selection:
     if name is None:
         raise _no_such_name(book, text)
     formula = name.formula.strip()
-    if not is_address(formula) or "(" in _QUOTED.sub("", formula):
-        what = "is an error" if "#REF!" in formula else f"is the formula {shown(formula)}"
+    bare = _QUOTED.sub("", formula)
+    if not is_address(formula) or "(" in bare or "#REF!" in bare:
+        what = "is an error" if "#REF!" in bare else f"is the formula {shown(formula)}"
         raise AddressError(
             f"The name {name.name} {what}, not a plain range; give the range that it stands for, such as Jobs!B3:F64."
         )

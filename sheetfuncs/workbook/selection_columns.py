@@ -11,6 +11,7 @@ from sheetfuncs.cells.address import Area, column_letters, format_area
 from sheetfuncs.cells.block import Block, Kind
 from sheetfuncs.cells.columns import suggestion
 from sheetfuncs.cells.source import header_text, predictors_say_header
+from sheetfuncs.cells.stored_text import shown
 from sheetfuncs.errors import ArgumentError, BlockShapeError
 from sheetfuncs.workbook.read import Book
 from sheetfuncs.workbook.read_gather import SheetCells
@@ -144,7 +145,7 @@ class _Columns:
             places = [i for i, header in enumerate(self.headers) if header is not None and fold(header) == fold(wanted)]
             if len(places) > 1:
                 letters = " and ".join(self.letters(place) for place in places)
-                raise ArgumentError(f"“{name}” heads the columns {letters}; name the {what} by its letter.")
+                raise ArgumentError(f"{shown(name)} heads the columns {letters}; name the {what} by its letter.")
             if places:
                 return places[0]
         for place in range(self.block.column_count):
@@ -152,7 +153,7 @@ class _Columns:
                 return place
         there = [header or self.letters(place) for place, header in enumerate(self.headers)]
         raise ArgumentError(
-            f"The {what} “{name}” is no column of {self._where()}{suggestion(wanted, there)}; its columns are "
+            f"The {what} {shown(name)} is no column of {self._where()}{suggestion(wanted, there)}; its columns are "
             f"{', '.join(there[:20])}{', ...' if len(there) > 20 else ''} (headers, or their letters)."
         )
 
