@@ -13,6 +13,7 @@ from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.threads import few_threads
 
 BLOCK = 64
+FEW_BLOCKS = 4  # up to which taking many at a time does not pay
 # Rows in a block once many are taken at a time: the work of a row grows with the square of this.
 SMALL_BLOCK = 16
 # Blocks that are taken at a time, so that memory stays small.
@@ -113,20 +114,27 @@ def _values(rows: _Rows, start: int) -> np.ndarray:
     n = rows.fit.n
     found: list[np.ndarray] = []
     root = _triangle(rows.near_first(0, start))
-    first = rows.in_basis(0, start)
-    gram = first.T @ first
     done = start
-    while done < n and not (n - done > BLOCK and _well_apart(gram)):
-        block, known = rows.near_first(done, done + BLOCK), rows.in_basis(done, done + BLOCK)
+    many = n - start > FEW_BLOCKS * BLOCK
+    gram = _gram(rows.in_basis(0, start)) if many else None
+    while done < n and not (gram is not None and _well_apart(gram)):
+        # Small first blocks: rows far beyond those before them would be predicted with large P.
+        stop = min(done + min(2 * done, BLOCK), n)
+        block = rows.near_first(done, stop)
         found.append(_block_values(root, block))
         root = _triangle(np.vstack([root, block]))
-        gram += known.T @ known
-        done += BLOCK
-    while done < n:
+        if gram is not None:
+            gram += _gram(rows.in_basis(done, stop))
+        done = stop
+    while gram is not None and done < n:
         values, gram = _many_blocks(gram, rows.in_basis(done, done + TOGETHER * SMALL_BLOCK))
         found.append(values)
         done += values.shape[0]
     return np.concatenate(found) if found else np.empty(0)
+
+
+def _gram(rows: np.ndarray) -> np.ndarray:
+    return rows.T @ rows
 
 
 def _triangle(rows: np.ndarray) -> np.ndarray:
