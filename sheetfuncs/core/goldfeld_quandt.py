@@ -1,0 +1,147 @@
+"""Goldfeld and Quandt's test: are the errors wider in the later rows, or where a predictor is larger?"""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+import numpy as np
+from scipy.linalg import lapack
+from scipy.special import fdtr, fdtrc
+
+from sheetfuncs.core.auxiliary import refused
+from sheetfuncs.core.basis import ROUNDINGS, factorize
+from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.threads import few_threads
+from sheetfuncs.errors import ArgumentError, NumbersError
+
+SAME_SPREAD = "the errors have the same variance in both parts of the rows"
+_ALTERNATIVES = {"greater": "greater", "less": "less", "two-sided": "two.sided"}
+_AGAINST = {"greater": "against a wider spread in the later part", "less": "against a wider spread in the earlier part",
+            "two-sided": "against a wider spread in either part"}
+# Cross products square what is left of a column or of the residuals: with less than this, columns are decomposed.
+_ENOUGH_OF_COLUMN = 1e-3
+_ENOUGH_OF_RESIDUALS = 1e-2
+
+
+def goldfeld_quandt(
+    fit: Fit, *, point: float = 0.5, fraction: float = 0.0, alternative: str = "greater", by: str | int | None = None
+) -> Result:
+    """Goldfeld-Quandt test (1965, JASA 60:539-547): fit both parts of the rows, compare their residual variances.
+
+    F = later part's variance over the earlier part's, with (later n - p, earlier n - p) degrees of freedom.
+    point: share of the rows before the split, 0.5 is floor(n/2) and the rest. fraction: share left out around it, half
+    on each side (the split is that of R's lmtest 0.9-40, gqtest). alternative: "greater" spread in the later part,
+    "less", or "two-sided" (twice the smaller tail). by: None for time order, or a predictor column (its name, or its
+    place from 0) whose values sort the rows, ties in the rows' own order.
+    Does not apply where a part has no degrees of freedom, cannot tell the predictors apart, or is fitted perfectly.
+    """
+    column = _checked(fit, point, fraction, alternative, by)
+    first, second = _split(fit.n, point, fraction)
+    args: dict[str, Any] = {"point": point, "fraction": fraction, "alternative": _ALTERNATIVES[alternative]}
+    args |= {"order_by": "row order"} if column is None else {
+        "order_by": fit.design.column_names[column], "ties": "stable order"
+    }
+    named: dict[str, Any] = {
+        "method": "goldfeld_quandt", "args": args, "variant": _variant(fit, first, second, alternative, column),
+        "null": SAME_SPREAD,
+    }
+    refusal = refused(fit, **named)
+    if refusal:
+        return refusal
+    df = (fit.n - second - fit.p, first - fit.p)
+    if min(df) < 1:
+        return DoesNotApply(
+            **named, cell_error="#NUM!",
+            reason=f"{fit.n} rows are too few: parts of {max(first, 0)} and {max(fit.n - second, 0)} rows must each "
+                   f"have more rows than the {fit.p} coefficients.",
+        )
+    order = fit.design.order if column is None else np.argsort(fit.design.columns[:, column], kind="stable")
+    sums = []
+    for rows, where in ((slice(0, first), "earlier"), (slice(second, fit.n), "later")):
+        try:
+            sums.append(_residual_sum(fit, rows if order is None else order[rows]))
+        except NumbersError as refusal_of_part:
+            return DoesNotApply(**named, reason=f"The {where} part cannot be fitted on its own: {refusal_of_part}")
+        if sums[-1] <= (ROUNDINGS * fit.noise) ** 2:
+            return DoesNotApply(
+                **named, cell_error="#NUM!",
+                reason=f"The {where} part is fitted perfectly, so that its errors show no spread to compare.",
+            )
+    statistic = sums[1] / df[0] / (sums[0] / df[1])
+    return Statistic(**named, statistic=statistic, df=df, p=_p(statistic, df, alternative))
+
+
+def _p(statistic: float, df: tuple[int, int], alternative: str) -> float:
+    greater, less = float(fdtrc(*df, statistic)), float(fdtr(*df, statistic))
+    return {"greater": greater, "less": less, "two-sided": min(1.0, 2.0 * min(greater, less))}[alternative]
+
+
+def _checked(fit: Fit, point: float, fraction: float, alternative: str, by: str | int | None) -> int | None:
+    """The column that sorts the rows, None for time order. Raises ArgumentError for options that cannot be."""
+    if alternative not in _ALTERNATIVES:
+        raise ArgumentError(f'"{alternative}" is not an alternative: use greater, less or two-sided.')
+    if not 0.0 < point < 1.0:
+        raise ArgumentError(f"The rows cannot be split at {point:g}: use a share between 0 and 1.")
+    if not 0.0 <= fraction < 1.0:
+        raise ArgumentError(f"{fraction:g} of the rows cannot be left out: use a share from 0 to below 1.")
+    names = fit.design.column_names
+    if isinstance(by, str) and by in names:
+        return names.index(by)
+    if isinstance(by, int) and 0 <= by < len(names):
+        return by
+    if by is not None:
+        raise ArgumentError(f"There is no predictor column {by} to sort by: use one of {', '.join(names)}.")
+    return None
+
+
+def _split(n: int, point: float, fraction: float) -> tuple[int, int]:
+    """Places from 0: the earlier part ends before the first, the later part begins at the second."""
+    first = math.floor((point - fraction / 2) * n)
+    return first, math.ceil((point + fraction / 2) * n + 0.01) - 1
+
+
+def _variant(fit: Fit, first: int, second: int, alternative: str, column: int | None) -> str:
+    order = "in time order" if column is None else f"sorted by {fit.design.column_names[column]}"
+    dropped = second - first
+    between = f"{dropped} between left out" if dropped > 0 else "none left out"
+    return (f"last {max(fit.n - second, 0)} rows over first {max(first, 0)}, {order}, {between}, "
+            f"{_AGAINST[alternative]}")
+
+
+def _residual_sum(fit: Fit, rows: slice | np.ndarray) -> float:
+    """Residual sum of squares of these rows' own fit; from cross products where they are good enough for it."""
+    with few_threads(fit.basis.q.size):
+        found = _from_cross_products(fit, rows)
+        if found is not None:
+            return found
+        basis = factorize(fit.design.columns[rows], fit.design.column_names, intercept=fit.design.intercept)
+        left = basis.project_out(fit.residuals[rows])
+    return float(left @ left)
+
+
+def _from_cross_products(fit: Fit, rows: slice | np.ndarray) -> float | None:
+    """The basis of the whole fit spans the same columns in these rows, and is nearly orthogonal there as a rule."""
+    q, e = fit.basis.q[rows], fit.residuals[rows]
+    total = float(e @ e)
+    if fit.design.intercept:
+        mean = q.mean(axis=0)
+        gram = q.T @ q - q.shape[0] * np.outer(mean, mean)
+        along = q.T @ e - mean * e.sum()
+        total -= float(e.sum()) ** 2 / q.shape[0]
+    else:
+        gram, along = q.T @ q, q.T @ e
+    size = np.diag(gram)
+    before = np.einsum("ij,ij->j", q, q)
+    if not (size > _ENOUGH_OF_COLUMN * before).all() or total <= _ENOUGH_OF_RESIDUALS * float(e @ e):
+        return None
+    if not size.shape[0]:
+        return total
+    unit = np.sqrt(size)
+    root, info = lapack.dpotrf(gram / np.outer(unit, unit), lower=1)
+    if info != 0 or not (np.diag(root) ** 2 > _ENOUGH_OF_COLUMN).all():
+        return None
+    coordinates = lapack.dtrtrs(root, along / unit, lower=1)[0]
+    rest = total - float(coordinates @ coordinates)
+    return rest if rest > _ENOUGH_OF_RESIDUALS * total else None
