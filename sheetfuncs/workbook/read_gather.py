@@ -134,6 +134,13 @@ class Gathering:
         self.put_many(rows, columns, Kind.TEXT, np.full(len(rows), np.nan))
         self._shared.append((rows, columns, strings))
 
+    def put_many_texts(self, rows: np.ndarray, columns: np.ndarray, kinds: np.ndarray, texts: np.ndarray) -> None:
+        """Store texts and errors, for arrays of 0-based places in the area, for which there is room."""
+        self.put_many(rows, columns, kinds, np.full(len(rows), np.nan))
+        for column in np.unique(columns).tolist():
+            here = columns == column
+            self.column_texts(column)[rows[here]] = texts[here]
+
     @property
     def has_shared(self) -> bool:
         return bool(self._shared or self._single[0])

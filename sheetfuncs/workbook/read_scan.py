@@ -20,17 +20,19 @@ from sheetfuncs.cells.block import Kind
 from sheetfuncs.workbook.read_cells import CellReader
 from sheetfuncs.workbook.read_digits import digits_before_quote, parse_decimals, parse_whole, words_of
 from sheetfuncs.workbook.read_gather import Gathering
+from sheetfuncs.workbook.read_strings import unescape
 from sheetfuncs.workbook.xml import MAIN
 
 SEGMENT = 1 << 20
 _MOST_WITHOUT_ROW = 32 << 20
 _MOST_HEAD = 1 << 20
 _PAD = b" " * 64
-_NUMBER, _SHARED, _BOOLEAN, _OTHER = range(4)
-_TYPES = {b"n": _NUMBER, b"s": _SHARED, b"b": _BOOLEAN}
+_NUMBER, _SHARED, _BOOLEAN, _TEXT, _INLINE, _ERROR, _OTHER = range(7)
+_TYPES = {b"n": _NUMBER, b"s": _SHARED, b"b": _BOOLEAN, b"str": _TEXT, b"inlineStr": _INLINE, b"e": _ERROR}
 _LONGEST_TAIL = 24
 _BUCKETS = 12
 _MASKS = np.array([(1 << 8 * size) - 1 for size in range(9)], np.uint64)
+_UNUSUAL = re.compile("[\x00-\x08\x0b-\x1f\ud800-\udfff\ufffe\uffff]")
 _ROOT = re.compile(rb"<worksheet\s[^>]*>")
 _DATA = re.compile(rb"<sheetData\s*>")
 _ENCODING = re.compile(rb"encoding=[\"']([^\"']+)")
@@ -180,27 +182,30 @@ class _Cells:
         self.row, self.column, tail, good = _references(words, starts + 6)
         closed = _starts_with(tag_words[last], b"</c>")
         self.blank = good & ((count == 1) | ((count == 2) & closed))
+        at = [tag_words[np.clip(last - back, 0, None)] for back in range(5)]  # from </c> backwards
         second = tag_words[np.minimum(marks.cells + 1, len(tags) - 1)]
-        third = tag_words[np.minimum(marks.cells + 2, len(tags) - 1)]
         formula = _starts_with(second, b"<f ") | _starts_with(second, b"<f>") | _starts_with(second, b"<f/")
-        self.formula = formula & ((count == 5) | ((count == 6) & _starts_with(third, b"</f>")))
-        value, end = np.maximum(last - 2, 0), np.maximum(last - 1, 0)
-        form = ((count == 4) | self.formula) & closed & _starts_with(tag_words[end], b"</v>")
-        form &= good & _starts_with(tag_words[value], b"<v>")
-        self.value_start, self.value_end = tags[value] + 3, tags[end]
+        formula &= (count == 5) | ((count == 6) & _starts_with(at[3], b"</f>"))
+        value = ((count == 4) | formula) & _starts_with(at[2], b"<v>") & _starts_with(at[1], b"</v>")
+        inline = (count == 6) & _starts_with(at[4], b"<is>") & _starts_with(at[3], b"<t>")
+        inline &= _starts_with(at[2], b"</t>") & _starts_with(at[1], b"</is>")
         tag_end = tags[np.minimum(marks.cells + 1, len(tags) - 1)] - 1
-        form &= np.frombuffer(data, np.uint8)[tag_end] == ord(">")
-        self.kind, self.is_date = tails.classify(data, words, tail, np.where(form, tag_end - tail, -1))
+        known = good & closed & (value | inline) & (np.frombuffer(data, np.uint8)[tag_end] == ord(">"))
+        self.value_start = tags[np.clip(last - 2 - inline, 0, None)] + 3
+        self.value_end = tags[np.clip(last - 1 - inline, 0, None)]
+        self.kind, self.is_date = tails.classify(data, words, tail, np.where(known, tag_end - tail, -1))
+        known &= (self.kind != _OTHER) & ((self.kind == _INLINE) == inline)
         empty = self.value_start == self.value_end
-        self.unstored = form & empty & self.formula & (self.kind != _OTHER)
-        self.blank |= form & empty & (self.kind != _OTHER)
-        self.valued = form & ~empty & (self.kind != _OTHER)
+        self.formula = known & formula
+        self.stored = ~empty | (self.kind == _TEXT)
+        self.blank |= known & empty
+        self.valued = known & ~empty
 
     def put_into(self, gathering: Gathering) -> list[bytes]:
         """Store the cells; returns the bytes of those that the scan cannot read."""
         filled = np.flatnonzero(self.valued)
         other = ~(self.valued | self.blank)
-        used = np.flatnonzero(self.valued | self.unstored)
+        used = np.flatnonzero(self.valued | self.formula)
         if len(used):
             gathering.touch(int(self.row[used].max()), int(self.column[used].max()))
         row, column = self.row - gathering.first_row, self.column - gathering.first_column
@@ -211,13 +216,14 @@ class _Cells:
         needed = used[inside[used]]
         if len(needed):
             gathering.reserve(int(row[needed].max()) + 1, int(column[needed].max()) + 1)
-        for kind, put in ((_NUMBER, self._numbers), (_SHARED, self._strings), (_BOOLEAN, self._booleans)):
-            picked = chosen[self.kind[chosen] == kind]
+        group = np.minimum(self.kind[chosen], _TEXT)
+        for kind, put in enumerate((self._numbers, self._strings, self._booleans, self._texts)):
+            picked = chosen[group == kind]
             if len(picked):
                 good = put(gathering, picked, row[picked], column[picked])
                 other[picked[~good]] = True
         noted = noted[~other[noted]]  # the parser marks the formulas that it reads
-        gathering.mark_formulas(row[noted], column[noted], ~self.unstored[noted])
+        gathering.mark_formulas(row[noted], column[noted], self.stored[noted])
         tags, cells, following = self.marks.tags, self.marks.cells, np.append(self.marks.tags, len(self.marks.data))
         odd = np.flatnonzero(other)
         bounds = zip(tags[cells[odd]].tolist(), following[self.marks.next_marks[odd]].tolist(), strict=True)
@@ -244,6 +250,29 @@ class _Cells:
         good = (self.value_end[picked] - start == 1) & ((text == ord("0")) | (text == ord("1")))
         gathering.put_many(row[good], column[good], Kind.BOOLEAN, (text[good] == ord("1")).astype(np.float64))
         return good
+
+    def _texts(self, gathering: Gathering, picked: np.ndarray, row: np.ndarray, column: np.ndarray) -> np.ndarray:
+        data = self.marks.data
+        bounds = zip(self.value_start[picked].tolist(), self.value_end[picked].tolist(), strict=True)
+        pieces = [data[start:end] for start, end in bounds]
+        known = {piece: _plain_text(piece) for piece in set(pieces)}
+        texts = np.array([*(known[piece] for piece in pieces), None], object)[:-1]
+        good = np.array([known[piece] is not None for piece in pieces])
+        error = self.kind[picked] == _ERROR
+        texts[error] = [text and text.strip() for text in texts[error]]
+        kinds = np.where(error, Kind.ERROR, Kind.TEXT).astype(np.uint8)
+        gathering.put_many_texts(row[good], column[good], kinds[good], texts[good])
+        return good
+
+
+def _plain_text(piece: bytes) -> str | None:
+    """The text of bytes without references, line ends or characters that XML would change or refuse; else None."""
+    try:
+        text = piece.decode()
+    except UnicodeDecodeError:
+        return None
+    plain = "&" not in text and "]]>" not in text and (text.isprintable() or _UNUSUAL.search(text) is None)
+    return unescape(text) if plain else None
 
 
 def _references(words: np.ndarray, starts: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:

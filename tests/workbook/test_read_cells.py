@@ -46,6 +46,12 @@ def one_row(cells: str) -> bytes:
         ('<c r="A1" t="str"><f>B1&amp;""</f><v>text</v></c>', "TEXT", "text"),
         ('<c r="A1" t="str"><v>a &lt; b</v></c>', "TEXT", "a < b"),
         ('<c r="A1" t="inlineStr"><is><t>here</t></is></c>', "TEXT", "here"),
+        ('<c r="A1" t="inlineStr"><is><t xml:space="preserve"> a </t></is></c>', "TEXT", " a "),
+        ('<c r="A1" s="1" t="inlineStr"><is><t>größer &gt; _x0041_ &amp;</t></is></c>', "TEXT", "größer > A &"),
+        ('<c r="A1" t="inlineStr"><is><t>a\r\nb _x0041_</t></is></c>', "TEXT", "a\nb A"),
+        ('<c r="A1" t="inlineStr"><v>none</v></c>', "TEXT", "none"),
+        ('<c r="A1" t="str"><f>B1</f><v>é_x000A_</v></c>', "TEXT", "é\n"),
+        ('<c r="A1" t="e"><v> #REF! </v></c>', "ERROR", "#REF!"),
         ('<c r="A1" t="inlineStr"><is><r><t>he</t></r><r><t>re</t></r><rPh sb="0" eb="1"><t>no</t></rPh></is></c>',
          "TEXT", "here"),
         ('<c r="A1" t="d"><v>2024-03-01</v></c>', "DATE", 45352.0),
@@ -259,7 +265,9 @@ text_cells = st.sampled_from(
     [
         ' t="s"><v>0</v></c>', ' t="s" s="1"><v>2</v></c>', ' t="b"><v>1</v></c>', ' t="b"><v>yes</v></c>',
         ' t="e"><v>#N/A</v></c>', ' t="str"><f>A1</f><v>t</v></c>', ' t="str"><v></v></c>', "/>", "></c>",
-        ' t="inlineStr"><is><t>&lt;v>1&lt;/v></t></is></c>', ' t="s"><f>A1</f><v>3</v></c>', ' t="e"><f>A1</f><v/></c>',
+        ' t="inlineStr"><is><t>&lt;v>1&lt;/v></t></is></c>', ' t="inlineStr"><is><t>plain</t></is></c>',
+        ' t="str"><f>A1</f><v></v></c>', ' t="inlineStr"><v>odd</v></c>', ' t="e"><v>#NUM!</v></c>',
+        ' t="s"><f>A1</f><v>3</v></c>', ' t="e"><f>A1</f><v/></c>',
     ]
 )  # fmt: skip
 
