@@ -32,7 +32,8 @@ _TYPES = {b"n": _NUMBER, b"s": _SHARED, b"b": _BOOLEAN, b"str": _TEXT, b"inlineS
 _LONGEST_TAIL = 24
 _BUCKETS = 12
 _MASKS = np.array([(1 << 8 * size) - 1 for size in range(9)], np.uint64)
-_UNUSUAL = re.compile("[\x00-\x08\x0b-\x1f\ud800-\udfff\ufffe\uffff]")
+_REFERENCES = (("&lt;", "<"), ("&gt;", ">"), ("&quot;", '"'), ("&apos;", "'"), ("&amp;", "&"))
+_UNUSUAL = re.compile("]]>|&(?!(?:lt|gt|quot|apos|amp);)|[\x00-\x08\x0b-\x1f\ud800-\udfff\ufffe\uffff]")
 _ROOT = re.compile(rb"<worksheet\s[^>]*>")
 _DATA = re.compile(rb"<sheetData\s*>")
 _ENCODING = re.compile(rb"encoding=[\"']([^\"']+)")
@@ -266,13 +267,16 @@ class _Cells:
 
 
 def _plain_text(piece: bytes) -> str | None:
-    """The text of bytes without references, line ends or characters that XML would change or refuse; else None."""
+    """The text of bytes without numbered references, and what XML would change or refuse; else None."""
     try:
         text = piece.decode()
     except UnicodeDecodeError:
         return None
-    plain = "&" not in text and "]]>" not in text and (text.isprintable() or _UNUSUAL.search(text) is None)
-    return unescape(text) if plain else None
+    if _UNUSUAL.search(text) is not None:
+        return None
+    for reference, character in _REFERENCES if "&" in text else ():
+        text = text.replace(reference, character)
+    return unescape(text)
 
 
 def _references(words: np.ndarray, starts: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
