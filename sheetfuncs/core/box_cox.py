@@ -132,9 +132,9 @@ class _Profile:
         return rss, half
 
     def one(self, power: float) -> tuple[float, float]:
-        """rss, and half the derivative of log rss (only its sign where powers overflow, or nothing is left)."""
+        """The same at one power."""
         rss, half = self.at(np.array([power]))
-        return float(rss[0]), _ratio(float(rss[0]), float(half[0]))
+        return float(rss[0]), float(half[0])
 
     def squares(self, power: float) -> float:
         """Sum of squares of z itself."""
@@ -144,19 +144,15 @@ class _Profile:
 
 @dataclass(frozen=True)
 class _Least:
-    """The power with the least rss; slope: the second derivative of half the logarithm of rss there.
+    """The power with the least rss; bend: half the second derivative of rss there.
 
     grid: rss at whole and half powers, where these were looked at on all rows.
     """
 
     power: float
     rss: float
-    slope: float
+    bend: float
     grid: np.ndarray | None = None
-
-
-def _ratio(rss: float, half: float) -> float:
-    return half / rss if 0.0 < rss < np.inf else float(np.sign(half))
 
 
 def _power(u: np.ndarray, powers: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
@@ -189,11 +185,13 @@ def _likeliest(profile: _Profile) -> _Least:
         return _least(profile)
     some = slice(None, None, n // THIN)
     q = profile.q[some] - (profile.q[some].mean(axis=0) if profile.intercept else 0.0)
-    thin = _least(_Profile(profile.u[some], np.linalg.qr(q)[0], profile.intercept))
-    if thin.slope > 0.0:
+    thinned = profile.u[some]
+    thin = _least(_Profile(thinned, np.linalg.qr(q)[0], profile.intercept))
+    if thin.bend > 0.0 and thin.rss > 0.0:
         # Five standard errors of the thinned rows to either side hold the root of all rows, or the search starts anew.
-        reach = 5.0 / np.sqrt(thin.slope * THIN)
-        found = _root(profile, thin.power, thin.slope, thin.power - reach, thin.power + reach)
+        reach = 5.0 * np.sqrt(thin.rss / (thin.bend * thinned.shape[0]))
+        bend = thin.bend * n / thinned.shape[0]
+        found = _root(profile, thin.power, bend, thin.power - reach, thin.power + reach)
         if abs(found.power - thin.power) < 0.99 * reach:
             return found
     return _least(profile)
@@ -214,15 +212,18 @@ def _least(profile: _Profile) -> _Least:
             break
         else:  # several bends in one step: look closer
             powers = np.linspace(powers[left], powers[left + 1], 9)
+    else:
+        return _Least(float(powers[place]), float(rss[place]), 0.0, grid)
     around = slice(max(left - 1, 0), left + 3)
-    slopes = [_ratio(*pair) for pair in zip(rss[around].tolist(), half[around].tolist(), strict=True)]
     low, high = float(powers[left]), float(powers[left + 1])
-    at_low, at_high = (_ratio(float(rss[i]), float(half[i])) for i in (left, left + 1))
-    start = _inverse(powers[around].tolist(), slopes)
+    at_low, at_high = float(half[left]), float(half[left + 1])
+    start = _inverse(powers[around].tolist(), half[around].tolist())
     if not low < start < high:
-        start = (low * at_high - high * at_low) / (at_high - at_low)
+        start = (low * at_high - high * at_low) / (at_high - at_low) if np.isfinite(at_high - at_low) else np.nan
+    if not low < start < high:
+        start = 0.5 * (low + high)
     found = _root(profile, start, (at_high - at_low) / (high - low), low, high)
-    return _Least(found.power, found.rss, found.slope, grid)
+    return _Least(found.power, found.rss, found.bend, grid)
 
 
 def _inverse(x: list[float], y: list[float]) -> float:
@@ -236,25 +237,26 @@ def _inverse(x: list[float], y: list[float]) -> float:
     return x[0]
 
 
-def _root(profile: _Profile, start: float, slope: float, low: float, high: float) -> _Least:
-    """The power between low and high where the derivative of log rss turns positive: secant steps from a known slope,
-    kept in the bracket, which halves where they are of no use."""
-    now, (rss, at_now) = start, profile.one(start)
+def _root(profile: _Profile, start: float, bend: float, low: float, high: float) -> _Least:
+    """The power between low and high where rss turns from falling to rising: secant steps, the first with this bend,
+    kept in the bracket, which is halved where they are of no use."""
+    now, (rss, half) = start, profile.one(start)
     size = max(abs(low), abs(high))
     for turn in range(200):
-        low, high = (now, high) if at_now < 0.0 else (low, now)
-        following = now - at_now / slope if slope > 0.0 else np.nan
+        low, high = (now, high) if half < 0.0 else (low, now)
+        following = now - half / bend if np.isfinite(half) and bend > 0.0 else np.nan
         if not low < following < high or turn % 8 == 7:
             following = 0.5 * (low + high)
-        before, at_before = now, at_now
+        if half == 0.0 or high - low <= 1e-14 * size:
+            break
+        before, half_before = now, half
         now = float(following)
-        if at_before == 0.0 or high - low <= 1e-14 * size:
-            return _Least(before, rss, slope)
-        rss, at_now = profile.one(now)
+        rss, half = profile.one(now)
         if abs(now - before) <= 1e-9 * size:  # nearer, differences are rounding
-            return _Least(now - at_now / slope if slope > 0.0 else now, rss, slope)
-        slope = (at_now - at_before) / (now - before)
-    return _Least(now, rss, slope)
+            now -= half / bend if bend > 0.0 else 0.0
+            break
+        bend = (half - half_before) / (now - before)
+    return _Least(now, rss, bend)
 
 
 def _interval(profile: _Profile, best: _Least, cut: float) -> tuple[float, float]:
@@ -266,7 +268,7 @@ def _interval(profile: _Profile, best: _Least, cut: float) -> tuple[float, float
     side = np.array([-1.0, 1.0])
     goal = np.sqrt(cut / n)
     inside, outside = np.zeros(2), np.full(2, np.inf)  # distances from the best power
-    distance = np.full(2, goal / np.sqrt(best.slope) if best.slope > 0.0 else 1.0)
+    distance = np.full(2, goal * np.sqrt(best.rss / best.bend) if 0.0 < best.bend < np.inf else 1.0)
     for _ in range(100):
         rss, half = profile.at(best.power + side * distance)
         with np.errstate(invalid="ignore", divide="ignore"):
