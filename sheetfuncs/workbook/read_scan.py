@@ -17,31 +17,24 @@ import numpy as np
 
 from sheetfuncs.cells.address import MAX_COLUMNS, MAX_ROWS
 from sheetfuncs.cells.block import Kind
+from sheetfuncs.workbook.read_attributes import ERROR, INLINE, OTHER, TEXT, CellAttributes
 from sheetfuncs.workbook.read_cells import CellReader
 from sheetfuncs.workbook.read_digits import digits_before_quote, parse_decimals, parse_whole, words_of
 from sheetfuncs.workbook.read_gather import Gathering
-from sheetfuncs.workbook.read_strings import unescape
+from sheetfuncs.workbook.read_strings import plain_text
 from sheetfuncs.workbook.xml import MAIN
 
 SEGMENT = 1 << 20
 _MOST_WITHOUT_ROW = 32 << 20
 _MOST_HEAD = 1 << 20
 _PAD = b" " * 64
-_NUMBER, _SHARED, _BOOLEAN, _TEXT, _INLINE, _ERROR, _OTHER = range(7)
-_TYPES = {b"n": _NUMBER, b"s": _SHARED, b"b": _BOOLEAN, b"str": _TEXT, b"inlineStr": _INLINE, b"e": _ERROR}
-_LONGEST_TAIL = 24
-_BUCKETS = 12
 _MASKS = np.array([(1 << 8 * size) - 1 for size in range(9)], np.uint64)
-_REFERENCES = (("&lt;", "<"), ("&gt;", ">"), ("&quot;", '"'), ("&apos;", "'"), ("&amp;", "&"))
-_UNUSUAL = re.compile("]]>|&(?!(?:lt|gt|quot|apos|amp);)|[\x00-\x08\x0b-\x1f\ud800-\udfff\ufffe\uffff]")
 _ROOT = re.compile(rb"<worksheet\s[^>]*>")
 _DATA = re.compile(rb"<sheetData\s*>")
 _ENCODING = re.compile(rb"encoding=[\"']([^\"']+)")
 _ZERO_HEIGHT = re.compile(rb"zeroHeight=[\"'](?:1|t|on)")
 _HIDDEN_ROW = re.compile(rb"<row\s[^>]*?\bhidden=[\"'](?:1|true|on)[\"']")
 _ROW_NUMBER = re.compile(rb"\sr=\"([0-9]{1,7})\"")
-_ATTRIBUTES = re.compile(rb"(?:\s+[A-Za-z:]+=\"[^\"&<]*\")*\s*")
-_ATTRIBUTE = re.compile(rb"\s([A-Za-z:]+)=\"([^\"]*)\"")
 
 
 def scan_cells(chunks: Iterator[bytes], reader: CellReader) -> None:
@@ -73,7 +66,7 @@ class _Scan:
     def __init__(self, reader: CellReader, root: bytes):
         self.reader = reader
         self.opening, self.closing = root + b"<sheetData>", b"</sheetData></worksheet>"
-        self.tails = _Tails(reader.date_formats)
+        self.attributes = CellAttributes(reader.date_formats)
 
     def read_rows(self, data: bytes, chunks: Iterator[bytes]) -> None:
         """Read from behind <sheetData> to the part's end."""
@@ -106,7 +99,7 @@ class _Scan:
                 number = _ROW_NUMBER.search(data, match.start(), data.index(b">", match.start()))
                 if number is not None:
                     self.reader.gathering.hide(int(number[1]))
-        others = _Cells(found, self.tails).put_into(self.reader.gathering)
+        others = _Cells(found, self.attributes).put_into(self.reader.gathering)
         if others:
             self.reader.read_part([self.opening, b"<row>", *others, b"</row>", self.closing])
         self.reader.row = found.last_row
@@ -175,7 +168,7 @@ class _Marks:
 class _Cells:
     """The cells of a segment as arrays (n,): where they are, of what kind, and where their values stand."""
 
-    def __init__(self, marks: _Marks, tails: _Tails):
+    def __init__(self, marks: _Marks, attributes: CellAttributes):
         self.marks = marks
         data, words, tags, tag_words = marks.data, marks.words, marks.tags, marks.tag_words
         starts, last = tags[marks.cells], marks.next_marks - 1
@@ -194,11 +187,11 @@ class _Cells:
         known = good & closed & (value | inline) & (np.frombuffer(data, np.uint8)[tag_end] == ord(">"))
         self.value_start = tags[np.clip(last - 2 - inline, 0, None)] + 3
         self.value_end = tags[np.clip(last - 1 - inline, 0, None)]
-        self.kind, self.is_date = tails.classify(data, words, tail, np.where(known, tag_end - tail, -1))
-        known &= (self.kind != _OTHER) & ((self.kind == _INLINE) == inline)
+        self.kind, self.is_date = attributes.classify(data, words, tail, np.where(known, tag_end - tail, -1))
+        known &= (self.kind != OTHER) & ((self.kind == INLINE) == inline)
         empty = self.value_start == self.value_end
         self.formula = known & formula
-        self.stored = ~empty | (self.kind == _TEXT)
+        self.stored = ~empty | (self.kind == TEXT)
         self.blank |= known & empty
         self.valued = known & ~empty
 
@@ -217,7 +210,7 @@ class _Cells:
         needed = used[inside[used]]
         if len(needed):
             gathering.reserve(int(row[needed].max()) + 1, int(column[needed].max()) + 1)
-        group = np.minimum(self.kind[chosen], _TEXT)
+        group = np.minimum(self.kind[chosen], TEXT)
         for kind, put in enumerate((self._numbers, self._strings, self._booleans, self._texts)):
             picked = chosen[group == kind]
             if len(picked):
@@ -256,27 +249,14 @@ class _Cells:
         data = self.marks.data
         bounds = zip(self.value_start[picked].tolist(), self.value_end[picked].tolist(), strict=True)
         pieces = [data[start:end] for start, end in bounds]
-        known = {piece: _plain_text(piece) for piece in set(pieces)}
+        known = {piece: plain_text(piece) for piece in set(pieces)}
         texts = np.array([*(known[piece] for piece in pieces), None], object)[:-1]
         good = np.array([known[piece] is not None for piece in pieces])
-        error = self.kind[picked] == _ERROR
+        error = self.kind[picked] == ERROR
         texts[error] = [text and text.strip() for text in texts[error]]
         kinds = np.where(error, Kind.ERROR, Kind.TEXT).astype(np.uint8)
         gathering.put_many_texts(row[good], column[good], kinds[good], texts[good])
         return good
-
-
-def _plain_text(piece: bytes) -> str | None:
-    """The text of bytes without numbered references, and what XML would change or refuse; else None."""
-    try:
-        text = piece.decode()
-    except UnicodeDecodeError:
-        return None
-    if _UNUSUAL.search(text) is not None:
-        return None
-    for reference, character in _REFERENCES if "&" in text else ():
-        text = text.replace(reference, character)
-    return unescape(text)
 
 
 def _references(words: np.ndarray, starts: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
@@ -294,64 +274,3 @@ def _references(words: np.ndarray, starts: np.ndarray) -> tuple[np.ndarray, np.n
     row, good = parse_whole(words, digits, np.where(count == 8, 0, count))
     good &= one & (row >= 1) & (row <= MAX_ROWS) & (column <= MAX_COLUMNS)
     return row.astype(np.int64), column, digits + count + 1, good
-
-
-class _Tails:
-    """What the attributes behind a cell's reference say: kind of value, and whether the format shows a date.
-
-    Few different ones occur in a sheet, so each is looked into once.
-    """
-
-    def __init__(self, date_formats: list[bool]):
-        self.date_formats = date_formats
-        self.known: dict[bytes, tuple[int, bool]] = {}
-
-    def classify(
-        self, data: bytes, words: np.ndarray, starts: np.ndarray, lengths: np.ndarray
-    ) -> tuple[np.ndarray, np.ndarray]:
-        """Kind and is_date of cells whose attributes begin at starts; a length that is no length gives _OTHER."""
-        kinds, dates = np.full(len(starts), _OTHER, np.uint8), np.zeros(len(starts), bool)
-        left = np.flatnonzero((lengths >= 0) & (lengths <= _LONGEST_TAIL))
-        for _ in range(8):
-            if not len(left):
-                break
-            keys = self._keys(words, starts[left], lengths[left])
-            bucket = (keys[0] * np.uint64(0x9E3779B97F4A7C15)) ^ (keys[1] * np.uint64(0xC2B2AE3D27D4EB4F)) ^ keys[2]
-            bucket = (bucket * np.uint64(0xFF51AFD7ED558CCD)) >> np.uint64(64 - _BUCKETS)
-            chosen = np.full(1 << _BUCKETS, -1)
-            chosen[bucket] = np.arange(len(left))
-            same = np.logical_and.reduce([key == key[chosen[bucket]] for key in keys])
-            kind_of, date_of = np.zeros(1 << _BUCKETS, np.uint8), np.zeros(1 << _BUCKETS, bool)
-            for place in np.flatnonzero(chosen >= 0).tolist():
-                cell = left[chosen[place]]
-                kind_of[place], date_of[place] = self._look(data[starts[cell] : starts[cell] + lengths[cell]])
-            kinds[left[same]], dates[left[same]] = kind_of[bucket[same]], date_of[bucket[same]]
-            left = left[~same]
-        return kinds, dates
-
-    @staticmethod
-    def _keys(words: np.ndarray, starts: np.ndarray, lengths: np.ndarray) -> list[np.ndarray]:
-        """The attributes' bytes as three numbers; those of different lengths differ, as none holds a zero byte."""
-        longest = int(lengths.max())
-        return [
-            words[starts + begin] & _MASKS[np.clip(lengths - begin, 0, 8)]
-            if longest > begin
-            else np.zeros(len(starts), np.uint64)
-            for begin in (0, 8, 16)
-        ]
-
-    def _look(self, tail: bytes) -> tuple[int, bool]:
-        if tail not in self.known:
-            self.known[tail] = self._read(tail)
-        return self.known[tail]
-
-    def _read(self, tail: bytes) -> tuple[int, bool]:
-        if _ATTRIBUTES.fullmatch(tail) is None:
-            return _OTHER, False
-        found = dict(_ATTRIBUTE.findall(tail))
-        style = found.get(b"s", b"0")
-        if not style.isdigit() or len(style) > 9:
-            return _OTHER, False
-        number = int(style)
-        is_date = number < len(self.date_formats) and self.date_formats[number]
-        return _TYPES.get(found.get(b"t", b"n"), _OTHER), is_date

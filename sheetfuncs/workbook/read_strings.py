@@ -12,6 +12,10 @@ from sheetfuncs.workbook.package import Package
 from sheetfuncs.workbook.xml import MAIN
 
 _ESCAPE = re.compile("_x([0-9A-Fa-f]{4})_")
+_NAMED = {"lt": "<", "gt": ">", "quot": '"', "apos": "'", "amp": "&"}
+_REFERENCE = re.compile("&(lt|gt|quot|apos|amp|#[0-9]{1,8}|#x[0-9A-Fa-f]{1,8});")
+_CHARACTERS = (0x20, 0xD7FF), (0xE000, 0xFFFD), (0x10000, 0x10FFFF)  # XML 1.0, production 2
+_UNUSUAL = re.compile(f"]]>|&(?!{_REFERENCE.pattern[1:]})|[\x00-\x08\x0b-\x1f\ud800-\udfff\ufffe\uffff]")
 _SI, _T, _PHONETIC = f"{MAIN} si", f"{MAIN} t", f"{MAIN} rPh"
 
 
@@ -36,6 +40,30 @@ def unescape(text: str) -> str:
         return text
     text = _ESCAPE.sub(lambda match: chr(int(match[1], 16)), text)
     return text.encode("utf-16", "surrogatepass").decode("utf-16", "replace")
+
+
+def plain_text(piece: bytes) -> str | None:
+    """The text of bytes that hold nothing XML would change or refuse; else None."""
+    try:
+        text = piece.decode()
+    except UnicodeDecodeError:
+        return None
+    if _UNUSUAL.search(text) is not None:
+        return None
+    if "&" in text:
+        text = _REFERENCE.sub(_referenced, text)
+        if "\0" in text:
+            return None
+    return unescape(text)
+
+
+def _referenced(match: re.Match[str]) -> str:
+    """The character that a reference stands for; "\\0", which no XML can hold, where there is none."""
+    name = match[1]
+    if name in _NAMED:
+        return _NAMED[name]
+    code = int(name[2:], 16) if name[1] == "x" else int(name[1:])
+    return chr(code) if code in (9, 10, 13) or any(first <= code <= last for first, last in _CHARACTERS) else "\0"
 
 
 def feed(parser: expat.XMLParserType, chunks: Iterable[bytes], where: str) -> None:
