@@ -77,6 +77,15 @@ def test_reset_refuses_what_does_not_vary_and_what_is_there_already():
     assert "too few" in reset(small).reason
 
 
+def test_powers_that_nearly_fit_keep_the_digits_of_what_they_leave():
+    """The rest is 1e-15 of the sum of squares; taking the explained part off the whole would leave no digit of it."""
+    y = I**2 + 1e-6 * np.sin(9 * I)
+    longer = fitted(y, I, I**2)
+    result = reset(fitted(y, I), (2,), of="predictors")
+    assert longer.rss < 1e-14 * fitted(y, I).rss
+    assert result.statistic == pytest.approx((fitted(y, I).rss - longer.rss) / (longer.rss / longer.df), rel=1e-6)
+
+
 def test_reset_leaves_categories_out_of_the_powers():
     random = np.random.default_rng(1)
     x, codes = random.normal(size=30), np.arange(30) % 3
