@@ -130,8 +130,9 @@ def shape(values: np.ndarray) -> tuple[float, float]:
     """Skewness and kurtosis (3 is normal) of values that are not all equal, moments about the mean with divisor n."""
     left = values - values.mean()
     left = left / np.abs(left).max()
-    second = float(np.mean(left**2))
-    return float(np.mean(left**3)) / second**1.5, float(np.mean(left**4)) / second**2
+    square = left * left
+    n, second = left.shape[0], float(square.mean())
+    return float(square @ left) / n / second**1.5, float(square @ square) / n / second**2
 
 
 def normal_scores(values: np.ndarray) -> np.ndarray:
