@@ -13,17 +13,13 @@ import numpy as np
 from sheetfuncs import __version__
 from sheetfuncs.cells.block import Block, Kind
 from sheetfuncs.cells.observations import CategoryColumn, Observations, read_observations
+from sheetfuncs.core.catalogue import all_statistics
 from sheetfuncs.core.collinearity import Inflation, variance_inflation
 from sheetfuncs.core.design import Category, Design, Numeric, build_design
 from sheetfuncs.core.fit import Fit, fit_design
-from sheetfuncs.core.form import reset
-from sheetfuncs.core.independence import breusch_godfrey, durbin_watson, durbin_watson_tests
-from sheetfuncs.core.influence import RowMeasures, outlier_test, row_measures
-from sheetfuncs.core.mean import residual_mean
-from sheetfuncs.core.normality import jarque_bera, shapiro_wilk
+from sheetfuncs.core.influence import RowMeasures, row_measures
 from sheetfuncs.core.results import Result
 from sheetfuncs.core.threads import few_threads
-from sheetfuncs.core.variance import breusch_pagan, breusch_pagan_fitted
 from sheetfuncs.errors import ArgumentError
 from sheetfuncs.judgement.evidence import Evidence, all_evidence
 from sheetfuncs.judgement.rows import FlaggedRow, rows_to_look_at
@@ -181,7 +177,7 @@ def check_observations(
 def _check(observations: Observations, design: Design, settings: Settings, remarks: Sequence[str]) -> Check:
     fit = fit_design(design)
     measures = row_measures(fit)
-    statistics = tuple(all_statistics(fit))
+    statistics = all_statistics(fit)
     inflation = variance_inflation(fit.basis, design.groups)
     flagged = rows_to_look_at(fit, measures)
     return Check(
@@ -201,26 +197,6 @@ def design_of(observations: Observations, *, intercept: bool = True) -> Design:
         observations.response.values, predictors, response_name=observations.response.name, intercept=intercept,
         order=observations.order.values if observations.order else None, rows=observations.ledger.used,
     )
-
-
-def all_statistics(fit: Fit) -> list[Result]:
-    """Every test of this version, in the sheet's order."""
-    return [
-        residual_mean(fit),
-        durbin_watson(fit),
-        *durbin_watson_tests(fit),
-        *(
-            breusch_godfrey(fit, lags, distribution=distribution, before_first=before_first)
-            for lags in (1, 2, 4) for distribution in ("chi-square", "F") for before_first in ("zeros", "omitted")
-        ),
-        breusch_pagan(fit, studentize=True),
-        breusch_pagan(fit, studentize=False),
-        breusch_pagan_fitted(fit),
-        shapiro_wilk(fit),
-        jarque_bera(fit),
-        *(reset(fit, powers, of=of) for of in ("fitted", "predictors") for powers in ((2, 3), (2,))),
-        outlier_test(fit),
-    ]
 
 
 def versions() -> dict[str, str]:

@@ -9,7 +9,7 @@ import numpy as np
 
 from sheetfuncs.core.collinearity import Inflation
 from sheetfuncs.core.fit import Fit
-from sheetfuncs.core.normality import shape
+from sheetfuncs.core.normality import all_equal, shape
 from sheetfuncs.core.results import Result
 from sheetfuncs.core.smooth import autocorrelations, local_line, spread_by_groups
 from sheetfuncs.judgement.rows import FlaggedRow
@@ -156,11 +156,11 @@ def _independence(fit: Fit, statistics: Sequence[Result]) -> Evidence:
 def _normality(fit: Fit, statistics: Sequence[Result]) -> Evidence:
     result = _find(statistics, "shapiro_wilk")
     name = "Shapiro-Wilk"
-    if not result.applies and _find(statistics, "jarque_bera").applies:
-        result, name = _find(statistics, "jarque_bera"), "Jarque-Bera"
+    if not result.applies and _find(statistics, "anderson_darling").applies:
+        result, name = _find(statistics, "anderson_darling"), "Anderson-Darling"
     strength, finding = _tested("normality", "normal errors", result)
     size = ""
-    if fit.has_error_bars:
+    if fit.has_error_bars and not all_equal(fit):
         skew, kurtosis = shape(fit.residuals)
         size = (
             f"skewness {skew:+.2f} (0 is symmetric), kurtosis {kurtosis:.2f} (3 is normal); "

@@ -41,7 +41,7 @@ def rows_to_look_at(fit: Fit, measures: RowMeasures) -> tuple[FlaggedRow, ...]:
     with np.errstate(invalid="ignore"):
         candidates = (
             (outlier_p < OUTLIER_LEVEL) | (largest >= SHIFT_LIMIT) | (measures.leverage > LEVERAGE_LIMIT)
-            | (measures.cooks_distance >= cook_limit)
+            | (measures.cooks_distance >= cook_limit) | measures.spoils_perfect_fit
         )
     flagged = [_flag(fit, measures, shifts, outlier_p, cook_limit, int(i)) for i in np.flatnonzero(candidates)]
     flagged.sort(key=lambda f: (-f.weight, f.row))
@@ -66,6 +66,11 @@ def _flag(
         return FlaggedRow(
             row, i, "It alone determines its own fitted value (leverage 1), so its error cannot be seen and a mistake "
             "in it would pass unnoticed.", 1e6,
+        )
+    if measures.spoils_perfect_fit[i]:
+        return FlaggedRow(
+            row, i, "Without it the fit is perfect: every other row lies on the line, and this one alone "
+            f"{number(abs(measures.leave_one_out[i]), 3)} off it.", 1e5,
         )
     parts: list[str] = []
     weight = 0.0

@@ -20,6 +20,7 @@ METHODS = (
     ("Form", "reset", "RESET"),
     ("Form", "rainbow", "Rainbow"),
     ("Form", "harvey_collier", "Harvey-Collier"),
+    ("Form", "box_cox", "Box-Cox"),
     ("Constant variance", "breusch_pagan", "Breusch-Pagan"),
     ("Constant variance", "ncv_test_fitted", "Breusch-Pagan"),
     ("Constant variance", "white", "White"),
@@ -36,11 +37,12 @@ METHODS = (
     ("Normality", "lilliefors", "Lilliefors"),
     ("Normality", "dagostino_k2", "D'Agostino-Pearson"),
     ("Rows", "outlier_test", "Outlier test"),
+    ("Rows", "press", "PRESS"),
 )
 OTHER = "Others"
 _STATISTIC = FIRST + 6
 # Methods that come in many variants show the first here and the rest in a block of their own.
-_MANY = {"breusch_godfrey", "reset"}
+_MANY = {"breusch_godfrey", "reset", "rainbow", "goldfeld_quandt", "ljung_box", "box_pierce"}
 
 
 def write_statistics(page: Page, check: Check) -> None:

@@ -67,10 +67,12 @@ def test_check_json_against_reference(name, tmp_path):
         if entry["statistic"] is not None and "statistic" in r:
             assert entry["statistic"] == pytest.approx(as_number(r["statistic"]), rel=1e-9, abs=1e-14), entry
             compared += 1
+        if entry["method"] == "lilliefors":  # R's p is from a formula, ours from a simulated table
+            continue
         p = entry.get("unadjusted_p", entry["p"])
         if p is not None and as_number(r.get("p", "nan")) > 1e-10 and "unreliable" not in r:
             assert p == pytest.approx(as_number(r["p"]), rel=1e-6), entry
-    assert compared >= (8 if name == "syn_smalln_a" else 15)
+    assert compared >= (8 if name == "syn_smalln_a" else 30)
     dropped = {row["row"] - FIRST_ROW for row in figures["rows"]["excluded"]}
     assert dropped == set(case.facts["rows_dropped_1based"])
     assert figures["rows"]["used"] == case.facts["rows_used"]

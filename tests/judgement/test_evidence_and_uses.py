@@ -117,3 +117,8 @@ def test_every_reference_case_can_be_worded(name):
     assert len(sentences) == 3
     assert all(s.endswith(".") for s in sentences)
     assert 1 <= len(next_steps(check.evidence, nothing_left=check.fit.nothing_left())) <= 3
+
+
+def test_residuals_of_one_size_are_worded_too():
+    check = sheetfuncs.check(np.ones(12), np.tile([1.0, -1.0], 6), intercept=False)
+    assert [e.assumption for e in check.evidence] == ASSUMPTIONS

@@ -95,3 +95,13 @@ def test_shifts_against_refits(name):
         ))
         expected = (without.coefficients - fit.coefficients) / fit.standard_errors
         np.testing.assert_allclose(shifts[i], expected, rtol=tolerance, atol=tolerance)
+
+
+def test_the_one_row_off_a_perfect_line_is_named():
+    x = np.arange(12.0)
+    y = 2 + 3 * x
+    y[7] += 5
+    fit = fit_design(build_design(y, [Numeric("x", x)]))
+    flagged = rows_to_look_at(fit, row_measures(fit))
+    assert flagged[0].row == 8
+    assert "Without it the fit is perfect" in flagged[0].reason

@@ -1,0 +1,136 @@
+"""Our check beside the same job done by hand with general-purpose libraries, in one run on one machine.
+
+    python tests/benchmarks/whole_check.py [60x3 1000x5 5000x10 100000x10 1000000x10]
+
+For each size: milliseconds of each peer (statsmodels and scipy, and R where Rscript is found), of ours on the methods
+that this peer runs too, of ours in whole (every method, exact Durbin-Watson, Harvey-Collier and the row table
+included), and the two ratios against the faster peer. Only ratios of one run count: figures differ from machine to
+machine and hour to hour. R packages: lmtest, car, sandwich, nortest, MASS.
+"""
+
+from __future__ import annotations
+
+import json
+import resource
+import shutil
+import subprocess
+import sys
+import time
+from collections.abc import Callable
+from pathlib import Path
+
+import numpy as np
+
+from sheetfuncs.core.box_cox import box_cox
+from sheetfuncs.core.catalogue import all_statistics
+from sheetfuncs.core.collinearity import variance_inflation
+from sheetfuncs.core.condition import condition_indices
+from sheetfuncs.core.covariance import covariance, heteroscedasticity_consistent, newey_west
+from sheetfuncs.core.design import Design, Numeric, build_design
+from sheetfuncs.core.fit import Fit, fit_design
+from sheetfuncs.core.form import reset
+from sheetfuncs.core.goldfeld_quandt import goldfeld_quandt
+from sheetfuncs.core.harvey_collier import harvey_collier
+from sheetfuncs.core.independence import breusch_godfrey, durbin_watson, durbin_watson_test
+from sheetfuncs.core.influence import row_measures
+from sheetfuncs.core.normality import jarque_bera, shapiro_wilk
+from sheetfuncs.core.normality_tests import anderson_darling, dagostino_k2, lilliefors
+from sheetfuncs.core.portmanteau import ljung_box
+from sheetfuncs.core.rainbow import rainbow
+from sheetfuncs.core.shifts import dfbetas
+from sheetfuncs.core.threads import few_threads
+from sheetfuncs.core.variance import breusch_pagan, breusch_pagan_fitted
+from sheetfuncs.core.white import white
+
+HERE = Path(__file__).parent
+SIZES = ("60x3", "1000x5", "5000x10", "100000x10", "1000000x10")
+Method = Callable[[Fit], object]
+BOTH: tuple[Method, ...] = (
+    lambda fit: (fit.standard_errors, fit.p_values, fit.interval(), fit.r_squared),
+    lambda fit: breusch_pagan(fit), lambda fit: goldfeld_quandt(fit), lambda fit: breusch_godfrey(fit, 4),
+    lambda fit: reset(fit), lambda fit: rainbow(fit), lambda fit: lilliefors(fit),
+    lambda fit: anderson_darling(fit), lambda fit: variance_inflation(fit.basis, fit.design.groups),
+    lambda fit: row_measures(fit), lambda fit: heteroscedasticity_consistent(fit, "HC3"), lambda fit: newey_west(fit, lag=4),
+)
+STATSMODELS: tuple[Method, ...] = (
+    *BOTH, lambda fit: durbin_watson(fit), lambda fit: jarque_bera(fit), lambda fit: white(fit),
+    lambda fit: dagostino_k2(fit), lambda fit: shapiro_wilk(fit),
+)
+
+
+WHOLE: tuple[Method, ...] = (
+    BOTH[0], all_statistics, lambda fit: variance_inflation(fit.basis, fit.design.groups), row_measures,
+    lambda fit: dfbetas(fit, row_measures(fit)), lambda fit: condition_indices(fit.basis, fit.design.column_names),
+    *(lambda fit, kind=kind: covariance(fit, kind) for kind in ("HC0", "HC1", "HC2", "HC3", "HC4", "Newey-West")),
+)
+
+
+def data(n: int, k: int) -> tuple[np.ndarray, np.ndarray]:
+    """The peers' data: errors whose spread grows with the first predictor."""
+    random = np.random.default_rng(0)
+    x = random.normal(size=(n, k))
+    return 1 + x @ np.arange(1, k + 1) + random.normal(size=n) * (1 + 0.3 * np.abs(x[:, 0])), x
+
+
+def shared_with(peer: str, n: int) -> tuple[Method, ...]:
+    """The methods that this peer runs at this size."""
+    extra: list[Method] = []
+    if n <= 100_000:
+        extra.append(lambda fit: box_cox(fit))
+    if peer == "statsmodels":
+        return (*STATSMODELS, *extra, *((lambda fit: ljung_box(fit, 10),) if n <= 100_000 else ()))
+    extra += [lambda fit: durbin_watson_test(fit), lambda fit: breusch_pagan_fitted(fit), lambda f: ljung_box(f, 10)]
+    if n <= 1000:
+        extra.append(lambda fit: harvey_collier(fit))
+    if n <= 5000:
+        extra.append(lambda fit: shapiro_wilk(fit))
+    return (*BOTH, *extra)
+
+
+def milliseconds(job: Callable[[], object]) -> float:
+    """The median of runs that together last long enough for the clock to mean something."""
+    job()
+    times: list[float] = []
+    while len(times) < 3 or (sum(times) < 0.5 and len(times) < 200):
+        start = time.perf_counter()
+        job()
+        times.append(time.perf_counter() - start)
+    return 1e3 * float(np.median(times))
+
+
+def run_methods(design: Design, methods: tuple[Method, ...]) -> None:
+    with few_threads(design.columns.size):
+        fit = fit_design(design)
+        for method in methods:
+            method(fit)
+
+
+def peer_milliseconds(command: list[str]) -> float:
+    done = subprocess.run(command, capture_output=True, text=True, check=True)
+    return float(json.loads(done.stdout.strip().splitlines()[-1])["total_ms"])
+
+
+def main(sizes: list[str]) -> None:
+    peers = {"statsmodels": [sys.executable, str(HERE / "peer_statsmodels.py")]}
+    if shutil.which("Rscript"):
+        peers["R"] = ["Rscript", str(HERE / "peer.R")]
+    for size in sizes:
+        n, k = map(int, size.split("x"))
+        y, x = data(n, k)
+        if y.min() <= 0:
+            y = y - y.min() + 1  # as the peers do for Box-Cox
+        design = build_design(y, [Numeric(f"x{j + 1}", x[:, j]) for j in range(k)])
+        theirs = {name: peer_milliseconds([*command, str(n), str(k)]) for name, command in peers.items()}
+        faster = min(theirs, key=theirs.__getitem__)
+        shared = milliseconds(lambda d=design, m=shared_with(faster, n): run_methods(d, m))
+        whole = milliseconds(lambda d=design: run_methods(d, WHOLE))
+        peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1e6
+        print(
+            f"{size:>11}  " + "  ".join(f"{name} {ms:,.1f} ms" for name, ms in theirs.items())
+            + f"  |  ours, the methods of {faster}: {shared:,.2f} ms, {theirs[faster] / shared:.1f} times"
+            + f"  |  ours, whole: {whole:,.2f} ms, {theirs[faster] / whole:.1f} times  |  peak {peak:.2f} GB", flush=True,
+        )
+
+
+if __name__ == "__main__":
+    main(sys.argv[1:] or list(SIZES))
