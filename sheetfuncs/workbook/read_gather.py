@@ -183,20 +183,22 @@ class Gathering:
         self._fill_shared(strings)
         height = self._closed_height(max(0, self.used_row - self.first_row + 1))
         width = self._closed_width(max(0, self.used_column - self.first_column + 1))
-        if self.kinds.shape != (height, width):
+        rows, columns = self.kinds.shape
+        if height > rows or width > columns or 4 * height * width < 3 * rows * columns:  # else a view is as good
             self._resize(height, width)
         hidden = _resized(self._hidden, max(len(self._hidden), self.first_row - 1 + height), self.hides_by_default)
         block = Block(
-            self.numbers,
-            self.kinds,
-            dict(sorted(self.texts.items())),
+            self.numbers[:height, :width],
+            self.kinds[:height, :width],
+            {column: texts[:height] for column, texts in sorted(self.texts.items()) if column < width},
             sheet,
             self.first_row,
             self.first_column,
             hidden[self.first_row - 1 : self.first_row - 1 + height],
             date1904=date1904,
         )
-        return SheetCells(block, self.marks, self.used_row, self.used_column)
+        marks = None if self.marks is None else self.marks[:height, :width]
+        return SheetCells(block, marks, self.used_row, self.used_column)
 
     def _fill_shared(self, strings: list[str]) -> None:
         rows, columns, places = self._single
