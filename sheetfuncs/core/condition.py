@@ -65,29 +65,32 @@ def condition_indices(basis: Basis, column_names: Sequence[str], *, centred: boo
     """
     if centred and (not basis.intercept or basis.q.shape[1] == 0):
         raise NoVariationError("The centred form needs an intercept and at least one predictor.")
-    columns = basis.scaled_coordinates if centred or not basis.intercept else _with_constant(basis)
-    terms = (*column_names,) if centred or not basis.intercept else (INTERCEPT, *column_names)
-    columns = columns / np.linalg.norm(columns, axis=0)
+    without = centred or not basis.intercept
+    columns, inverse = (basis.scaled_coordinates, basis.r_inverse) if without else _with_constant(basis)
+    terms = (*column_names,) if without else (INTERCEPT, *column_names)
+    length = np.linalg.norm(columns, axis=0)
+    columns = columns / length
     if columns.shape[1] == 1:
         return Condition(terms, np.ones(1), np.ones((1, 1)), centred, ())
-    singular, _, right, work, _, info = lapack.dgejsv(np.asfortranarray(columns), joba=0, jobu=3, jobv=0, jobr=0)
+    singular, left, right, work, _, info = lapack.dgejsv(np.asfortranarray(columns), joba=0, jobu=0, jobv=0, jobr=0)
     if info != 0 or not (singular > 0).all():
         raise NoVariationError("The predictors' condition could not be computed: look for extreme values among them.")
     singular = singular * (work[0] / work[1])
-    shares = (right / singular).T ** 2
+    # v over its singular value, by the inverse: small elements of v have no digits of their own.
+    shares = ((inverse * length[:, None]) @ left).T ** 2
     proportions = shares / shares.sum(axis=0)
     indices = singular[0] / singular
     return Condition(terms, indices, proportions, centred, _near_dependencies(terms, indices, proportions, right))
 
 
-def _with_constant(basis: Basis) -> np.ndarray:
-    """(p, p) coordinates of constant and columns, each over the length of its part about the mean."""
+def _with_constant(basis: Basis) -> tuple[np.ndarray, np.ndarray]:
+    """(p, p) coordinates of constant and columns, each over the length of its part about the mean; their inverse."""
     k = basis.q.shape[1]
-    columns = np.zeros((k + 1, k + 1))
-    columns[0, 0] = 1.0
-    columns[0, 1:] = np.sqrt(basis.n) * basis.centre / basis.scale
-    columns[1:, 1:] = basis.scaled_coordinates
-    return columns
+    columns, inverse = np.eye(k + 1), np.eye(k + 1)
+    level = np.sqrt(basis.n) * basis.centre / basis.scale
+    columns[0, 1:], columns[1:, 1:] = level, basis.scaled_coordinates
+    inverse[0, 1:], inverse[1:, 1:] = -level @ basis.r_inverse, basis.r_inverse
+    return columns, inverse
 
 
 def _near_dependencies(

@@ -185,7 +185,9 @@ def _bandwidth(fit: Fit) -> float | None:
     n, columns = fit.n, fit.design.columns
     k = columns.shape[1]
     # A column of ones is the constant, whoever put it there; alone it counts.
-    wanted = np.array([k == 1 or columns[0, j] != 1.0 or not (columns[:, j] == 1.0).all() for j in range(k)], dtype=float)
+    ones = [j for j in range(k) if k > 1 and columns[0, j] == 1.0 and (columns[:, j] == 1.0).all()]
+    wanted = np.ones(k)
+    wanted[ones] = 0.0
     scores = fit.design.in_order((columns @ wanted if k else 1.0) * fit.residuals)
     size = float(np.linalg.norm(scores))
     if size == 0.0:

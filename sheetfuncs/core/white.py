@@ -8,7 +8,7 @@ import numpy as np
 from scipy.special import chdtrc, fdtrc
 
 from sheetfuncs.core.auxiliary import DETERMINED, Addition, add_columns, refused
-from sheetfuncs.core.basis import EPS, ROUNDINGS
+from sheetfuncs.core.basis import ROUNDINGS
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.products import PRODUCTS_AT_MOST, explain_by_products, number_of_products
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
@@ -68,7 +68,7 @@ def white_fitted(fit: Fit) -> Result:
         return _all_alike(named)
     level = fit.fitted_about_mean - fit.fitted_about_mean.mean()
     length = float(np.linalg.norm(level))
-    noise = ROUNDINGS * EPS * float(np.linalg.norm(fit.coefficients[int(fit.design.intercept):] * fit.basis.raw_norm))
+    noise = ROUNDINGS * fit.noise
     if length <= noise:
         return DoesNotApply(**named, reason="All fitted values are alike, so that the errors' spread has nothing to "
                                             "change with.")

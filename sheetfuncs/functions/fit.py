@@ -2,6 +2,10 @@
 
 from __future__ import annotations
 
+from sheetfuncs.core.covariance import KINDS, covariance
+from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.results import DoesNotApply
+from sheetfuncs.errors import NotApplicableError
 from sheetfuncs.functions.answers import by_row, table
 from sheetfuncs.functions.arguments import LEVEL, Argument, choice, on_rows
 from sheetfuncs.functions.declaration import AS_HIGH_AS_RESPONSE, Call, CellResult, WorksheetFunction
@@ -17,11 +21,27 @@ RESIDUALS = {
     "leave-one-out": "leave-one-out residual",
 }
 
+STANDARD_ERRORS = {kind.lower(): kind for kind in KINDS}
+
 
 def _coefficients(call: Call) -> CellResult:
-    fit = call.fit
-    low, high = fit.interval(float(call.options["level"] or 0))
+    fit, level = call.fit, float(call.options["level"] or 0)
+    kind = STANDARD_ERRORS[str(call.options["standard_errors"])]
+    if kind != "ordinary" and fit.has_error_bars:
+        return _with_robust_errors(fit, kind, level)
+    low, high = fit.interval(level)
     return table(fit.design.terms, fit.coefficients, fit.standard_errors, fit.t, fit.p_values, low, high)
+
+
+def _with_robust_errors(fit: Fit, kind: str, level: float) -> CellResult:
+    robust = covariance(fit, kind, level=level)
+    if isinstance(robust, DoesNotApply):
+        refusal = NotApplicableError(robust.reason)
+        refusal.cell_error = robust.cell_error
+        raise refusal
+    return table(
+        fit.design.terms, fit.coefficients, robust.standard_errors, robust.t, robust.p, robust.low, robust.high
+    )
 
 
 def _fitted(call: Call) -> CellResult:
@@ -49,8 +69,9 @@ FUNCTIONS = (
         "Least-squares coefficients, one row a term, the intercept first: term, estimate, standard error, t, two-sided "
         "p (t with n - p degrees of freedom), and the limits of the interval.",
         on_rows(
-            choice("standard_errors", 'How the error bars are found. "ordinary" (default): equal spread and '
-                                      "independence are assumed.", ("ordinary",)),
+            choice("standard_errors", '"ordinary" (default): equal spread, independent errors. Unequal spread: "hc3" '
+                                      '(good with few rows), "hc4" (with high leverage), or "hc0", "hc1", "hc2". '
+                                      'Unequal and related in time too: "newey-west".', tuple(STANDARD_ERRORS)),
             LEVEL,
         ),
         "table", "a table, one row a term", _coefficients,

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from sheetfuncs.core.independence import breusch_godfrey, durbin_watson, durbin_watson_test
+from sheetfuncs.core.portmanteau import autocorrelation_table, default_lags, ljung_box
 from sheetfuncs.core.quadratic_forms import durbin_watson_bounds
 from sheetfuncs.errors import TooFewRowsError
-from sheetfuncs.functions.answers import p_value, statistic
+from sheetfuncs.functions.answers import p_value, statistic, table
 from sheetfuncs.functions.arguments import INTERCEPT, Argument, choice, on_rows
 from sheetfuncs.functions.declaration import ONE_NUMBER, Call, CellResult, WorksheetFunction
 
@@ -29,6 +30,23 @@ def _durbin_watson_bounds(call: Call) -> CellResult:
     lower, upper = durbin_watson_bounds(rows, predictors, float(call.options["significance"] or 0), intercept=intercept)
     return [[lower, upper]]
 
+
+def _ljung_box(call: Call) -> CellResult:
+    return p_value(ljung_box(call.fit, _lags(call)))
+
+
+def _autocorrelation(call: Call) -> CellResult:
+    found = autocorrelation_table(call.fit, _lags(call))
+    return table(found.lags, found.r, [found.band] * len(found.r), found.bartlett_band)
+
+
+def _lags(call: Call) -> int:
+    lags = call.options["lags"]
+    return default_lags(call.fit.n) if lags is None else int(lags)
+
+
+_LAGS = Argument("lags", "How many rows back errors may be related; a whole number from 1. Default: a fifth of the "
+                         "rows, at most 10.", "whole number", optional=True, lowest=1)
 
 FUNCTIONS = (
     WorksheetFunction(
@@ -66,5 +84,18 @@ FUNCTIONS = (
         on_rows(Argument("lags", "How many rows back errors may be related; a whole number from 1. Default 1.",
                          "whole number", optional=True, default=1, lowest=1)),
         "number", ONE_NUMBER, _breusch_godfrey,
+    ),
+    WorksheetFunction(
+        "FIT_LJUNG_BOX_P", GROUP,
+        "p of the Ljung-Box test on the first autocorrelations of the residuals together. A small p is evidence that "
+        "errors are related with earlier ones.",
+        on_rows(_LAGS), "number", ONE_NUMBER, _ljung_box,
+    ),
+    WorksheetFunction(
+        "FIT_AUTOCORRELATION", GROUP,
+        "Autocorrelations of the residuals, one row a lag: lag, autocorrelation, the band within which 95 % lie where "
+        "errors are independent, and the wider band where they are related up to the lag before (Bartlett).",
+        on_rows(_LAGS), "table", "a table, one row a lag", _autocorrelation,
+        ("lag", "autocorrelation", "band", "wider band"),
     ),
 )

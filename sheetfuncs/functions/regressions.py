@@ -47,6 +47,7 @@ class Predictors:
 
     basis: Basis
     groups: tuple[Group, ...]
+    column_names: tuple[str, ...]
 
     @property
     def size(self) -> int:
@@ -122,7 +123,8 @@ def find_predictors(predictors: Block, *, intercept: bool) -> Predictors:
              for c in columns],
             intercept=intercept,
         )
-        return Predictors(factorize(design.columns, design.column_names, intercept=intercept), design.groups)
+        basis = factorize(design.columns, design.column_names, intercept=intercept)
+        return Predictors(basis, design.groups, design.column_names)
 
     found = _recent_or(content_key((predictors,), intercept), compute)
     assert isinstance(found, Predictors)

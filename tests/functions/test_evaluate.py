@@ -183,11 +183,14 @@ def test_ranges_that_are_none_are_errors_too(range_):
         assert value in ("#VALUE!", "#NUM!") or (function.returns == "text" and value.endswith("."))
 
 
+IN_TIME = ("FIT_GOLDFELD_QUANDT_P", "FIT_RAINBOW_P", "FIT_HARVEY_COLLIER_P")
+
+
 def test_order_changes_the_tests_in_time_only():
     order = [[float(-i)] for i in [3, 1, 2, 7, 5, 4, 6, 12, 9, 8, 11, 10]]
     for function in ON_PREDICTORS:
         if function.arguments[-1].name == "order":
-            in_time = function.group == "independence" or function.name in ("FIT_RAINBOW_P", "FIT_HARVEY_COLLIER_P")
+            in_time = function.group == "independence" or function.name in IN_TIME
             assert (call(function, order=order) != call(function)) == in_time, function.name
 
 

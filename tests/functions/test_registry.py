@@ -14,14 +14,15 @@ from sheetfuncs.functions.arguments import allowed
 from sheetfuncs.functions.listing import functions_markdown, functions_text
 from sheetfuncs.functions.registry import REGISTRY, WorksheetFunction
 
-WITHOUT_RESPONSE = ("FIT_VIF",)
+WITHOUT_RESPONSE = ("FIT_VIF", "FIT_CONDITION")
 HELP_LIMIT = 255  # what a spreadsheet's function wizard shows
 
 ORDER = [
     "FIT_COEFFICIENTS", "FIT_FITTED", "FIT_RESIDUALS", "FIT_PREDICT", "FIT_WHY", "FIT_RESIDUAL_MEAN",
     "FIT_DURBIN_WATSON", "FIT_DURBIN_WATSON_P", "FIT_DURBIN_WATSON_BOUNDS", "FIT_BREUSCH_GODFREY_P",
-    "FIT_BREUSCH_PAGAN_P", "FIT_NORMALITY_P", "FIT_NORMAL_SCORES",
-    "FIT_VIF", "FIT_RESET_P", "FIT_RAINBOW_P", "FIT_HARVEY_COLLIER_P", "FIT_BOX_COX",
+    "FIT_LJUNG_BOX_P", "FIT_AUTOCORRELATION",
+    "FIT_BREUSCH_PAGAN_P", "FIT_WHITE_P", "FIT_GOLDFELD_QUANDT_P", "FIT_NORMALITY_P", "FIT_NORMAL_SCORES",
+    "FIT_VIF", "FIT_CONDITION", "FIT_RESET_P", "FIT_RAINBOW_P", "FIT_HARVEY_COLLIER_P", "FIT_BOX_COX",
     "FIT_LEVERAGE", "FIT_COOKS_DISTANCE", "FIT_DFFITS", "FIT_OUTLIER_P", "FIT_PRESS", "FIT_ROWS",
 ]
 
@@ -106,7 +107,7 @@ def test_allowed_values_in_words():
     assert words["lags"] == "a whole number from 1"
     assert words["intercept"] == "TRUE or FALSE"
     assert words["variant"] == '"studentized" or "original"'
-    assert words["standard_errors"] == '"ordinary"'
+    assert words["standard_errors"] == '"ordinary", "hc0", "hc1", "hc2", "hc3", "hc4" or "newey-west"'
     assert words["predictor"] == "a header, or a column's place counted from 1"
     assert words["response"] == "a range"
 
