@@ -22,6 +22,7 @@ MEDIAN_SIZE = 0.6745
 CONVERGED = 1e-10
 FINEST = 1e-13
 MOST_STEPS = 2000
+STALLED = 100  # steps without a smaller one before, after which it goes round in circles
 
 
 @dataclass(frozen=True)
@@ -81,7 +82,7 @@ def _m_estimate(fit: Fit, method: str, tuning: dict[str, float], variant: str, w
     with few_threads(fit.basis.q.size):
         z = _basis_with_constant(fit)
         residuals, moved = fit.residuals, np.zeros(fit.p)
-        scale, weights, delta, best, steps = 0.0, np.ones(fit.n), np.inf, np.inf, 0
+        scale, weights, delta, best, steps, last = 0.0, np.ones(fit.n), np.inf, np.inf, 0, 0
         while steps < MOST_STEPS:
             steps += 1
             scale = float(np.median(np.abs(residuals))) / MEDIAN_SIZE
@@ -96,9 +97,10 @@ def _m_estimate(fit: Fit, method: str, tuning: dict[str, float], variant: str, w
             delta = float(np.linalg.norm(following - residuals) / np.linalg.norm(residuals))
             residuals = following
             # Beyond the goal it goes on as long as steps get smaller: rounding ends it, not the goal.
-            if delta <= FINEST or (best <= CONVERGED and delta >= best):
+            if delta <= FINEST or (best <= CONVERGED and delta >= best) or steps - last > STALLED:
                 break
-            best = min(best, delta)
+            if delta < best:
+                best, last = delta, steps
         u = residuals / scale
         psi, slope = residuals * weighting.weight(u), weighting.derivative(u)
         mean = float(slope.mean())
@@ -110,7 +112,7 @@ def _m_estimate(fit: Fit, method: str, tuning: dict[str, float], variant: str, w
     return RemedyFit(
         method, args, variant, fit.design, coefficients, sigma**2 * fit.unscaled_covariance, sigma, fit.df,
         fit.design.response - residuals, residuals, residuals, converged=min(best, delta) <= CONVERGED,
-        note="" if min(best, delta) <= CONVERGED else f"The iteration does not come to rest within {MOST_STEPS} steps.",
+        note="" if min(best, delta) <= CONVERGED else f"The iteration has not come to rest after {steps} steps.",
         details={"scale": scale, "weights": weights, "iterations": steps, "delta": delta},
     )
 
