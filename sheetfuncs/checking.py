@@ -11,20 +11,27 @@ from typing import Any
 import numpy as np
 
 from sheetfuncs import __version__
-from sheetfuncs.cells.block import Block, Kind
+from sheetfuncs.cells.arrays import block_of_columns, named_columns
 from sheetfuncs.cells.observations import CategoryColumn, Observations, read_observations
 from sheetfuncs.core.catalogue import all_statistics
 from sheetfuncs.core.collinearity import Inflation, variance_inflation
+from sheetfuncs.core.condition import Condition, condition_indices
+from sheetfuncs.core.covariance import KINDS, Covariance, covariance, newey_west_automatic
 from sheetfuncs.core.design import Category, Design, Numeric, build_design
 from sheetfuncs.core.fit import Fit, fit_design
 from sheetfuncs.core.influence import RowMeasures, row_measures
-from sheetfuncs.core.results import Result
+from sheetfuncs.core.results import DoesNotApply, Result
+from sheetfuncs.core.shifts import dfbetas
 from sheetfuncs.core.threads import few_threads
-from sheetfuncs.errors import ArgumentError
+from sheetfuncs.errors import ArgumentError, NoVariationError
 from sheetfuncs.judgement.evidence import Evidence, all_evidence
 from sheetfuncs.judgement.rows import FlaggedRow, rows_to_look_at
 
 SCHEMA = "sheetfuncs-check-1"
+_SCALINGS = {
+    False: "columns to unit length, intercept included, not centred",
+    True: "centred, intercept excluded, columns to unit length",
+}
 
 
 @dataclass(frozen=True)
@@ -52,7 +59,12 @@ class Settings:
 
 @dataclass(frozen=True, eq=False)
 class Check:
-    """Everything known about one regression. `to_dict()` is JSON-ready."""
+    """Everything known about one regression. `to_dict()` is JSON-ready.
+
+    covariances: of the coefficients: ordinary, HC0 to HC4, Newey-West by rule and with the lag that the data choose.
+    condition: condition indices of the columns, the constant among them; condition_centred: of the columns about their
+    means, None without an intercept. dfbetas: (n, p), by row and coefficient.
+    """
 
     settings: Settings
     observations: Observations
@@ -60,17 +72,22 @@ class Check:
     fit: Fit
     statistics: tuple[Result, ...]
     inflation: tuple[Inflation, ...]
+    covariances: tuple[Covariance | DoesNotApply, ...]
+    condition: Condition | DoesNotApply
+    condition_centred: Condition | DoesNotApply | None
     by_row: RowMeasures
+    dfbetas: np.ndarray
     flagged: tuple[FlaggedRow, ...]
     evidence: tuple[Evidence, ...]
     remarks: tuple[str, ...]
 
     def statistic(self, method: str, **args: Any) -> Result:
         """The entry of this method whose args include these; KeyError where there is none."""
-        for result in self.statistics:
-            if result.method == method and all(result.args.get(key) == value for key, value in args.items()):
-                return result
-        raise KeyError(method)
+        return _first(self.statistics, method, args)
+
+    def covariance(self, method: str, **args: Any) -> Covariance | DoesNotApply:
+        """The same among the covariances: ("hc_se", type="HC3"), ("newey_west")."""
+        return _first(self.covariances, method, args)
 
     def to_dict(self) -> dict[str, Any]:
         """The whole check as plain dicts and lists, without NaN or Infinity (None, plus a reason)."""
@@ -80,7 +97,11 @@ class Check:
             "settings": self.settings.to_dict(),
             "versions": versions(),
             "fit": self._fit_dict(),
-            "statistics": [_statistic_dict(s) for s in self.statistics] + [self._inflation_dict()],
+            "statistics": [
+                *(_statistic_dict(s) for s in self.statistics), self._inflation_dict(),
+                *(_condition_dict(c) for c in (self.condition, self.condition_centred) if c is not None),
+                *(_covariance_dict(c, self.fit) for c in self.covariances),
+            ],
             "by_row": self._row_dict(),
             "rows": {
                 "used": len(ledger.used), "hidden": ledger.hidden,
@@ -129,7 +150,8 @@ class Check:
             "row": self.design.rows, "fitted": self.fit.fitted, "residual": self.fit.residuals,
             "leverage": rows.leverage, "internally_studentized": rows.internally_studentized,
             "externally_studentized": rows.externally_studentized, "leave_one_out": rows.leave_one_out,
-            "cooks_distance": rows.cooks_distance, "dffits": rows.dffits,
+            "cooks_distance": rows.cooks_distance, "dffits": rows.dffits, "covratio": rows.covratio,
+            "dfbetas": _by_term(self.design.terms, self.dfbetas.T),
         }
 
 
@@ -145,12 +167,12 @@ def check(
     A row with a missing value anywhere is left out; `rows` of the result says which (positions from 1).
     Raises a SheetfuncsError with one sentence where there is nothing to fit.
     """
-    y_name, y_column = _named_columns(y, ["response"])[0]
-    x_columns = _named_columns(x, None if names is None else list(names))
-    order_columns = [] if order is None else _named_columns(order, ["order"])
+    y_name, y_column = named_columns(y, ["response"])[0]
+    x_columns = named_columns(x, None if names is None else list(names))
+    order_columns = [] if order is None else named_columns(order, ["order"])
     observations = read_observations(
-        _block([y_column]), _block([c for _, c in x_columns]),
-        _block([order_columns[0][1]]) if order_columns else None,
+        block_of_columns([y_column]), block_of_columns([c for _, c in x_columns]),
+        block_of_columns([order_columns[0][1]]) if order_columns else None,
         names=[y_name, *(n for n, _ in x_columns), *(n for n, _ in order_columns)], base_levels=base_levels,
     )
     return check_observations(observations, intercept=intercept, level=level, base_levels=base_levels)
@@ -180,11 +202,29 @@ def _check(observations: Observations, design: Design, settings: Settings, remar
     statistics = all_statistics(fit)
     inflation = variance_inflation(fit.basis, design.groups)
     flagged = rows_to_look_at(fit, measures)
+    condition = _condition(fit, centred=False)
+    centred = _condition(fit, centred=True) if design.intercept and design.columns.shape[1] else None
     return Check(
-        settings, observations, design, fit, statistics, inflation, measures, flagged,
-        all_evidence(fit, statistics, inflation, flagged),
-        (*remarks, *observations.remarks, *_order_remarks(observations)),
+        settings=settings, observations=observations, design=design, fit=fit, statistics=statistics,
+        inflation=inflation, covariances=_covariances(fit, settings.level), condition=condition,
+        condition_centred=centred, by_row=measures, dfbetas=dfbetas(fit, measures), flagged=flagged,
+        evidence=all_evidence(fit, statistics, inflation, flagged, centred or condition),
+        remarks=(*remarks, *observations.remarks, *_order_remarks(observations)),
     )
+
+
+def _covariances(fit: Fit, level: float) -> tuple[Covariance | DoesNotApply, ...]:
+    return (*(covariance(fit, kind, level=level) for kind in KINDS), newey_west_automatic(fit, level=level))
+
+
+def _condition(fit: Fit, *, centred: bool) -> Condition | DoesNotApply:
+    try:
+        return condition_indices(fit.basis, fit.design.column_names, centred=centred)
+    except NoVariationError as error:
+        return DoesNotApply(
+            method="condition_indices", args={"scaling": _SCALINGS[centred]}, variant=_SCALINGS[centred],
+            reason=str(error), cell_error="#NUM!",
+        )
 
 
 def design_of(observations: Observations, *, intercept: bool = True) -> Design:
@@ -231,6 +271,55 @@ def _statistic_dict(result: Result) -> dict[str, Any]:
     return entry
 
 
+def _covariance_dict(result: Covariance | DoesNotApply, fit: Fit) -> dict[str, Any]:
+    """An entry whose figures are by term, so that statistic and p of a test have none."""
+    if isinstance(result, DoesNotApply):
+        return _statistic_dict(result)
+    terms = fit.design.terms
+    return {
+        "method": result.method, "args": dict(result.args), "variant": result.kind, "statistic": None, "df": fit.df,
+        "p": None, "null": "", "note": result.note, "std_errors": _by_term(terms, result.standard_errors),
+        "t": _by_term(terms, result.t), "p_values": _by_term(terms, result.p),
+        "low": _by_term(terms, result.low), "high": _by_term(terms, result.high),
+        **result.details,
+    }
+
+
+def _condition_dict(result: Condition | DoesNotApply) -> dict[str, Any]:
+    """Indices from 1 up, and each one's share in every coefficient's variance. statistic: the largest index."""
+    if isinstance(result, DoesNotApply):
+        return _statistic_dict(result)
+    scaling = _SCALINGS[result.centred]
+    inverse_squares = result.indices**-2.0
+    return {
+        "method": "condition_indices", "args": {"scaling": scaling}, "variant": scaling, "statistic": result.number,
+        "df": None, "p": None, "null": "", "note": "A measure of near-dependency, not a test.",
+        # Columns of unit length: the squares of the singular values sum to their number.
+        "eigenvalues": inverse_squares * (len(result.terms) / inverse_squares.sum()),
+        "condition_indices": result.indices,
+        "proportions_rows_are_condition_indices": [_by_term(result.terms, row) for row in result.proportions],
+        "near_dependencies": [
+            {"condition_index": one.index, "proportions": _by_term(one.terms, one.proportions)}
+            for one in result.near_dependencies
+        ],
+    }
+
+
+def _by_term(terms: Sequence[str], values: Sequence[Any] | np.ndarray) -> dict[str, Any]:
+    """Values under their terms; a name that comes again, as of a predictor called "intercept", gets its place."""
+    named: dict[str, Any] = {}
+    for place, (term, value) in enumerate(zip(terms, values, strict=True), 1):
+        named[f"{term} (term {place})" if term in named else term] = value
+    return named
+
+
+def _first(results: Sequence[Any], method: str, args: Mapping[str, Any]) -> Any:
+    for result in results:
+        if result.method == method and all(result.args.get(key) == value for key, value in args.items()):
+            return result
+    raise KeyError(method)
+
+
 def _plain(value: Any) -> Any:
     """JSON-ready: numpy to Python, NaN and infinities to None."""
     if isinstance(value, Mapping):
@@ -244,54 +333,3 @@ def _plain(value: Any) -> Any:
     if isinstance(value, float) and not math.isfinite(value):
         return None
     return value
-
-
-def _named_columns(data: Any, names: list[str] | None) -> list[tuple[str, np.ndarray]]:
-    """(name, column) pairs of an array, a Series, a DataFrame or a list of columns."""
-    if hasattr(data, "iloc") and hasattr(data, "columns"):
-        columns = [data.iloc[:, j].to_numpy() for j in range(data.shape[1])]
-        names = names or [str(c) for c in data.columns]
-    elif hasattr(data, "iloc"):
-        columns = [data.to_numpy()]
-        names = [str(data.name)] if data.name is not None else names
-    else:
-        array = np.asarray(data) if not isinstance(data, np.ndarray) else data
-        if isinstance(data, list | tuple) and data and isinstance(data[0], list | tuple | np.ndarray):
-            columns = [np.asarray(c) for c in data]
-        elif array.ndim == 2:
-            columns = list(array.T)
-        else:
-            columns = [np.atleast_1d(array)]
-    names = names or [f"predictor {j + 1}" for j in range(len(columns))]
-    if len(names) != len(columns):
-        raise ArgumentError(f"{len(names)} names for {len(columns)} columns: give one name a column.")
-    return list(zip(names, columns, strict=True))
-
-
-def _block(columns: Sequence[np.ndarray]) -> Block:
-    """Columns of numbers, dates, booleans or text as a block of cells; missing values are blanks."""
-    height = len(columns[0])
-    if any(np.ndim(c) != 1 or len(c) != height for c in columns):
-        raise ArgumentError("Every column needs the same number of rows, in one dimension.")
-    numbers = np.full((height, len(columns)), np.nan)
-    kinds = np.zeros((height, len(columns)), np.uint8)
-    texts: dict[int, np.ndarray] = {}
-    for j, column in enumerate(columns):
-        column = np.asarray(column)
-        if column.dtype.kind in "fiu":
-            values = column.astype(np.float64)
-            finite = np.isfinite(values)
-            numbers[finite, j] = values[finite]
-            kinds[finite, j] = Kind.NUMBER
-        elif column.dtype.kind == "M":
-            present = ~np.isnat(column)
-            days = (column - np.datetime64("1899-12-30")) / np.timedelta64(1, "D")
-            numbers[present, j] = days[present]
-            kinds[present, j] = Kind.DATE
-        else:
-            cells = [None if v is None or v != v else v for v in column.tolist()]
-            one = Block.from_rows([[v] for v in cells])
-            numbers[:, j], kinds[:, j] = one.numbers[:, 0], one.kinds[:, 0]
-            if 0 in one.texts:
-                texts[j] = one.texts[0]
-    return Block(numbers, kinds, texts)

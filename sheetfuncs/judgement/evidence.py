@@ -8,18 +8,20 @@ from dataclasses import dataclass
 import numpy as np
 
 from sheetfuncs.core.collinearity import Inflation
+from sheetfuncs.core.condition import Condition, NearDependency
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.normality import all_equal, shape
-from sheetfuncs.core.results import Result
+from sheetfuncs.core.results import DoesNotApply, Result
 from sheetfuncs.core.smooth import autocorrelations, local_line, spread_by_groups
 from sheetfuncs.judgement.rows import FlaggedRow
-from sheetfuncs.judgement.words import counted, number, pvalue, times
+from sheetfuncs.judgement.words import counted, listed, number, pvalue, times
 
 CLEAR, SOME = 0.01, 0.05
 # An interval twice as wide as it would be with unrelated predictors is worth saying aloud; no published limit.
 WIDER_LIMIT = 2.0
 # Ratios that would print as "1.0 times" are said in words.
 ALIKE_BELOW = 1.05
+_MOST_NAMES, _LONG_NAME = 4, 24
 
 
 @dataclass(frozen=True)
@@ -47,16 +49,17 @@ class Evidence:
 
 
 def all_evidence(
-    fit: Fit, statistics: Sequence[Result], inflation: Sequence[Inflation], flagged: Sequence[FlaggedRow]
+    fit: Fit, statistics: Sequence[Result], inflation: Sequence[Inflation], flagged: Sequence[FlaggedRow],
+    condition: Condition | DoesNotApply,
 ) -> tuple[Evidence, ...]:
-    """One Evidence for each assumption, in the sheet's order."""
+    """One Evidence for each assumption, in the sheet's order. condition: of the slopes' columns."""
     return (
         _mean(fit, _find(statistics, "residual_mean")),
         _form(fit, _find(statistics, "reset", power=[2, 3])),
         _variance(fit, _find(statistics, "breusch_pagan", studentize=True)),
         _independence(fit, statistics),
         _normality(fit, statistics),
-        _collinearity(fit, inflation),
+        _collinearity(fit, inflation, condition),
         _rows(fit, flagged),
     )
 
@@ -172,7 +175,7 @@ def _normality(fit: Fit, statistics: Sequence[Result]) -> Evidence:
     )
 
 
-def _collinearity(fit: Fit, inflation: Sequence[Inflation]) -> Evidence:
+def _collinearity(fit: Fit, inflation: Sequence[Inflation], condition: Condition | DoesNotApply) -> Evidence:
     question = "Can the predictors be told apart?"
     bears_on = "Wide intervals for the predictors concerned; predictions inside the data are not harmed."
     test = "Variance inflation factors" + (", generalized" if fit.design.has_categories else "")
@@ -181,6 +184,8 @@ def _collinearity(fit: Fit, inflation: Sequence[Inflation]) -> Evidence:
                         bears_on)
     worst = max(inflation, key=lambda i: i.vif_per_df)
     size = f"VIF {number(worst.vif)}" + (f" for {worst.df} columns" if worst.df > 1 else "")
+    if isinstance(condition, Condition) and condition.near_dependencies:
+        size += f"; {moving_together(condition.near_dependencies[0])}"
     wider = worst.vif_per_df
     finding = (
         f"{worst.predictor}'s interval is {times(wider)} as wide as it would be if the predictors were unrelated."
@@ -189,6 +194,14 @@ def _collinearity(fit: Fit, inflation: Sequence[Inflation]) -> Evidence:
         if wider >= ALIKE_BELOW else "The predictors are nearly unrelated: no interval is widened."
     )
     return Evidence("collinearity", question, "fact", finding, test, size, bears_on)
+
+
+def moving_together(group: NearDependency) -> str:
+    """"Weight and Volume move together (condition index 45)"; of many columns the first few."""
+    names = [name if len(name) <= _LONG_NAME else f"{name[:_LONG_NAME - 1]}…" for name in group.terms[:_MOST_NAMES]]
+    more = len(group.terms) - len(names)
+    names += [f"{more} more"] if more else []
+    return f"{listed(names)} move together (condition index {number(group.index)})"
 
 
 def _rows(fit: Fit, flagged: Sequence[FlaggedRow]) -> Evidence:
