@@ -139,29 +139,33 @@ class Block:
         width = max(widths, default=0)
         if len(widths) > 1:
             rows = [[*row, *[None] * (width - len(row))] for row in rows]
-        numbers = _all_numbers(rows, height, width)
-        if numbers is not None:
-            kinds = np.full((height, width), Kind.NUMBER, np.uint8, order="F")
-            return cls(numbers, kinds, {}, **place)  # type: ignore[arg-type]
         numbers = np.full((height, width), np.nan, order="F")
         kinds = np.full((height, width), Kind.NUMBER, np.uint8, order="F")
         texts: dict[int, np.ndarray] = {}
-        for index, cells in enumerate(zip(*rows, strict=True)):
-            found = _fill_column(list(cells), numbers[:, index], kinds[:, index])
+        header = 0 if not height or set(map(type, rows[0])) <= _PLAIN else 1
+        body = _all_numbers(rows[header:], height - header, width)
+        if body is not None:
+            numbers[header:] = body
+        columns = zip(*rows, strict=True) if body is None else zip(*rows[:header], strict=True)
+        for index, cells in enumerate(columns):
+            found = _fill_column(list(cells), numbers[: len(cells), index], kinds[: len(cells), index])
             if found is not None:
-                texts[index] = found
+                texts[index] = np.append(found, np.full(height - len(cells), None, object))
         return cls(numbers, kinds, texts, **place)  # type: ignore[arg-type]
+
+
+_PLAIN = {float, int}
 
 
 def _all_numbers(rows: Sequence[Sequence[object]], height: int, width: int) -> np.ndarray | None:
     """The rows as one array where every cell is a finite number, else None."""
-    if not height or not set(map(type, chain.from_iterable(rows))) <= {float, int}:
+    if not height or not set(map(type, chain.from_iterable(rows))) <= _PLAIN:
         return None
     try:
         numbers = np.fromiter(chain.from_iterable(rows), float, height * width)
     except OverflowError:
         return None
-    return np.asfortranarray(numbers.reshape(height, width)) if np.isfinite(numbers).all() else None
+    return numbers.reshape(height, width) if np.isfinite(numbers).all() else None
 
 
 def _fill_column(cells: list[object], numbers: np.ndarray, kinds: np.ndarray) -> np.ndarray | None:
