@@ -10,6 +10,7 @@ import numpy as np
 from scipy.linalg import lapack
 
 from sheetfuncs.core.basis import EPS, ROUNDINGS, Basis
+from sheetfuncs.core.cross_products import apart
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply
 from sheetfuncs.core.threads import few_threads
@@ -46,7 +47,13 @@ def add_columns(basis: Basis, residuals: np.ndarray, columns: np.ndarray) -> Add
         kept = np.flatnonzero(after > share)
         if not kept.size:
             return Addition(0.0, float(residuals @ residuals), 0)
-        factors, pivot, tau, _, _ = lapack.dgeqp3(np.asfortranarray(left[:, kept] / after[kept]), overwrite_a=1)
+        scaled = left[:, kept] / after[kept]
+        if share[kept].max(initial=0.0) < 1e-6 * after[kept].min():
+            unexplained, _ = apart(scaled, residuals)
+            if unexplained is not None:
+                explained = residuals - unexplained
+                return Addition(float(explained @ explained), float(unexplained @ unexplained), kept.size)
+        factors, pivot, tau, _, _ = lapack.dgeqp3(np.asfortranarray(scaled), overwrite_a=1)
         diagonal = np.abs(np.diag(factors))
         limit = (share[kept] / after[kept])[pivot[: diagonal.shape[0]] - 1]
         rank = int(np.count_nonzero(diagonal > np.maximum(limit, DETERMINED)))

@@ -7,7 +7,7 @@ from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.form import reset
 from sheetfuncs.core.goldfeld_quandt import goldfeld_quandt
 from sheetfuncs.core.harvey_collier import harvey_collier
-from sheetfuncs.core.independence import breusch_godfrey, durbin_watson, durbin_watson_tests
+from sheetfuncs.core.independence import breusch_godfrey_both, durbin_watson, durbin_watson_tests
 from sheetfuncs.core.influence import outlier_test, press
 from sheetfuncs.core.mean import residual_mean
 from sheetfuncs.core.normality import jarque_bera, shapiro_wilk
@@ -22,7 +22,8 @@ from sheetfuncs.core.white import white, white_fitted
 def all_statistics(fit: Fit) -> tuple[Result, ...]:
     """Every test and figure of the fit, each a Statistic or the reason why it does not apply."""
     return (
-        residual_mean(fit), *_form(fit), *_variance(fit), *_independence(fit), *_normality(fit), outlier_test(fit), press(fit),
+        residual_mean(fit), *_form(fit), *_variance(fit), *_independence(fit), *_normality(fit), outlier_test(fit),
+        press(fit),
     )
 
 
@@ -52,8 +53,8 @@ def _independence(fit: Fit) -> list[Result]:
     return [
         durbin_watson(fit), *durbin_watson_tests(fit),
         *(
-            breusch_godfrey(fit, lags, distribution=distribution, before_first=before_first)
-            for lags in (1, 2, 4) for distribution in ("chi-square", "F") for before_first in ("zeros", "omitted")
+            result for lags in (1, 2, 4) for before_first in ("zeros", "omitted")
+            for result in breusch_godfrey_both(fit, lags, before_first=before_first)
         ),
         *(ljung_box(fit, lag) for lag in tried), *(box_pierce(fit, lag) for lag in tried),
     ]

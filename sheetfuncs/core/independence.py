@@ -8,8 +8,9 @@ from typing import Any
 import numpy as np
 from scipy.special import chdtrc, fdtrc
 
-from sheetfuncs.core.auxiliary import add_columns, refused
+from sheetfuncs.core.auxiliary import Addition, add_columns, refused
 from sheetfuncs.core.basis import ROUNDINGS, factorize
+from sheetfuncs.core.cross_products import apart
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.quadratic_forms import durbin_watson_tails
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
@@ -113,71 +114,113 @@ def breusch_godfrey(
     """
     if distribution not in _TYPES:
         raise ArgumentError(f'"{distribution}" is not a distribution of this test: use chi-square or F.')
+    return breusch_godfrey_both(fit, lags, before_first=before_first)[list(_TYPES).index(distribution)]
+
+
+def breusch_godfrey_both(fit: Fit, lags: int = 1, *, before_first: str = "zeros") -> tuple[Result, Result]:
+    """The chi-square and the F form of `breusch_godfrey`, from one auxiliary regression."""
     if before_first not in _FILLS:
         raise ArgumentError(f'"{before_first}" is not possible before the first row: use zeros or omitted.')
     if not float(lags).is_integer() or lags < 1:
         raise ArgumentError(f"{lags} is not a number of lags: use a whole number from 1 up.")
     lags = int(lags)
-    args = {"order": lags, "type": _TYPES[distribution], "fill": _FILLS[before_first]}
-    start = "zeros before the first row" if before_first == "zeros" else "first rows omitted"
-    variant = f"{lags} lag{'s' if lags > 1 else ''}, {distribution}, {start}"
-    refusal = refused(fit, "breusch_godfrey", args, variant, NO_CORRELATION)
-    if refusal:
-        return refusal
+    refusal = refused(fit, "breusch_godfrey", {}, "", NO_CORRELATION) or _too_few_rows(fit, lags, before_first)
+    sums = None
+    if refusal is None:
+        sums = _lagged_sums(fit, lags, zeros=before_first == "zeros")
+        refusal = sums if isinstance(sums, DoesNotApply) else None
+    chi_square, f = (_called(distribution, lags, before_first) for distribution in _TYPES)
+    if refusal is not None or sums is None or isinstance(sums, DoesNotApply):
+        assert refusal is not None
+        return replace(refusal, **chi_square), replace(refusal, **f)
     n = fit.n if before_first == "zeros" else fit.n - lags
-    left = n - fit.p - lags
-
-    def cannot(reason: str, cell_error: str = "#N/A") -> DoesNotApply:
-        return DoesNotApply(
-            method="breusch_godfrey", args=args, variant=variant, null=NO_CORRELATION, reason=reason,
-            cell_error=cell_error,
-        )
-
-    if left < 1:
-        rows = f"{fit.n} rows" if n == fit.n else f"{max(n, 0)} of {fit.n} rows"
-        return cannot(
-            f"{rows} are too few for {fit.p} coefficients and {lags} lag{'s' if lags > 1 else ''}: the auxiliary "
-            "regression would fit perfectly, whatever the data.", "#NUM!",
-        )
-    try:
-        part, rest, rank = _lagged_sums(fit, lags, zeros=before_first == "zeros")
-    except NumbersError:
-        return cannot("Without the first rows the predictors can no longer be told apart.")
-    if part + rest == 0.0:
-        return cannot("Without the first rows the fit is perfect, so that nothing can be tested on it.", "#NUM!")
-    if rank < lags:
-        return cannot("The lagged residuals cannot be told apart from the predictors.")
-    if distribution == "chi-square":
-        statistic = n * part / (part + rest)
-        return Statistic(
-            method="breusch_godfrey", args=args, variant=variant, statistic=statistic, df=lags,
-            p=float(chdtrc(lags, statistic)), null=NO_CORRELATION,
-        )
+    part, rest = sums
+    statistic = n * part / (part + rest)
+    first = Statistic(
+        method="breusch_godfrey", statistic=statistic, df=lags, p=float(chdtrc(lags, statistic)), null=NO_CORRELATION,
+        **chi_square,
+    )
     if rest == 0.0:
-        return cannot("The lagged residuals determine the residuals exactly, so that F has no denominator.", "#NUM!")
+        return first, replace(_cannot(
+            "The lagged residuals determine the residuals exactly, so that F has no denominator.", "#NUM!"), **f)
+    left = n - fit.p - lags
     statistic = part / lags / (rest / left)
-    return Statistic(
-        method="breusch_godfrey", args=args, variant=variant, statistic=statistic, df=(lags, left),
-        p=float(fdtrc(lags, left, statistic)), null=NO_CORRELATION,
+    return first, Statistic(
+        method="breusch_godfrey", statistic=statistic, df=(lags, left), p=float(fdtrc(lags, left, statistic)),
+        null=NO_CORRELATION, **f,
     )
 
 
-def _lagged_sums(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float, int]:
-    """Sums of squares of the residuals that design and lags explain and leave (0 if rounding); the rank of the lags."""
+def _called(distribution: str, lags: int, before_first: str) -> dict[str, Any]:
+    start = "zeros before the first row" if before_first == "zeros" else "first rows omitted"
+    return {
+        "args": {"order": lags, "type": _TYPES[distribution], "fill": _FILLS[before_first]},
+        "variant": f"{lags} lag{'s' if lags > 1 else ''}, {distribution}, {start}",
+    }
+
+
+def _cannot(reason: str, cell_error: str = "#N/A") -> DoesNotApply:
+    return DoesNotApply(
+        method="breusch_godfrey", args={}, variant="", null=NO_CORRELATION, reason=reason, cell_error=cell_error
+    )
+
+
+def _too_few_rows(fit: Fit, lags: int, before_first: str) -> DoesNotApply | None:
+    n = fit.n if before_first == "zeros" else fit.n - lags
+    if n - fit.p - lags >= 1:
+        return None
+    rows = f"{fit.n} rows" if n == fit.n else f"{max(n, 0)} of {fit.n} rows"
+    return _cannot(
+        f"{rows} are too few for {fit.p} coefficients and {lags} lag{'s' if lags > 1 else ''}: the auxiliary "
+        "regression would fit perfectly, whatever the data.", "#NUM!",
+    )
+
+
+def _lagged_sums(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float] | DoesNotApply:
+    """Sums of squares of the residuals that design and lags explain, and leave (0 if rounding); or why none."""
     e = fit.design.in_order(fit.residuals)
-    lagged = np.zeros((fit.n, lags))
+    lagged = np.zeros((fit.n, lags), order="F")
     for lag in range(1, lags + 1):
         lagged[lag:, lag - 1] = e[:-lag]
     if zeros:
         order = fit.design.order
         added = add_columns(fit.basis, fit.residuals, lagged if order is None else lagged[np.argsort(order)])
-        return added.part, 0.0 if added.fits_perfectly(fit.noise) else added.rest, added.rank
+        part = added.part
+    else:
+        if np.linalg.norm(e[lags:]) <= ROUNDINGS * fit.noise:
+            return _cannot("Without the first rows the fit is perfect, so that nothing can be tested on it.", "#NUM!")
+        quick = _omitted_by_products(fit, e, lagged, lags)
+        if quick is not None:
+            return quick
+        try:
+            part, added = _omitted_by_factors(fit, e, lagged, lags)
+        except NumbersError:
+            return _cannot("Without the first rows the predictors can no longer be told apart.")
+    if added.rank < lags:
+        return _cannot("The lagged residuals cannot be told apart from the predictors.")
+    return part, 0.0 if added.fits_perfectly(fit.noise) else added.rest
+
+
+def _omitted_by_products(fit: Fit, e: np.ndarray, lagged: np.ndarray, lags: int) -> tuple[float, float] | None:
+    """The sums without the first rows from the whole fit's basis; None where that could cost digits."""
+    q = fit.basis.q if fit.design.order is None else fit.basis.q[fit.design.order]
+    columns = np.concatenate([q[lags:], lagged[lags:]], axis=1)
+    kept = centred_kept = e[lags:]
+    if fit.basis.intercept:
+        columns -= columns.mean(axis=0)
+        centred_kept = kept - kept.mean()
+    left, _ = apart(columns, centred_kept)
+    if left is None:
+        return None
+    explained = kept - left
+    part, rest = float(explained @ explained), float(left @ left)
+    return (part, rest) if rest > 1e-12 * part else None
+
+
+def _omitted_by_factors(fit: Fit, e: np.ndarray, lagged: np.ndarray, lags: int) -> tuple[float, Addition]:
     columns = fit.design.columns if fit.design.order is None else fit.design.columns[fit.design.order]
     basis = factorize(columns[lags:], fit.design.column_names, intercept=fit.design.intercept)
-    if np.linalg.norm(e[lags:]) <= ROUNDINGS * fit.noise:
-        return 0.0, 0.0, 0
     unexplained = basis.project_out(e[lags:])
     by_design = e[lags:] - unexplained
     added = add_columns(basis, unexplained, lagged[lags:])
-    rest = 0.0 if added.fits_perfectly(fit.noise) else added.rest
-    return float(by_design @ by_design) + added.part, rest, added.rank
+    return float(by_design @ by_design) + added.part, added

@@ -9,11 +9,9 @@ from scipy.linalg import lapack
 
 from sheetfuncs.core.auxiliary import DETERMINED
 from sheetfuncs.core.basis import EPS, ROUNDINGS
+from sheetfuncs.core.cross_products import apart
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.threads import few_threads
-
-# Cross products of columns of which at least this share is left after the others lose no digit that matters.
-WELL_APART = 1e-3
 
 
 @dataclass(frozen=True)
@@ -38,29 +36,10 @@ def fit_rows(fit: Fit, rows: slice | np.ndarray) -> PartialFit:
         if basis.intercept:
             q = q - q.mean(axis=0)
             e = e - e.mean()
-        left, rank = _apart(q, e)
+        left, rank = apart(q, e)
         if left is None:
             left, rank = _by_pivoting(q, e, max(DETERMINED, ROUNDINGS * EPS * basis.amplification))
     return PartialFit(e.shape[0], rank + int(basis.intercept), float(left @ left))
-
-
-def _apart(q: np.ndarray, e: np.ndarray) -> tuple[np.ndarray | None, int]:
-    """What q (m, k) leaves of e, and k, by cross products; None where the columns are too close to each other."""
-    k = q.shape[1]
-    if k == 0:
-        return e, 0
-    gram = q.T @ q
-    length = np.sqrt(np.diag(gram))
-    if q.shape[0] < k or length.min() < WELL_APART:
-        return None, 0
-    root, info = lapack.dpotrf(gram / np.outer(length, length), lower=1)
-    if info != 0 or np.diag(root).min() < WELL_APART:
-        return None, 0
-    left = e
-    for _ in range(2):  # the second step takes back the roundings of the first
-        weights, _ = lapack.dpotrs(root, (q.T @ left) / length, lower=1)
-        left = left - q @ (weights / length)
-    return left, k
 
 
 def _by_pivoting(q: np.ndarray, e: np.ndarray, limit: float) -> tuple[np.ndarray, int]:
