@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -37,40 +38,78 @@ def goldfeld_quandt(
     place from 0) whose values sort the rows, ties in the rows' own order.
     Does not apply where a part has no degrees of freedom, cannot tell the predictors apart, or is fitted perfectly.
     """
-    column = _checked(fit, point, fraction, alternative, by)
+    return _tests(fit, point, fraction, (alternative,), by)[0]
+
+
+def goldfeld_quandt_tests(
+    fit: Fit, *, point: float = 0.5, fraction: float = 0.0, by: str | int | None = None
+) -> tuple[Result, ...]:
+    """The test against each alternative, "greater", "less" and "two-sided", from one pair of fits."""
+    return _tests(fit, point, fraction, tuple(_ALTERNATIVES), by)
+
+
+def _tests(
+    fit: Fit, point: float, fraction: float, alternatives: tuple[str, ...], by: str | int | None
+) -> tuple[Result, ...]:
+    column = _checked(fit, point, fraction, alternatives, by)
     first, second = _split(fit.n, point, fraction)
-    args: dict[str, Any] = {"point": point, "fraction": fraction, "alternative": _ALTERNATIVES[alternative]}
-    args |= {"order_by": "row order"} if column is None else {
+    sorting: dict[str, Any] = {"order_by": "row order"} if column is None else {
         "order_by": fit.design.column_names[column], "ties": "stable order"
     }
-    named: dict[str, Any] = {
-        "method": "goldfeld_quandt", "args": args, "variant": _variant(fit, first, second, alternative, column),
-        "null": SAME_SPREAD,
-    }
-    refusal = refused(fit, **named)
-    if refusal:
-        return refusal
+    named: list[dict[str, Any]] = [
+        {
+            "method": "goldfeld_quandt", "null": SAME_SPREAD,
+            "args": {"point": point, "fraction": fraction, "alternative": _ALTERNATIVES[alternative], **sorting},
+            "variant": _variant(fit, first, second, alternative, column),
+        }
+        for alternative in alternatives
+    ]
+    refusal = refused(fit, **named[0]) or _too_few(fit, first, second, named[0])
+    sums = (0.0, 0.0)
+    if refusal is None:
+        order = fit.design.order if column is None else np.argsort(fit.design.columns[:, column], kind="stable")
+        with few_threads(fit.basis.q.size):
+            found = _both_sums(fit, first, second, order, named[0])
+        if isinstance(found, DoesNotApply):
+            refusal = found
+        else:
+            sums = found
+    if refusal is not None:
+        return tuple(replace(refusal, args=one["args"], variant=one["variant"]) for one in named)
     df = (fit.n - second - fit.p, first - fit.p)
-    if min(df) < 1:
-        return DoesNotApply(
-            **named, cell_error="#NUM!",
-            reason=f"{fit.n} rows are too few: parts of {max(first, 0)} and {max(fit.n - second, 0)} rows must each "
-                   f"have more rows than the {fit.p} coefficients.",
-        )
-    order = fit.design.order if column is None else np.argsort(fit.design.columns[:, column], kind="stable")
+    statistic = sums[1] / df[0] / (sums[0] / df[1])
+    return tuple(
+        Statistic(**one, statistic=statistic, df=df, p=_p(statistic, df, alternative))
+        for one, alternative in zip(named, alternatives, strict=True)
+    )
+
+
+def _too_few(fit: Fit, first: int, second: int, named: dict[str, Any]) -> DoesNotApply | None:
+    if min(first, fit.n - second) > fit.p:
+        return None
+    return DoesNotApply(
+        **named, cell_error="#NUM!",
+        reason=f"{fit.n} rows are too few: parts of {max(first, 0)} and {max(fit.n - second, 0)} rows must each have "
+               f"more rows than the {fit.p} coefficients.",
+    )
+
+
+def _both_sums(
+    fit: Fit, first: int, second: int, order: np.ndarray | None, named: dict[str, Any]
+) -> tuple[float, float] | DoesNotApply:
+    """Residual sums of squares of the earlier and the later part, or why there are none."""
     sums = []
     for rows, where in ((slice(0, first), "earlier"), (slice(second, fit.n), "later")):
         try:
             sums.append(_residual_sum(fit, rows if order is None else order[rows]))
-        except NumbersError as refusal_of_part:
-            return DoesNotApply(**named, reason=f"The {where} part cannot be fitted on its own: {refusal_of_part}")
+        except NumbersError as refusal:
+            return DoesNotApply(**named, reason=f"The {where} part cannot be fitted on its own: {refusal}")
         if sums[-1] <= (ROUNDINGS * fit.noise) ** 2:
             return DoesNotApply(
                 **named, cell_error="#NUM!",
                 reason=f"The {where} part is fitted perfectly, so that its errors show no spread to compare.",
             )
-    statistic = sums[1] / df[0] / (sums[0] / df[1])
-    return Statistic(**named, statistic=statistic, df=df, p=_p(statistic, df, alternative))
+    return sums[0], sums[1]
 
 
 def _p(statistic: float, df: tuple[int, int], alternative: str) -> float:
@@ -78,9 +117,11 @@ def _p(statistic: float, df: tuple[int, int], alternative: str) -> float:
     return {"greater": greater, "less": less, "two-sided": min(1.0, 2.0 * min(greater, less))}[alternative]
 
 
-def _checked(fit: Fit, point: float, fraction: float, alternative: str, by: str | int | None) -> int | None:
+def _checked(
+    fit: Fit, point: float, fraction: float, alternatives: tuple[str, ...], by: str | int | None
+) -> int | None:
     """The column that sorts the rows, None for time order. Raises ArgumentError for options that cannot be."""
-    if alternative not in _ALTERNATIVES:
+    for alternative in set(alternatives) - set(_ALTERNATIVES):
         raise ArgumentError(f'"{alternative}" is not an alternative: use greater, less or two-sided.')
     if not 0.0 < point < 1.0:
         raise ArgumentError(f"The rows cannot be split at {point:g}: use a share between 0 and 1.")
@@ -112,12 +153,11 @@ def _variant(fit: Fit, first: int, second: int, alternative: str, column: int | 
 
 def _residual_sum(fit: Fit, rows: slice | np.ndarray) -> float:
     """Residual sum of squares of these rows' own fit; from cross products where they are good enough for it."""
-    with few_threads(fit.basis.q.size):
-        found = _from_cross_products(fit, rows)
-        if found is not None:
-            return found
-        basis = factorize(fit.design.columns[rows], fit.design.column_names, intercept=fit.design.intercept)
-        left = basis.project_out(fit.residuals[rows])
+    found = _from_cross_products(fit, rows)
+    if found is not None:
+        return found
+    basis = factorize(fit.design.columns[rows], fit.design.column_names, intercept=fit.design.intercept)
+    left = basis.project_out(fit.residuals[rows])
     return float(left @ left)
 
 

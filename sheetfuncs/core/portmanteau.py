@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -48,16 +49,21 @@ def ljung_box(fit: Fit, lags: int) -> Result:
     Null: the errors are not correlated with any of the `lags` before. The residuals' mean is taken off, which matters
     only without an intercept. Nothing is taken off the degrees of freedom for the coefficients.
     """
-    def figure(r: np.ndarray, n: int) -> float:
-        return n * (n + 2.0) * float(np.sum(r**2 / (n - np.arange(1.0, r.shape[0] + 1.0))))
-
-    return _portmanteau(fit, "ljung_box", lags, figure)
+    return _portmanteau(fit, "ljung_box", (lags,))[0]
 
 
 def box_pierce(fit: Fit, lags: int) -> Result:
     """Box-Pierce test (1970, JASA 65:1509-1526): n times the sum of r_k^2, chi-square(lags); as `ljung_box`, which is
     nearer to its distribution with few rows."""
-    return _portmanteau(fit, "box_pierce", lags, lambda r, n: n * float(r @ r))
+    return _portmanteau(fit, "box_pierce", (lags,))[0]
+
+
+def portmanteau_tests(fit: Fit, lags: Sequence[int]) -> tuple[Result, ...]:
+    """`ljung_box`, then `box_pierce`, each at all these numbers of lags, from one set of autocorrelations."""
+    whole = tuple(_whole(count) for count in lags)
+    possible = max((count for count in whole if count < fit.n), default=0)
+    r = _autocorrelations(fit, possible) if possible and not fit.nothing_left() else None
+    return (*_portmanteau(fit, "ljung_box", whole, r), *_portmanteau(fit, "box_pierce", whole, r))
 
 
 def autocorrelation_table(fit: Fit, lags: int) -> Autocorrelations:
@@ -79,8 +85,11 @@ def autocorrelation_table(fit: Fit, lags: int) -> Autocorrelations:
     return Autocorrelations(np.arange(1, lags + 1), r, float(half), half * np.sqrt(1.0 + 2.0 * before))
 
 
-def _portmanteau(fit: Fit, method: str, lags: int, figure: Any) -> Result:
-    lags = _whole(lags)
+def _portmanteau(fit: Fit, method: str, lags: Sequence[int], known: np.ndarray | None = None) -> tuple[Result, ...]:
+    return tuple(_portmanteau_test(fit, method, _whole(count), known) for count in lags)
+
+
+def _portmanteau_test(fit: Fit, method: str, lags: int, known: np.ndarray | None) -> Result:
     named: dict[str, Any] = {
         "method": method, "args": {"lag": lags, "fitdf": 0}, "variant": f"{lags} lag{'s' if lags > 1 else ''}",
         "null": NO_CORRELATION,
@@ -88,12 +97,14 @@ def _portmanteau(fit: Fit, method: str, lags: int, figure: Any) -> Result:
     refusal = refused(fit, **named)
     if refusal:
         return refusal
-    if lags >= fit.n:
-        return DoesNotApply(**named, reason=_too_few(fit.n, lags), cell_error="#NUM!")
-    r = _autocorrelations(fit, lags)
+    n = fit.n
+    if lags >= n:
+        return DoesNotApply(**named, reason=_too_few(n, lags), cell_error="#NUM!")
+    r = _autocorrelations(fit, lags) if known is None else known[:lags]
     if r is None:
         return DoesNotApply(**named, reason=_ALIKE, cell_error="#NUM!")
-    statistic = figure(r, fit.n)
+    weights = (n + 2.0) / (n - np.arange(1.0, lags + 1.0)) if method == "ljung_box" else np.ones(lags)
+    statistic = n * float(weights @ r**2)
     return Statistic(**named, statistic=statistic, df=lags, p=float(chdtrc(lags, statistic)), note=_NOTE)
 
 

@@ -8,7 +8,13 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from reference_checks import FITTED, NOISE, fit_of, fitted, made_fit, r_results, same
 
-from sheetfuncs.core.portmanteau import autocorrelation_table, box_pierce, default_lags, ljung_box
+from sheetfuncs.core.portmanteau import (
+    autocorrelation_table,
+    box_pierce,
+    default_lags,
+    ljung_box,
+    portmanteau_tests,
+)
 from sheetfuncs.errors import ArgumentError, NoVariationError
 
 TESTS = {"ljung_box": ljung_box, "box_pierce": box_pierce}
@@ -65,6 +71,20 @@ def test_units_and_offsets_of_the_response_do_not_matter(seed, n, unit, offset):
     np.testing.assert_allclose(
         autocorrelation_table(other, 5).r, autocorrelation_table(plain, 5).r, rtol=1e-8, atol=1e-9
     )
+
+
+@pytest.mark.parametrize("intercept", [True, False])
+def test_all_at_once_are_the_same(intercept):
+    fit, lags = made_fit(40, 2, intercept=intercept), (10, 1, 30, 4, 40)
+    together = portmanteau_tests(fit, lags)
+    alone = (*(ljung_box(fit, lag) for lag in lags), *(box_pierce(fit, lag) for lag in lags))
+    for ours, expected in zip(together, alone, strict=True):
+        assert (ours.method, ours.args, ours.reason) == (expected.method, expected.args, expected.reason)
+        if expected.applies:
+            assert (ours.statistic, ours.p) == pytest.approx((expected.statistic, expected.p), rel=1e-10)
+    perfect = fitted(NOISE[0])
+    assert {one.reason for one in portmanteau_tests(perfect, (1, 2))} == {perfect.nothing_left()}
+    assert portmanteau_tests(fit, ()) == ()
 
 
 def test_time_order_is_that_of_sorted_rows():

@@ -9,7 +9,7 @@ from hypothesis import strategies as st
 from reference_checks import FITTED, NOISE, fit_of, fitted, made_fit, r_results, same, says_nothing
 from scipy.special import fdtr, fdtrc
 
-from sheetfuncs.core.goldfeld_quandt import goldfeld_quandt
+from sheetfuncs.core.goldfeld_quandt import goldfeld_quandt, goldfeld_quandt_tests
 from sheetfuncs.errors import ArgumentError
 
 # R divides by degrees of freedom that count columns which a part cannot tell apart; those parts are refused here.
@@ -109,6 +109,13 @@ def test_a_part_that_nearly_fits_or_nearly_repeats_keeps_its_digits():
     ours = goldfeld_quandt(fit_of(y, x))
     assert ours.statistic == pytest.approx(halves[1].rss / halves[0].rss, rel=1e-7)
     assert ours.p < 1e-50
+
+
+def test_all_alternatives_at_once_are_the_same():
+    for fit in (made_fit(31, 2), made_fit(6, 2), fitted(NOISE[0]), fitted("syn_lev1_a")):
+        together = goldfeld_quandt_tests(fit, fraction=0.1, by=0)
+        alone = [goldfeld_quandt(fit, fraction=0.1, by=0, alternative=a) for a in ("greater", "less", "two-sided")]
+        assert list(together) == alone
 
 
 def test_the_variant_names_sides_and_what_is_left_out():
