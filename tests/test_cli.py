@@ -137,6 +137,14 @@ def test_names_letters_and_an_order_choose_columns(orders):
     assert not list(orders.parent.glob("*-checked*"))
 
 
+def test_a_date_column_serves_as_predictor_when_named(tmp_path):
+    book = Path(shutil.copy(templates_folder() / "dryer-gas-time-order.xlsx", tmp_path))
+    figures = json.loads(run("check", book, "--no-sheet", "--json", "-").stdout)
+    assert (figures["settings"]["order"], len(figures["settings"]["predictors"])) == ("Date", 3)
+    figures = json.loads(run("check", book, "--no-sheet", "--date-predictor", "Date", "--json", "-").stdout)
+    assert "Date" in figures["settings"]["predictors"]
+
+
 def test_json_goes_to_a_file_too(orders):
     target = orders.parent / "figures.json"
     run("check", orders, "--no-sheet", "--json", target)

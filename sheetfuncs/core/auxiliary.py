@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 from scipy.linalg import lapack
 
-from sheetfuncs.core.basis import EPS, ROUNDINGS, Basis
+from sheetfuncs.core.basis import EPS, ROUNDINGS, Basis, column_lengths
 from sheetfuncs.core.cross_products import apart
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply
@@ -39,15 +39,15 @@ def add_columns(basis: Basis, residuals: np.ndarray, columns: np.ndarray) -> Add
     other columns determine adds nothing, and degrees of freedom are the rank and not the number of columns.
     """
     with few_threads(basis.q.size + columns.size):
-        before = np.linalg.norm(columns, axis=0)
+        before = column_lengths(columns)
         left = basis.project_out(columns)
-        after = np.linalg.norm(left, axis=0)
+        after = column_lengths(left)
         # Roundings of a column, relative to what is left of it.
         share = np.maximum(DETERMINED, ROUNDINGS * EPS * basis.amplification) * before
         kept = np.flatnonzero(after > share)
         if not kept.size:
             return Addition(0.0, float(residuals @ residuals), 0)
-        scaled = left[:, kept] / after[kept]
+        scaled = left / after if kept.size == after.size else left[:, kept] / after[kept]
         if share[kept].max(initial=0.0) < 1e-6 * after[kept].min():
             unexplained, _ = apart(scaled, residuals)
             if unexplained is not None:

@@ -126,9 +126,9 @@ def factorize(columns: np.ndarray, names: Sequence[str], *, intercept: bool) -> 
         )
     with few_threads(columns.size):
         with np.errstate(over="ignore", invalid="ignore"):
-            raw_norm = np.linalg.norm(columns, axis=0)
+            raw_norm = column_lengths(columns)
             work, centre = centred(columns) if intercept else (columns.copy(), np.zeros(k))
-            scale = np.linalg.norm(work, axis=0)
+            scale = column_lengths(work)
         if not np.isfinite(raw_norm).all():
             raise NoVariationError(
                 "The numbers are too large for their squares to be computed: express them in a larger unit."
@@ -148,6 +148,11 @@ def centred(values: np.ndarray) -> tuple[np.ndarray, np.ndarray | float]:
     second = left.mean(axis=0)
     left -= second
     return left, first + second
+
+
+def column_lengths(columns: np.ndarray) -> np.ndarray:
+    """Euclidean length of each column (n, k), (k,); infinite where the squares are too large."""
+    return np.sqrt([column @ column for column in columns.T]) if columns.shape[1] else np.empty(0)
 
 
 def _pivoted_qr(work: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:

@@ -5,14 +5,14 @@ from __future__ import annotations
 from sheetfuncs.core.box_cox import box_cox
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.form import reset
-from sheetfuncs.core.goldfeld_quandt import goldfeld_quandt
+from sheetfuncs.core.goldfeld_quandt import goldfeld_quandt_tests
 from sheetfuncs.core.harvey_collier import harvey_collier
 from sheetfuncs.core.independence import breusch_godfrey_both, durbin_watson, durbin_watson_tests
 from sheetfuncs.core.influence import outlier_test, press
 from sheetfuncs.core.mean import residual_mean
 from sheetfuncs.core.normality import jarque_bera, shapiro_wilk
 from sheetfuncs.core.normality_tests import anderson_darling, dagostino_k2, jarque_bera_small_sample, lilliefors
-from sheetfuncs.core.portmanteau import box_pierce, default_lags, ljung_box
+from sheetfuncs.core.portmanteau import default_lags, portmanteau_tests
 from sheetfuncs.core.rainbow import rainbow
 from sheetfuncs.core.results import Result
 from sheetfuncs.core.variance import breusch_pagan, breusch_pagan_fitted
@@ -40,10 +40,7 @@ def _variance(fit: Fit) -> list[Result]:
     return [
         breusch_pagan(fit, studentize=True), breusch_pagan(fit, studentize=False), breusch_pagan_fitted(fit),
         white(fit), white_fitted(fit),
-        *(
-            goldfeld_quandt(fit, fraction=fraction, alternative=alternative)
-            for fraction in (0.0, 0.2) for alternative in ("greater", "less", "two-sided")
-        ),
+        *goldfeld_quandt_tests(fit), *goldfeld_quandt_tests(fit, fraction=0.2),
     ]
 
 
@@ -56,7 +53,7 @@ def _independence(fit: Fit) -> list[Result]:
             result for lags in (1, 2, 4) for before_first in ("zeros", "omitted")
             for result in breusch_godfrey_both(fit, lags, before_first=before_first)
         ),
-        *(ljung_box(fit, lag) for lag in tried), *(box_pierce(fit, lag) for lag in tried),
+        *portmanteau_tests(fit, tried),
     ]
 
 

@@ -123,7 +123,9 @@ def build_design(
             )
         pieces.append(piece)
         groups.append(Group(predictor.name, start, len(names)))
-    x = np.hstack(pieces) if pieces else np.empty((n, 0))
+    x = np.empty((n, len(names)), order="F")  # column by column, as everything reads it
+    for piece, group in zip(pieces, groups, strict=True):
+        x[:, group.start:group.stop] = piece
     p = x.shape[1] + int(intercept)
     if p == 0:
         raise ArgumentError("There is nothing to fit: give at least one predictor, or an intercept.")

@@ -89,6 +89,8 @@ def _powers(base: np.ndarray, powers: Sequence[int]) -> np.ndarray:
 
 def _numeric_columns(fit: Fit) -> np.ndarray:
     """Predictors of numbers; a category's 0/1 columns have no powers."""
+    if not fit.design.base_levels:
+        return fit.design.columns
     categories = {name for name, _ in fit.design.base_levels}
     kept = [group.start for group in fit.design.groups if group.name not in categories]
     return fit.design.columns[:, kept]

@@ -132,7 +132,7 @@ def _read_and_check(request: Request, step: Step) -> Check:
     with open_book(request.book) as book:
         selection = read_selection(
             book, find_selection(book, request.range_text), response=request.response, predictors=request.predictors,
-            order=request.order,
+            order=request.order, date_predictors=request.date_predictors,
         )
     observations = read_observations(
         selection.response, selection.predictors, selection.order, dates="check",
