@@ -51,6 +51,7 @@ def resolve(source: str, target: str) -> str:
 
 
 def relationships_part(part: str) -> str:
+    """The name of the part that holds a part's relationships."""
     folder, name = posixpath.split(part)
     return posixpath.join(folder, "_rels", f"{name}.rels")
 

@@ -90,6 +90,7 @@ def child(parent: etree._Element, tag: str) -> etree._Element | None:
 
 
 def children(parent: etree._Element | None, tag: str) -> list[etree._Element]:
+    """The children of that name in the main namespace; none where there is no parent."""
     return [] if parent is None else parent.findall(main(tag))
 
 
