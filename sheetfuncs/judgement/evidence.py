@@ -198,10 +198,15 @@ def _collinearity(fit: Fit, inflation: Sequence[Inflation], condition: Condition
 
 def moving_together(group: NearDependency) -> str:
     """"Weight and Volume move together (condition index 45)"; of many columns the first few."""
-    names = [name if len(name) <= _LONG_NAME else f"{name[:_LONG_NAME - 1]}…" for name in group.terms[:_MOST_NAMES]]
-    more = len(group.terms) - len(names)
-    names += [f"{more} more"] if more else []
-    return f"{listed(names)} move together (condition index {number(group.index)})"
+    names = [name if len(name) <= _LONG_NAME else f"{name[:_LONG_NAME - 1]}…" for name in group.terms]
+    return f"{_some(names)} move together (condition index {number(group.index)})"
+
+
+def _some(things: Sequence[object]) -> str:
+    """All of a few, or the first of many and how many more."""
+    shown = [str(thing) for thing in (things if len(things) <= _MOST_NAMES + 1 else things[:_MOST_NAMES])]
+    more = len(things) - len(shown)
+    return listed([*shown, f"{more} more"] if more else shown)
 
 
 def _rows(fit: Fit, flagged: Sequence[FlaggedRow]) -> Evidence:
@@ -212,8 +217,7 @@ def _rows(fit: Fit, flagged: Sequence[FlaggedRow]) -> Evidence:
         return Evidence("rows", question, "not tested", fit.nothing_left(), test, "", bears_on)
     if not flagged:
         return Evidence("rows", question, "fact", "No row stands out.", test, "", bears_on)
-    rows = ", ".join(str(f.row) for f in flagged[:4]) + (", ..." if len(flagged) > 4 else "")
-    finding = f"{counted(len(flagged), 'row deserves', 'rows deserve')} a look: {rows}."
+    finding = f"{counted(len(flagged), 'row deserves', 'rows deserve')} a look: {_some([f.row for f in flagged])}."
     first = flagged[0]
     size = f"row {first.row}: {first.reason[:1].lower()}{first.reason[1:].partition(';')[0]}"
     return Evidence("rows", question, "fact", finding, test, size, bears_on)

@@ -54,10 +54,12 @@ def _series(title: str, series: Series, kind: str) -> dict[str, Any]:
         "categories": _cells(title, series.x), "values": _cells(title, series.y),
         **_look(series.look, kind),
     }
-    if series.labelled:
+    if series.labels:
+        # Written out: hosts disagree about what the category of a scattered point is.
         options["data_labels"] = {
-            "category": True, "value": False, "position": "above" if kind == "scatter" else "outside_end",
+            "value": True, "position": "above" if kind == "scatter" else "outside_end",
             "font": {"name": looks.FONT, "size": 8, "color": looks.INK},
+            "custom": [{"value": label} if label else {"delete": True} for label in series.labels],
         }
     return options
 

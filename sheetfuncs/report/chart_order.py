@@ -15,6 +15,7 @@ from sheetfuncs.report.thinning import MOST_IN_LINE, STRETCHES, stretch_means
 
 _FEWEST = 8
 _MOST_LAGS = 12
+_STEPS = (0.02, 0.05, 0.1, 0.25)
 _MOST_MARKED = 250
 
 
@@ -55,7 +56,7 @@ def autocorrelation_chart(check: Check) -> Sketch | None:
         return None
     values = autocorrelations(check.design.in_order(fit.residuals), lags)
     limit = 1.96 / np.sqrt(fit.n)
-    step = 0.5 if max(np.abs(values).max(), limit) > 0.5 else 0.25
+    step = next((step for step in _STEPS if max(np.abs(values).max(), limit) <= 2 * step), 0.5)
     return Sketch(
         "columns", "How much does an error resemble the one some rows before it?",
         "Columns within the dashed limits, ±1.96/√n, are what unrelated errors give; the limits hold for each column "

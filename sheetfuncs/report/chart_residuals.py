@@ -31,7 +31,9 @@ def form_chart(check: Check) -> Sketch | None:
     name = response_name(check)
     rows = shown_rows(check)
     x, y = fit.fitted[rows], fit.residuals[rows]
-    figures = [numbers("Fitted value", x), numbers("Residuals", y)]
+    # Rows to look at stand in a series of their own alone: some hosts would draw the plain point over their mark.
+    plain = ~np.isin(rows, [flag.index for flag in check.flagged])
+    figures = [numbers("Fitted value", x[plain]), numbers("Residuals", y[plain])]
     lines = [Line(0, 1, points_look(rows.size))]
     if check.flagged:
         index = np.array([flag.index for flag in check.flagged])

@@ -18,6 +18,7 @@ from sheetfuncs.report.thinning import points_look, shown_rows, thinning_note
 
 _FEWEST = 5
 _MOST_COLUMNS = 250
+_MOST_LABELS = 6
 MOST_BARS = 8
 
 
@@ -51,21 +52,25 @@ def rows_chart(check: Check) -> Sketch | None:
         "as much as chance alone moves it." + note + thinning_note(check),
     )
     numbers_of = check.design.rows
+    farthest = set(marked[np.argsort(-np.abs(shifts[marked]), kind="stable")[:_MOST_LABELS]])
+
+    def labels(of: np.ndarray) -> tuple[str, ...]:
+        return tuple(str(numbers_of[i]) if i in farthest else "" for i in of)
+
     if rows.size <= _MOST_COLUMNS:
         return Sketch(
             "columns", *common,
             (texts("Worksheet row", [str(row) for row in numbers_of[rows]]),
              numbers("Rows", [np.nan if i in flagged else shifts[i] for i in rows]),
              numbers("Rows to look at", [shifts[i] if i in flagged else np.nan for i in rows])),
-            (Line(0, 1, "columns"),
-             *((Line(0, 2, "flagged columns", labelled=marked.size <= 6),) if marked.size else ())),
+            (Line(0, 1, "columns"), *((Line(0, 2, "flagged columns", labels(rows)),) if marked.size else ())),
             Axis("Worksheet row", text=True), axis,
         )
     return Sketch(
         "scatter", *common,
         (counts("Worksheet row", numbers_of[plain]), numbers("Rows", shifts[plain]),
          counts("Worksheet row", numbers_of[marked]), numbers("Rows to look at", shifts[marked])),
-        (Line(0, 1, points_look(plain.size)), *((Line(2, 3, "flagged", labelled=True),) if marked.size else ())),
+        (Line(0, 1, points_look(plain.size)), *((Line(2, 3, "flagged", labels(marked)),) if marked.size else ())),
         nice_axis("Worksheet row", numbers_of[rows]), axis,
     )
 

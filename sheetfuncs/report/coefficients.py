@@ -2,14 +2,17 @@
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 
 from sheetfuncs.checking import Check
-from sheetfuncs.core.design import INTERCEPT
 from sheetfuncs.judgement.words import number
 from sheetfuncs.report import style as looks
 from sheetfuncs.report.formats import PVALUE, digits_format, estimate_format
 from sheetfuncs.report.layout import COUNT, FIRST, Head, Page
+from sheetfuncs.report.robust_errors import write_other_error_bars
+from sheetfuncs.report.terms import term_label
 
 _TERM = 5
 _PERCENT = 100.0
@@ -24,7 +27,9 @@ def write_fit(page: Page, check: Check) -> None:
         f"says by how much {check.settings.response} changes when its predictor grows by one and the others stay.",
     )
     _write_terms(page, check)
-    page.gap(6.0)
+    if check.fit.has_error_bars:
+        write_other_error_bars(page, check)
+    page.subheading("The fit as a whole")
     for label, value, value_format, note in _facts(check):
         page.put(FIRST, label, looks.TEXT, span=_TERM)
         page.number(FIRST + _TERM, value, value_format)
@@ -39,17 +44,16 @@ def write_fit(page: Page, check: Check) -> None:
 
 def _write_terms(page: Page, check: Check) -> None:
     fit = check.fit
-    labels = ("Estimate", "From", "To", "Standard error", "t", "df", "p")
+    labels = ("Estimate", "From", "To", "Standard\nerror", "t", "df", "p")
     page.table_head([
         Head(FIRST, _TERM, "Term"),
         *(Head(FIRST + _TERM + i, 1, label, right=True) for i, label in enumerate(labels)),
     ])
     low, high = fit.interval(check.settings.level)
-    for j, term in enumerate(check.design.terms):
+    for j in range(fit.p):
         error = float(fit.standard_errors[j])
         one_format = estimate_format(float(fit.coefficients[j]), error if fit.has_error_bars else np.nan)
-        label = "Intercept" if check.design.intercept and j == 0 and term == INTERCEPT else term
-        page.put(FIRST, label, looks.WRAPPED, span=_TERM)
+        page.put(FIRST, term_label(check, j), looks.WRAPPED, span=_TERM)
         page.number(FIRST + _TERM, fit.coefficients[j], one_format, looks.NUMBER.but(bold=True))
         page.number(FIRST + _TERM + 1, low[j], one_format)
         page.number(FIRST + _TERM + 2, high[j], one_format)
@@ -81,13 +85,37 @@ def _facts(check: Check) -> list[tuple[str, float, str, str]]:
     return [
         *facts,
         ("R², adjusted", fit.adjusted_r_squared, "0.0000", "For the number of coefficients."),
+        ("R² on left-out rows", *_left_out(check)),
         ("Residual standard deviation", fit.sigma, digits_format(fit.sigma, 4),
          f"In the response's unit; the root of the residuals' squares over {fit.df:,}."),
+        ("Residual mean", *_mean(check)),
         ("F", f, digits_format(f, 4),
          f"All predictors together, {k} and {df:,} degrees of freedom, {_p_text(p)}." if k else "No predictor."),
         ("AIC", fit.aic, digits_format(fit.aic, 5), "Akaike's criterion; the error variance counts as a parameter."),
         ("BIC", fit.bic, digits_format(fit.bic, 5), "Schwarz's criterion; the error variance counts as a parameter."),
     ]
+
+
+def _left_out(check: Check) -> tuple[float, str, str]:
+    press = check.statistic("press")
+    if press.statistic is None:
+        return math.nan, "0", press.reason or ""
+    share = float(press.details["predicted_r_squared"])
+    worse = "" if share >= 0 else " Negative: the response's mean predicts better." if check.design.intercept else (
+        " Negative: zero predicts better.")
+    return share, "0.0000", (
+        "As R², each row predicted by the fit of all others. PRESS, the sum of their squared errors, is "
+        f"{number(press.statistic, 4)}.{worse}"
+    )
+
+
+def _mean(check: Check) -> tuple[float, str, str]:
+    mean = float(check.statistic("residual_mean").statistic or 0.0)
+    return mean, digits_format(mean, 3), (
+        "Zero but for rounding, whatever the data: the intercept takes up any mean." if check.design.intercept else
+        f"{number(abs(mean) / check.fit.sigma, 2)} of the residual standard deviation; without an intercept the fit "
+        "does not hold it at zero."
+    )
 
 
 def _p_text(p: float) -> str:

@@ -88,14 +88,15 @@ class Series:
     """One series of a chart.
 
     name: the cell that holds it. look: "points", "many points", "flagged", "joined points", "course" (of many values),
-    "line", "smooth", "limit", "columns" or "flagged columns". labelled: each point shows its x value beside it.
+    "line", "smooth", "limit", "columns" or "flagged columns". labels: what stands beside each point,
+    "" for nothing.
     """
 
     name: Area
     x: Area
     y: Area
     look: str
-    labelled: bool = False
+    labels: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True)

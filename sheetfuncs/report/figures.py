@@ -28,7 +28,7 @@ class FigureBlock:
             self.page.put(self.column, sketch.question, looks.QUIET_TEXT.but(bold=True))
         areas = [self._write(figures) for figures in sketch.figures]
         series = tuple(
-            Series(areas[line.y][0], areas[line.x][1], areas[line.y][1], line.look, line.labelled)
+            Series(areas[line.y][0], areas[line.x][1], areas[line.y][1], line.look, line.labels)
             for line in sketch.lines
         )
         return Chart(

@@ -18,7 +18,7 @@ LAST = FIRST + COUNT - 1
 COLUMN_PIXELS, MARGIN_PIXELS = 82.0, 16.0
 ROW_POINTS = 15.0
 _LINE, _PADDING = 1.27, 2.6
-_CELL_PADDING = 10.0
+_CELL_PADDING = 8.0
 _INDENT = 9.0
 MISSING = "–"
 # A heading, its note, a gap, column labels and two lines of the table stay on one printed page.
@@ -98,6 +98,7 @@ class Page:
         self.gap(3.0)
 
     def subheading(self, title: str) -> None:
+        self.kept.append((self.row, self.row + _TOGETHER - 1))
         self.gap(6.0)
         self.put(FIRST, title, looks.STRONG, span=COUNT)
         self.next()

@@ -10,6 +10,9 @@ import numpy as np
 from sheetfuncs.report.elements import Axis
 from sheetfuncs.report.formats import digits_format
 
+# Below this, a step would have no digits of its own.
+_SMALLEST = 1e-290
+
 
 def nice_axis(title: str, values: Iterable[float], *, zero: bool = False, steps: int = 6) -> Axis:
     """An axis whose ends and steps are round numbers just outside the values; zero: it also shows zero."""
@@ -20,6 +23,8 @@ def nice_axis(title: str, values: Iterable[float], *, zero: bool = False, steps:
     if zero:
         low, high = min(low, 0.0), max(high, 0.0)
     span = high - low or abs(high) or 1.0
+    if span < _SMALLEST:
+        return Axis(title)
     step = _round_step(span / steps)
     first, last = math.floor(low / step + 1e-9) * step, math.ceil(high / step - 1e-9) * step
     if first == last:

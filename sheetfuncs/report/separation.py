@@ -10,6 +10,7 @@ from sheetfuncs.judgement.words import listed, times
 from sheetfuncs.report import style as looks
 from sheetfuncs.report.formats import digits_format
 from sheetfuncs.report.layout import COUNT, FIRST, Head, Page
+from sheetfuncs.report.near_dependencies import write_near_dependencies
 
 # Below this a partial correlation widens an interval by less than a sixth; naming the predictor would mislead.
 _NAMED_FROM = 0.5
@@ -19,12 +20,17 @@ _NAME = 5
 
 
 def write_separation(page: Page, check: Check) -> None:
-    """The section: a line a predictor."""
+    """The section: a line a predictor, then a line a group of columns."""
     page.section("separation", "Predictors that move together")
     if len(check.inflation) < 2:
         page.put(FIRST, "There is one predictor: nothing to confuse it with.", looks.WRAPPED, span=COUNT)
         page.next()
-        return
+    else:
+        _write_inflation(page, check)
+    write_near_dependencies(page, check)
+
+
+def _write_inflation(page: Page, check: Check) -> None:
     page.table_head([
         Head(FIRST, _NAME, "Predictor"), Head(FIRST + _NAME, 1, "VIF", right=True),
         Head(FIRST + _NAME + 1, 1, "Columns", right=True), Head(FIRST + _NAME + 2, COUNT - _NAME - 2, "What it means"),

@@ -21,12 +21,13 @@ class Figures:
 
 @dataclass(frozen=True)
 class Line:
-    """One series: columns x and y by their place in the sketch. Its name is the name of column y."""
+    """One series: columns x and y by their place in the sketch. Its name is the name of column y.
+    labels: what stands beside each point, "" for nothing; empty for no labels at all."""
 
     x: int
     y: int
     look: str
-    labelled: bool = False
+    labels: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True)

@@ -40,7 +40,9 @@ METHODS = (
     ("Rows", "press", "PRESS"),
 )
 OTHER = "Others"
-_STATISTIC = FIRST + 6
+AS_ABOVE = "As above."
+# The assumption's name may wrap: the tests' names need the room.
+_TEST, _STATISTIC = FIRST + 1, FIRST + 6
 # Methods that come in many variants show the first here and the rest in a block of their own.
 _MANY = {"breusch_godfrey", "reset", "rainbow", "goldfeld_quandt", "ljung_box", "box_pierce"}
 
@@ -76,23 +78,36 @@ def _split(statistics: Sequence[Result]) -> tuple[list[Result], list[Result]]:
 
 def _write_table(page: Page, results: Sequence[Result]) -> None:
     page.table_head([
-        Head(FIRST, 2, "Assumption"), Head(FIRST + 2, 4, "Test and variant"),
+        Head(FIRST, 1, "Assumption"), Head(_TEST, _STATISTIC - _TEST, "Test and variant"),
         Head(_STATISTIC, 1, "Statistic", right=True), Head(_STATISTIC + 1, 1, "df", right=True),
         Head(_STATISTIC + 2, 1, "p", right=True),
         Head(_STATISTIC + 3, LAST - _STATISTIC - 2, "p speaks against; notes"),
     ])
-    before = ""
+    before = said = ""
     for result in results:
         _, assumption, name = place_of(result)
-        page.put(FIRST, assumption if assumption != before else None, looks.TEXT, span=2)
+        look = looks.WRAPPED if " " in assumption else looks.TEXT  # a single word is not to be broken
+        page.put(FIRST, assumption if assumption != before else None, look)
         before = assumption
-        page.put(FIRST + 2, f"{name}, {result.variant}" if result.variant else name, looks.BESIDE, span=4)
+        text = _against(result)
+        page.put(
+            _TEST, f"{name}, {result.variant}" if result.variant else name, looks.BESIDE, span=_STATISTIC - _TEST,
+        )
         if result.applies:
             _write_figures(page, result)
+            page.put(_STATISTIC + 3, AS_ABOVE if said == text != "" else text, looks.QUIET_BESIDE,
+                     span=LAST - _STATISTIC - 2)
+            said = text
         else:
             page.put(_STATISTIC, f"Does not apply: {result.reason}", looks.QUIET_BESIDE,
                      span=LAST - _STATISTIC + 1)
+            said = ""
         page.next()
+
+
+def _against(result: Result) -> str:
+    """What p speaks against, and the note, in sentences."""
+    return " ".join(_sentence(text) for text in (result.null if result.p is not None else "", result.note) if text)
 
 
 def _write_figures(page: Page, result: Result) -> None:
@@ -105,8 +120,6 @@ def _write_figures(page: Page, result: Result) -> None:
         page.number(_STATISTIC + 1, degrees, "0" if degrees == int(degrees) else "0.0")
     if result.p is not None:
         page.number(_STATISTIC + 2, result.p, PVALUE)
-    texts = [_sentence(text) for text in (result.null if result.p is not None else "", result.note) if text]
-    page.put(_STATISTIC + 3, " ".join(texts) or None, looks.QUIET_BESIDE, span=LAST - _STATISTIC - 2)
 
 
 def degrees_text(df: Degrees) -> float | str | None:

@@ -57,6 +57,18 @@ def twelve_terms() -> Check:
     return sheetfuncs.check(1e6 * (x.sum(axis=1) + draws.normal(size=80)), list(x.T), names=names)
 
 
+def moving_together() -> Check:
+    """Two pairs of columns that nearly determine each other, and one far from zero beside its variation."""
+    draws = np.random.default_rng(14)
+    n = 60
+    length, mass = draws.normal(size=n), draws.normal(size=n)
+    columns = [length, length + 0.01 * draws.normal(size=n), mass, mass + 0.01 * draws.normal(size=n),
+               500 + draws.normal(size=n)]
+    names = ["Length of the part as drawn (mm)", "Length of the part as measured (mm)", "Mass, dry (kg)",
+             "Mass, wet (kg)", "Kiln temperature (K)"]
+    return sheetfuncs.check(length + mass + draws.normal(size=n), columns, names=names)
+
+
 def perfect() -> Check:
     x = np.arange(1.0, 21.0)
     return sheetfuncs.check(2 + 3 * x, x, names=["x"])
@@ -87,8 +99,8 @@ def offset_and_scale() -> Check:
 CASES: dict[str, Callable[[], Check]] = {
     function.__name__: function
     for function in (
-        orders, one_predictor, without_intercept, categories, twelve_terms, perfect, saturated, leverage_one,
-        four_rows, offset_and_scale,
+        orders, one_predictor, without_intercept, categories, twelve_terms, moving_together, perfect, saturated,
+        leverage_one, four_rows, offset_and_scale,
     )
 }
 
