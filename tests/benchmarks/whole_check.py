@@ -17,6 +17,7 @@ import subprocess
 import sys
 import time
 from collections.abc import Callable
+from functools import partial
 from pathlib import Path
 
 import numpy as np
@@ -50,7 +51,8 @@ BOTH: tuple[Method, ...] = (
     lambda fit: breusch_pagan(fit), lambda fit: goldfeld_quandt(fit), lambda fit: breusch_godfrey(fit, 4),
     lambda fit: reset(fit), lambda fit: rainbow(fit), lambda fit: lilliefors(fit),
     lambda fit: anderson_darling(fit), lambda fit: variance_inflation(fit.basis, fit.design.groups),
-    lambda fit: row_measures(fit), lambda fit: heteroscedasticity_consistent(fit, "HC3"), lambda fit: newey_west(fit, lag=4),
+    lambda fit: row_measures(fit), lambda fit: heteroscedasticity_consistent(fit, "HC3"),
+    lambda fit: newey_west(fit, lag=4),
 )
 STATSMODELS: tuple[Method, ...] = (
     *BOTH, lambda fit: durbin_watson(fit), lambda fit: jarque_bera(fit), lambda fit: white(fit),
@@ -122,14 +124,13 @@ def main(sizes: list[str]) -> None:
         design = build_design(y, [Numeric(f"x{j + 1}", x[:, j]) for j in range(k)])
         theirs = {name: peer_milliseconds([*command, str(n), str(k)]) for name, command in peers.items()}
         faster = min(theirs, key=theirs.__getitem__)
-        shared = milliseconds(lambda d=design, m=shared_with(faster, n): run_methods(d, m))
-        whole = milliseconds(lambda d=design: run_methods(d, WHOLE))
+        shared = milliseconds(partial(run_methods, design, shared_with(faster, n)))
+        whole = milliseconds(partial(run_methods, design, WHOLE))
         peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1e6
-        print(
-            f"{size:>11}  " + "  ".join(f"{name} {ms:,.1f} ms" for name, ms in theirs.items())
-            + f"  |  ours, the methods of {faster}: {shared:,.2f} ms, {theirs[faster] / shared:.1f} times"
-            + f"  |  ours, whole: {whole:,.2f} ms, {theirs[faster] / whole:.1f} times  |  peak {peak:.2f} GB", flush=True,
-        )
+        print(f"{size}: " + ", ".join(f"{name} {ms:,.1f} ms" for name, ms in theirs.items()))
+        print(f"    ours, the methods of {faster}: {shared:,.2f} ms, {theirs[faster] / shared:.1f} times as fast")
+        print(f"    ours, whole: {whole:,.2f} ms, {theirs[faster] / whole:.1f} times as fast; peak {peak:.2f} GB")
+        sys.stdout.flush()
 
 
 if __name__ == "__main__":

@@ -19,7 +19,8 @@ from sheetfuncs.report.draw import draw_report
 plain = st.floats(-1e6, 1e6).map(lambda v: round(v, 3))
 awkward = st.floats(allow_nan=False, allow_infinity=False) | st.sampled_from([0.0, 1.0, 1e300, 1e-300, 1e9, -5.0])
 cell = st.one_of(
-    plain, plain, plain, plain, awkward, st.none(), st.just(""), st.booleans(), st.sampled_from(["#N/A", "north", "1,5"])
+    plain, plain, plain, plain, awkward, st.none(), st.just(""), st.booleans(),
+    st.sampled_from(["#N/A", "north", "1,5"]),
 )
 columns = {
     "numbers": plain, "whole": st.integers(0, 5).map(float), "levels": st.sampled_from(["north", "south", "=A1+1"]),

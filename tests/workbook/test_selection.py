@@ -89,7 +89,8 @@ def test_a_reference_in_a_formula_means_just_its_cells(opened, text, means):
     ("text", "kind", "said"),
     [
         ("Jops!B3:D11", SheetNameError, "did you mean “Jobs”?"), ("Part", AddressError, "did you mean “Parts”?"),
-        ("Parts[Weigt]", AddressError, "did you mean “Weight”?"), ("Nothing", AddressError, "it has Parts, Apart, Columns"),
+        ("Parts[Weigt]", AddressError, "did you mean “Weight”?"),
+        ("Nothing", AddressError, "it has Parts, Apart, Columns"),
         ("Parts[#Totals]", AddressError, "no rows of data"), ("Parts[[Weight]x]", AddressError, "not understood"),
         ("Part[Weight]", AddressError, "did you mean “Parts”?"), ("Moving", AddressError, r"is the formula “OFFSET\("),
         ("Rate", AddressError, "not a plain range"), ("Lost", AddressError, "is an error"),
