@@ -105,7 +105,7 @@ class Basis:
         with few_threads(self.q.size):
             for _ in range(2):
                 if self.intercept:
-                    left -= left.mean(axis=0)
+                    left -= column_means(left)
                 left -= self.q @ (self.q.T @ left)
         return left
 
@@ -143,11 +143,16 @@ def factorize(columns: np.ndarray, names: Sequence[str], *, intercept: bool) -> 
 
 def centred(values: np.ndarray) -> tuple[np.ndarray, np.ndarray | float]:
     """Values minus their mean, and the mean; in two steps, so that a large offset costs no digit."""
-    first = values.mean(axis=0)
+    first = column_means(values)
     left = values - first
-    second = left.mean(axis=0)
+    second = column_means(left)
     left -= second
     return left, first + second
+
+
+def column_means(values: np.ndarray) -> np.ndarray | float:
+    """Means over the rows of (n,) or (n, m): as numpy's own, which takes four times as long on few rows."""
+    return np.add.reduce(values, axis=0) / values.shape[0]
 
 
 def column_lengths(columns: np.ndarray) -> np.ndarray:

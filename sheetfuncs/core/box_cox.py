@@ -17,7 +17,7 @@ from sheetfuncs.errors import ArgumentError
 
 POWERS = np.linspace(-5.0, 5.0, 21)  # where the highest likelihood is looked for first
 ZERO_AND_ONE = [10, 12]
-THIN = 4000  # rows that are enough to find out where to start
+THIN = 400
 CHUNK = 16384  # rows at a time, which stay in the processor's cache
 SMALL = 0.005
 # (k + 1)/(k + 2)!: the series of (x e^x - e^x + 1)/x^2, as exact as doubles below SMALL; highest power first.

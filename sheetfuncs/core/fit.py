@@ -9,7 +9,7 @@ from math import isfinite, sqrt
 import numpy as np
 from scipy.special import fdtrc, stdtr, stdtrit
 
-from sheetfuncs.core.basis import EPS, ROUNDINGS, SMALLEST, Basis, back_substituted, centred, factorize
+from sheetfuncs.core.basis import EPS, ROUNDINGS, SMALLEST, Basis, back_substituted, centred, column_means, factorize
 from sheetfuncs.core.design import Design
 from sheetfuncs.core.refinement import ill_conditioned, loses_digits, refined_basis, refined_solution
 from sheetfuncs.core.threads import few_threads
@@ -217,7 +217,7 @@ def _solve(design: Design, basis: Basis) -> Fit:
     correction = basis.q.T @ left  # a second projection keeps the residuals orthogonal to the last digit
     left -= basis.q @ correction
     if design.intercept:
-        left -= left.mean()
+        left -= column_means(left)
     slopes = _slopes(basis, projected + correction)
     coefficients = np.concatenate([[mean - basis.centre @ slopes], slopes]) if design.intercept else slopes
 

@@ -11,7 +11,7 @@ from scipy.linalg import lapack
 from scipy.special import fdtr, fdtrc
 
 from sheetfuncs.core.auxiliary import refused
-from sheetfuncs.core.basis import ROUNDINGS, factorize
+from sheetfuncs.core.basis import ROUNDINGS, column_means, factorize
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 from sheetfuncs.core.threads import few_threads
@@ -166,7 +166,7 @@ def _from_cross_products(fit: Fit, rows: slice | np.ndarray) -> float | None:
     q, e = fit.basis.q[rows], fit.residuals[rows]
     total = float(e @ e)
     if fit.design.intercept:
-        mean = q.mean(axis=0)
+        mean = column_means(q)
         gram = q.T @ q - q.shape[0] * np.outer(mean, mean)
         along = q.T @ e - mean * e.sum()
         total -= float(e.sum()) ** 2 / q.shape[0]

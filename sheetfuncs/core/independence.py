@@ -9,7 +9,7 @@ import numpy as np
 from scipy.special import chdtrc, fdtrc
 
 from sheetfuncs.core.auxiliary import Addition, add_columns, refused
-from sheetfuncs.core.basis import ROUNDINGS, factorize
+from sheetfuncs.core.basis import ROUNDINGS, column_means, factorize
 from sheetfuncs.core.cross_products import apart
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.quadratic_forms import durbin_watson_tails
@@ -207,8 +207,8 @@ def _omitted_by_products(fit: Fit, e: np.ndarray, lagged: np.ndarray, lags: int)
     columns = np.concatenate([q[lags:], lagged[lags:]], axis=1)
     kept = centred_kept = e[lags:]
     if fit.basis.intercept:
-        columns -= columns.mean(axis=0)
-        centred_kept = kept - kept.mean()
+        columns -= column_means(columns)
+        centred_kept = kept - column_means(kept)
     left, _ = apart(columns, centred_kept)
     if left is None:
         return None

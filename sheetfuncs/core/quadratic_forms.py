@@ -34,7 +34,10 @@ def durbin_watson_tails(basis: Basis, d: float, order: np.ndarray | None = None)
     n = basis.n
     q = basis.q if order is None else basis.q[order]
     with few_threads(basis.q.size):
-        return (_from_determinants if n > EIGENVALUES_UP_TO else _from_eigenvalues)(q, basis.intercept, d)
+        # With few degrees of freedom left the factorization has cost as much as the eigenvalues will.
+        if n <= EIGENVALUES_UP_TO or 2 * basis.rank > n:
+            return _from_eigenvalues(q, basis.intercept, d)
+        return _from_determinants(q, basis.intercept, d)
 
 
 def durbin_watson_bounds(

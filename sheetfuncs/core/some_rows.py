@@ -8,7 +8,7 @@ import numpy as np
 from scipy.linalg import lapack
 
 from sheetfuncs.core.auxiliary import DETERMINED
-from sheetfuncs.core.basis import EPS, ROUNDINGS
+from sheetfuncs.core.basis import EPS, ROUNDINGS, column_means
 from sheetfuncs.core.cross_products import apart
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.threads import few_threads
@@ -34,8 +34,8 @@ def fit_rows(fit: Fit, rows: slice | np.ndarray) -> PartialFit:
     q, e = basis.q[rows], fit.residuals[rows]
     with few_threads(q.size):
         if basis.intercept:
-            q = q - q.mean(axis=0)
-            e = e - e.mean()
+            q = q - column_means(q)
+            e = e - column_means(e)
         left, rank = apart(q, e)
         if left is None:
             left, rank = _by_pivoting(q, e, max(DETERMINED, ROUNDINGS * EPS * basis.amplification))
