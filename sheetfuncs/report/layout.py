@@ -18,7 +18,7 @@ LAST = FIRST + COUNT - 1
 COLUMN_PIXELS, MARGIN_PIXELS = 82.0, 16.0
 ROW_POINTS = 15.0
 _LINE, _PADDING = 1.27, 2.6
-_CELL_PADDING = 8.0
+_CELL_PADDING = 10.0
 _INDENT = 9.0
 MISSING = "–"
 # A heading, its note, a gap, column labels and two lines of the table stay on one printed page.

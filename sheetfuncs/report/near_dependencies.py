@@ -78,6 +78,6 @@ def _none(check: Check) -> str:
             f"would count as strong {source}."
         )
     return (
-        f"The largest condition index is {indices}; from {STRONG:g} on it counts as strong {source}. Which columns move "
-        "together cannot be told from it: the factors above say whose intervals are wide."
+        f"The largest condition index is {indices}; from {STRONG:g} on it counts as strong {source}. Which columns "
+        "move together cannot be told from it: the factors above say whose intervals are wide."
     )

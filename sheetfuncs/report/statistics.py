@@ -115,9 +115,9 @@ def _write_figures(page: Page, result: Result) -> None:
         page.number(_STATISTIC, result.statistic, digits_format(result.statistic, 4))
     degrees = degrees_text(result.df)
     if isinstance(degrees, str):
-        page.put(_STATISTIC + 1, degrees, looks.NUMBER)
+        page.put(_STATISTIC + 1, degrees, looks.NUMBER.but(wrap=True))  # of many rows, a pair takes two lines
     elif degrees is not None:
-        page.number(_STATISTIC + 1, degrees, "0" if degrees == int(degrees) else "0.0")
+        page.number(_STATISTIC + 1, degrees, "#,##0" if degrees == int(degrees) else "#,##0.0")
     if result.p is not None:
         page.number(_STATISTIC + 2, result.p, PVALUE)
 
@@ -125,7 +125,7 @@ def _write_figures(page: Page, result: Result) -> None:
 def degrees_text(df: Degrees) -> float | str | None:
     """A number, or "2 and 57" for a pair."""
     if isinstance(df, tuple):
-        return " and ".join(f"{value:g}" for value in df)
+        return " and ".join(f"{value:,.0f}" if value == int(value) else f"{value:,.1f}" for value in df)
     return None if df is None else float(df)
 
 

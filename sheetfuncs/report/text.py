@@ -14,7 +14,7 @@ _WIDTHS = (
     260, 334, 584,
 )
 # Screens round small letters to whole pixels; a little too wide is harmless, too narrow would clip a line.
-_SLACK = 1.03
+_SLACK = 1.05
 
 
 def text_width(text: str, size: float, bold: bool = False) -> float:

@@ -12,10 +12,12 @@ from report_cases import CASES, drawn, leverage_one, moving_together, orders, pa
 
 import sheetfuncs
 from sheetfuncs.report.first_screen import CAUTION
+from sheetfuncs.report.layout import COLUMN_PIXELS
 from sheetfuncs.report.near_dependencies import TITLE as TOGETHER
 from sheetfuncs.report.robust_errors import NOTE
 from sheetfuncs.report.robust_errors import TITLE as ERROR_BARS
-from sheetfuncs.report.statistics import AS_ABOVE, METHODS
+from sheetfuncs.report.statistics import AS_ABOVE, METHODS, degrees_text
+from sheetfuncs.report.text import text_width
 
 
 def texts_of(plan):
@@ -191,3 +193,16 @@ def test_more_than_5000_rows_rest_on_anderson_darling():
     assert normality.test.startswith("Anderson-Darling")
     assert normality.p == check.statistic("anderson_darling").p
     assert not check.statistic("shapiro_wilk").applies
+
+
+def test_degrees_of_freedom_of_many_rows_stand_in_their_column():
+    draws = np.random.default_rng(19)
+    x = draws.normal(size=120_000)
+    check = sheetfuncs.check(x + draws.normal(size=120_000), x, names=["x"])
+    assert degrees_text((1.0, 2_000_000.0)) == "1 and 2,000,000"
+    pairs = [cell for cell in planned(check).cells if cell.value == degrees_text(check.statistic("rainbow").df)]
+    assert pairs
+    for pair in pairs:
+        assert pair.value == "60,000 and 59,998"
+        assert pair.style.wrap
+        assert max(text_width(word, 9) for word in pair.value.split()) < COLUMN_PIXELS - 5
