@@ -29,12 +29,14 @@ def write_fit(page: Page, check: Check) -> None:
     _write_terms(page, check)
     if check.fit.has_error_bars:
         write_other_error_bars(page, check)
+    top = page.row
     page.subheading("The fit as a whole")
     for label, value, value_format, note in _facts(check):
         page.put(FIRST, label, looks.TEXT, span=_TERM)
         page.number(FIRST + _TERM, value, value_format)
         page.put(FIRST + _TERM + 1, note, looks.QUIET_BESIDE, span=COUNT - _TERM - 1)
         page.next()
+    page.kept.append((top, page.row - 1))
     for predictor, base in check.design.base_levels:
         page.put(FIRST, f"Base level of {predictor}", looks.WRAPPED, span=_TERM)
         page.put(FIRST + _TERM, f"{base}: the other levels are compared with it.", looks.WRAPPED,
