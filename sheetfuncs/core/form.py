@@ -5,15 +5,21 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+from scipy.linalg import lapack
 from scipy.special import fdtrc
 
-from sheetfuncs.core.auxiliary import add_columns, refused
+from sheetfuncs.core.auxiliary import Addition, add_columns, refused
 from sheetfuncs.core.basis import EPS, ROUNDINGS
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import ArgumentError
 
 STRAIGHT = "no power of {} adds anything to the straight line"
+# From so many rows on, cross products in blocks are gathered faster than columns are projected.
+MANY_ROWS, BLOCK = 2_000, 4_096
+# A share that must be left of a power beside the predictors and the other powers: less could cost digits.
+CLOSE = 0.02
 _TYPES = {"fitted": "fitted", "predictors": "regressor"}
 
 
@@ -46,7 +52,7 @@ def reset(fit: Fit, powers: Sequence[int] = (2, 3), *, of: str = "fitted") -> Re
     base = _base(fit, of)
     if not base.shape[1]:
         return cannot(f"{what.capitalize()} do not vary, so they have no powers to add.")
-    added = add_columns(fit.basis, fit.residuals, _powers(base, powers))
+    added = _added_by_products(fit, base, powers) or add_columns(fit.basis, fit.residuals, _powers(base, powers))
     left = fit.df - added.rank
     if added.rank == 0 or (of == "fitted" and added.rank < min(len(powers), fit.df)):
         return cannot(f"The powers of {what} are already determined by the predictors, so nothing can be added.")
@@ -74,6 +80,38 @@ def _base(fit: Fit, of: str) -> np.ndarray:
     size = np.abs(base).max(axis=0)
     varies = size > ROUNDINGS * EPS * np.abs(whole).max(axis=0)
     return base[:, varies] / size[varies]
+
+
+def _added_by_products(fit: Fit, base: np.ndarray, powers: Sequence[int]) -> Addition | None:
+    """What the powers explain, by cross products with the basis gathered block by block, so that many rows need little
+    memory; None for few rows, and where the powers lie so close to the predictors or to each other that it could cost
+    digits."""
+    n, basis = fit.n, fit.basis
+    if n < MANY_ROWS:
+        return None
+    width = base.shape[1] * len(powers)
+    with_basis, with_each_other = np.zeros((basis.q.shape[1], width)), np.zeros((width, width))
+    with_residuals, total = np.zeros(width), np.zeros(width)
+    with few_threads(BLOCK):
+        for start in range(0, n, BLOCK):
+            rows = slice(start, start + BLOCK)
+            block = _powers(base[rows], powers)
+            with_basis += basis.q[rows].T @ block
+            with_each_other += block.T @ block
+            with_residuals += fit.residuals[rows] @ block
+            if basis.intercept:
+                total += np.add.reduce(block, axis=0)
+    left = with_each_other - with_basis.T @ with_basis - np.outer(total, total) / n
+    before, after = np.diag(with_each_other), np.diag(left)
+    if (after < CLOSE * before).any():
+        return None
+    length = np.sqrt(after)
+    root, info = lapack.dpotrf(left / np.outer(length, length), lower=1)
+    if info != 0 or np.diag(root).min() < CLOSE:
+        return None
+    along, _ = lapack.dtrtrs(root, with_residuals / length, lower=1)
+    part = float(along @ along)
+    return Addition(part, fit.rss - part, width) if part < 0.99 * fit.rss else None
 
 
 def _powers(base: np.ndarray, powers: Sequence[int]) -> np.ndarray:
