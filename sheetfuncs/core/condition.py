@@ -118,7 +118,8 @@ def _linked(members: np.ndarray, directions: np.ndarray) -> list[np.ndarray]:
     """Members in groups, each reached from another one of its group by a link."""
     with np.errstate(invalid="ignore", divide="ignore"):
         unit = np.nan_to_num(directions / np.linalg.norm(directions, axis=1, keepdims=True))
-    link = np.abs(unit @ unit.T) > _LINKED
+    # m columns that all follow one base lie at 1/(m - 1) to each other, columns of other groups at almost 0.
+    link = np.abs(unit @ unit.T) > min(_LINKED, 0.5 / max(members.shape[0], 1))
     groups = []
     waiting = np.ones(members.shape[0], dtype=bool)
     while waiting.any():

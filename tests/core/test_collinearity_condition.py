@@ -178,3 +178,15 @@ def test_the_centred_form_needs_an_intercept():
     fit = made_fit(intercept=False)
     with pytest.raises(NoVariationError, match="needs an intercept"):
         condition_indices(fit.basis, fit.design.column_names, centred=True)
+
+
+@pytest.mark.parametrize("copies", [2, 4, 5, 7, 12])
+def test_any_number_of_columns_that_follow_one_base_are_one_group(copies):
+    random = np.random.default_rng(5)
+    base, other = random.normal(size=(2, 80))
+    follow = base[:, None] + 1e-3 * random.normal(size=(80, copies))
+    pair = other[:, None] + 1e-3 * random.normal(size=(80, 2))
+    columns = np.column_stack([follow, pair, random.normal(size=80)])
+    names = [*(f"copy {j}" for j in range(copies)), "left", "right", "apart"]
+    found = condition_indices(factorize(columns, names, intercept=True), names).near_dependencies
+    assert {frozenset(group.terms) for group in found} == {frozenset(names[:copies]), frozenset({"left", "right"})}
