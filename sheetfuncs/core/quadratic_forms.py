@@ -19,6 +19,8 @@ from sheetfuncs.core.threads import few_threads
 
 # Up to here all eigenvalues are cheaper than one small determinant for every node of the integral.
 EIGENVALUES_UP_TO = 100
+# With fewer rows for each coefficient too: every determinant is costly, and with few degrees of freedom loses digits.
+ROWS_PER_COEFFICIENT = 8
 # Up to here all eigenvalues are computed where the saddlepoint may lie beyond the frequencies of A.
 EIGENVALUES_IN_NEED_UP_TO = 3000
 # Eigenvalues between 0 and 4 are computed to about this.
@@ -34,8 +36,7 @@ def durbin_watson_tails(basis: Basis, d: float, order: np.ndarray | None = None)
     n = basis.n
     q = basis.q if order is None else basis.q[order]
     with few_threads(basis.q.size):
-        # With few degrees of freedom left the factorization has cost as much as the eigenvalues will.
-        if n <= EIGENVALUES_UP_TO or 2 * basis.rank > n:
+        if n <= EIGENVALUES_UP_TO or n < ROWS_PER_COEFFICIENT * basis.rank:
             return _from_eigenvalues(q, basis.intercept, d)
         return _from_determinants(q, basis.intercept, d)
 
