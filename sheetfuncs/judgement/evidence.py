@@ -14,7 +14,7 @@ from sheetfuncs.core.normality import all_equal, shape
 from sheetfuncs.core.results import DoesNotApply, Result
 from sheetfuncs.core.smooth import autocorrelations, local_line, spread_by_groups
 from sheetfuncs.judgement.rows import FlaggedRow
-from sheetfuncs.judgement.words import counted, listed, number, pvalue, times
+from sheetfuncs.judgement.words import counted, listed, number, pvalue, signed, times
 
 CLEAR, SOME = 0.01, 0.05
 # An interval twice as wide as it would be with unrelated predictors is worth saying aloud; no published limit.
@@ -147,7 +147,7 @@ def _independence(fit: Fit, statistics: Sequence[Result]) -> Evidence:
     durbin_watson = _find(statistics, "durbin_watson")
     if durbin_watson.applies and durbin_watson.statistic is not None and fit.n > 2:
         r1 = autocorrelations(fit.design.in_order(fit.residuals), 1)[0]
-        size = f"neighbouring errors correlate {r1:+.2f}; Durbin-Watson {durbin_watson.statistic:.2f} (2 is none)"
+        size = f"neighbouring errors correlate {signed(r1)}; Durbin-Watson {durbin_watson.statistic:.2f} (2 is none)"
     order = "the given order" if fit.design.order is not None else "the rows' order"
     return Evidence(
         "independence", "Is each error free of the one before?", strength, finding,
@@ -166,7 +166,7 @@ def _normality(fit: Fit, statistics: Sequence[Result]) -> Evidence:
     if fit.has_error_bars and not all_equal(fit):
         skew, kurtosis = shape(fit.residuals)
         size = (
-            f"skewness {skew:+.2f} (0 is symmetric), kurtosis {kurtosis:.2f} (3 is normal); "
+            f"skewness {signed(skew)} (0 is symmetric), kurtosis {kurtosis:.2f} (3 is normal); "
             f"largest residual {number(float(np.abs(fit.residuals).max()) / fit.sigma, 2)} standard deviations"
         )
     return Evidence(

@@ -26,6 +26,11 @@ def pvalue(p: float) -> str:
     return f"p = {p:.2g}"
 
 
+def signed(value: float) -> str:
+    """"+0.58", "-1.20"; a value that rounds to nothing is "0.00", without a sign that would say more than it knows."""
+    return f"{value:+.2f}" if abs(value) >= 0.005 else "0.00"
+
+
 def times(ratio: float) -> str:
     """"2.4 times"."""
     return f"{ratio:.1f} times" if ratio < 10 else f"{ratio:,.0f} times"

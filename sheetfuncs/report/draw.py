@@ -22,6 +22,7 @@ from sheetfuncs.report.style import FONT, INK, Style
 
 # A text from the data stays a text: never a formula, a link or a number.
 OPTIONS = {
+    "in_memory": True,  # the analyst's data pass through no temporary file
     "strings_to_formulas": False, "strings_to_urls": False, "strings_to_numbers": False, "constant_memory": False,
     "nan_inf_to_errors": False, "default_format_properties": {"font_name": FONT, "font_size": 9},
 }

@@ -11,7 +11,7 @@ from sheetfuncs.core.fit import fit_design
 from sheetfuncs.core.influence import row_measures
 from sheetfuncs.core.shifts import coefficient_shifts
 from sheetfuncs.judgement.rows import rows_to_look_at
-from sheetfuncs.judgement.words import listed, number, pvalue, times
+from sheetfuncs.judgement.words import listed, number, pvalue, signed, times
 
 
 @pytest.mark.parametrize(("value", "said"), [
@@ -27,6 +27,10 @@ def test_number(value, said):
 ])
 def test_pvalue(p, said):
     assert pvalue(p) == said
+
+
+def test_signed():
+    assert [signed(v) for v in (0.584, -1.2, -0.001, 0.0)] == ["+0.58", "-1.20", "0.00", "0.00"]
 
 
 def test_lists_and_ratios():
