@@ -16,7 +16,7 @@ from sheetfuncs.core.form import reset
 @pytest.mark.parametrize("powers", [(2,), (2, 3), (2, 3, 4)])
 def test_both_routes_give_the_same(of, powers, intercept, monkeypatch):
     random = np.random.default_rng(8)
-    x = random.normal(size=(9000, 3)) + [0.0, 5.0, -2.0]
+    x = random.normal(size=(9000, 3)) + np.array([0.0, 5.0, -2.0])
     y = 3 + x @ [1.0, 2.0, -1.0] + 0.02 * x[:, 0] ** 2 + random.normal(size=9000)
     fit = fit_design(build_design(y, [Numeric(f"x{j}", x[:, j]) for j in range(3)], intercept=intercept))
     by_products = reset(fit, powers, of=of)
