@@ -218,8 +218,10 @@ def _solve(design: Design, basis: Basis) -> Fit:
     left -= basis.q @ correction
     if design.intercept:
         left -= column_means(left)
-    slopes = _slopes(basis, projected + correction)
-    coefficients = np.concatenate([[mean - basis.centre @ slopes], slopes]) if design.intercept else slopes
+    slopes = coefficients = _slopes(basis, projected + correction)
+    if design.intercept:
+        coefficients = np.empty(slopes.shape[0] + 1)
+        coefficients[0], coefficients[1:] = mean - basis.centre @ slopes, slopes
 
     noise = EPS * (sqrt(y @ y) + float(np.abs(slopes) @ basis.raw_norm))
     rss = float(left @ left)
