@@ -81,6 +81,11 @@ def _durbin_watson_refusal(fit: Fit) -> DoesNotApply | None:
     refusal = refused(fit, "durbin_watson_test", {}, "", NO_CORRELATION)
     if refusal:
         return refusal
+    if fit.df == 1:
+        return DoesNotApply(
+            method="durbin_watson_test", args={}, variant="", null=NO_CORRELATION, cell_error="#NUM!",
+            reason="With one degree of freedom the predictors alone fix the statistic, whatever the errors are.",
+        )
     lagged = lagged_response(fit)
     if lagged is None:
         return None

@@ -67,3 +67,10 @@ def test_the_response_of_the_row_before_among_the_predictors():
         assert not result.applies
         assert result.reason.startswith("last week is the response of the row before")
         assert result.cell_error == "#N/A"
+
+
+def test_one_degree_of_freedom_leaves_nothing_to_test():
+    fit = fit_design(build_design(np.array([1.0, 2.0, 4.0]), [Numeric("x", np.array([1.0, 2.0, 3.0]))]))
+    for result in durbin_watson_tests(fit):
+        assert not result.applies
+        assert "one degree of freedom" in result.reason
