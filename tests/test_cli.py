@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import re
 import shutil
 import zipfile
 from pathlib import Path
@@ -106,6 +107,29 @@ def test_another_range_gets_another_sheet(orders):
     run("check", orders, "Orders!D4:F74", "--in-place")
     names = sheet_names(orders)
     assert [n for n in names if n.startswith("Check of")] == ["Check of Orders (2)", "Check of Orders"]
+
+
+def test_a_workbook_that_opens_on_our_sheet_is_checked_again_as_before(orders):
+    run("check", orders, "Panels", "--predictors", "Panel area (m²)", "--level", "0.9", "--in-place")
+    open_on(orders, "Check of Orders")
+    figures = json.loads(run("check", orders, "--in-place", "--json", "-").stdout)
+    assert figures["settings"]["predictors"] == ["Panel area (m²)"]
+    assert figures["settings"]["level"] == 0.9
+    assert figures["settings"]["area"] == "D4:G74"
+    assert "made again with its settings" in figures["remarks"][0]
+    assert sheet_names(orders).count("Check of Orders") == 1
+
+
+def open_on(path: Path, sheet: str) -> None:
+    """Save the workbook with another sheet in front."""
+    place = sheet_names(path).index(sheet)
+    with zipfile.ZipFile(path) as old:
+        entries = {info: old.read(info) for info in old.infolist()}
+    with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as new:
+        for info, data in entries.items():
+            if info.filename == "xl/workbook.xml":
+                data = re.sub(rb'activeTab="\d+"', b'activeTab="%d"' % place, data)
+            new.writestr(info, data)
 
 
 def test_a_file_that_is_not_ours_is_left_alone(orders):

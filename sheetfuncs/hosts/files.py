@@ -10,14 +10,15 @@ from datetime import datetime
 from pathlib import Path
 from typing import Any
 
-from sheetfuncs.cells.address import format_area
+from sheetfuncs.cells.address import format_area, quote_sheet
 from sheetfuncs.cells.observations import read_observations
 from sheetfuncs.checking import Check, check_observations
 from sheetfuncs.errors import ArgumentError, WorkbookBusyError, WorkbookError
 from sheetfuncs.hosts.places import predictions_at
-from sheetfuncs.hosts.recorded import Earlier, earlier_sheet
+from sheetfuncs.hosts.recorded import Earlier, earlier_sheet, recorded_settings
 
 Step = Callable[[str], None]
+DEFAULT_LEVEL = 0.95
 
 
 @dataclass(frozen=True)
@@ -32,7 +33,7 @@ class Request:
     date_predictors: tuple[str, ...] = ()
     base_levels: Mapping[str, str] = field(default_factory=dict)
     intercept: bool = True
-    level: float = 0.95
+    level: float = DEFAULT_LEVEL
     places: tuple[Mapping[str, str], ...] = ()
     out: Path | None = None
     in_place: bool = False
@@ -63,7 +64,8 @@ def check_book(request: Request, step: Step = lambda text: None) -> Done:
     target = _target(request)
     warnings = _busy_warnings(request, target)
     step("Reading the range ...")
-    check = _read_and_check(request, step)
+    request, remarks = _as_recorded(request)
+    check = _read_and_check(request, remarks, step)
     predictions = predictions_at(check, request.places, request.level)
     if target is None:
         return Done(check, None, None, False, warnings, predictions)
@@ -124,7 +126,27 @@ def _busy_warnings(request: Request, target: Path | None) -> tuple[str, ...]:
     return (f"Note: {busy} What was saved last is what was checked.",) if busy else ()
 
 
-def _read_and_check(request: Request, step: Step) -> Check:
+def _as_recorded(request: Request) -> tuple[Request, tuple[str, ...]]:
+    """Without a range, in a workbook that opens on a sheet of ours: that check again, but for what was asked anew."""
+    found = recorded_settings(request.book) if request.range_text is None else None
+    if found is None:
+        return request, ()
+    title, kept = found
+    place = f"{quote_sheet(kept['sheet'])}!{kept['area']}"
+    again = replace(
+        request, range_text=place,
+        response=request.response or kept.get("response"),
+        predictors=request.predictors or tuple(kept.get("predictors") or ()) or None,
+        order=request.order or kept.get("order"),
+        date_predictors=request.date_predictors or tuple(kept.get("date_predictors") or ()),
+        base_levels=request.base_levels or dict(kept.get("base_levels") or {}),
+        intercept=request.intercept and bool(kept.get("intercept", True)),
+        level=request.level if request.level != DEFAULT_LEVEL else float(kept.get("level", DEFAULT_LEVEL)),
+    )
+    return again, (f"The workbook opens on “{title}”, so that check of {place} was made again with its settings.",)
+
+
+def _read_and_check(request: Request, remarks: tuple[str, ...], step: Step) -> Check:
     from sheetfuncs.workbook.read import open_book
     from sheetfuncs.workbook.selection import find_selection
     from sheetfuncs.workbook.selection_columns import read_selection
@@ -140,7 +162,7 @@ def _read_and_check(request: Request, step: Step) -> Check:
     )
     step("Checking ...")
     return check_observations(
-        observations, intercept=request.intercept, level=request.level, remarks=selection.remarks,
+        observations, intercept=request.intercept, level=request.level, remarks=(*remarks, *selection.remarks),
         date_predictors=request.date_predictors, base_levels=request.base_levels, book=request.book.name,
         sheet=selection.area.sheet, area=format_area(replace(selection.area, sheet=None)),
     )

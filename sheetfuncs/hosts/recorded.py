@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 from sheetfuncs.cells.address import parse_area
 from sheetfuncs.cells.block import Block, Kind
@@ -36,6 +37,19 @@ def earlier_sheet(book: Path, target: Path, settings: Settings) -> Earlier:
     with open_book(book) as opened:
         taken = [sheet.name for sheet in opened.sheets]
     return Earlier(sheet_title(f"Check of {settings.sheet}", taken=taken), None, decision)
+
+
+def recorded_settings(book: Path) -> tuple[str, Mapping[str, Any]] | None:
+    """Title and settings of our sheet, where the workbook opens on one; None elsewhere, and where they were damaged."""
+    from sheetfuncs.workbook import find_our_sheets
+    from sheetfuncs.workbook.read import open_book
+
+    with open_book(book) as opened:
+        active = opened.active_sheet
+    for sheet in find_our_sheets(book):
+        if sheet.name == active and sheet.settings and sheet.settings.get("sheet") and sheet.settings.get("area"):
+            return sheet.name, sheet.settings
+    return None
 
 
 def _sheet_of(book: Path, settings: Settings) -> str | None:
