@@ -140,5 +140,9 @@ def normal_scores(values: np.ndarray) -> np.ndarray:
     (Blom 1958, Statistical Estimates and Transformed Beta-Variables). Equal values share their mean rank."""
     _, place, count = np.unique(values, return_inverse=True, return_counts=True)
     last = np.cumsum(count)
-    rank = (last - (count - 1) / 2.0)[place]
-    return ndtri((rank - 0.375) / (values.shape[0] + 0.25))
+    return scores_of_ranks((last - (count - 1) / 2.0)[place], values.shape[0])
+
+
+def scores_of_ranks(rank: np.ndarray, n: int) -> np.ndarray:
+    """Normal scores of ranks from 1 among n values (Blom 1958)."""
+    return ndtri((rank - 0.375) / (n + 0.25))

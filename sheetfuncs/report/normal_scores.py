@@ -6,6 +6,8 @@ from statistics import NormalDist
 
 import numpy as np
 
+from sheetfuncs.core.normality import scores_of_ranks
+
 _NORMAL = NormalDist()
 
 
@@ -14,9 +16,7 @@ def normal_scores(n: int, places: np.ndarray | None = None) -> np.ndarray:
 
     places: which of them, from 0; None gives all n.
     """
-    inverse = _NORMAL.inv_cdf
-    wanted = range(n) if places is None else places.tolist()
-    return np.array([inverse((i + 0.625) / (n + 0.25)) for i in wanted])
+    return scores_of_ranks((np.arange(n) if places is None else places) + 1.0, n)
 
 
 def pointwise_limits(scores: np.ndarray, n: int, level: float = 0.95) -> tuple[np.ndarray, np.ndarray]:
