@@ -83,7 +83,8 @@ def test_a_second_run_replaces_the_sheet_and_keeps_the_decision(orders):
     checked = orders.with_name("order-hours-unequal-spread-checked.xlsx")
     decide(checked, "Check of Orders", "Use it for panels up to 3 m²")
     result = run("check", orders)
-    assert 'Replaced the sheet' in result.stdout or "Wrote the sheet" in result.stdout
+    assert f'Wrote the sheet "Check of Orders" in {checked}' in result.stdout
+    assert f"sheetfuncs undo {checked} brings it back" in result.stderr
     assert sheet_names(checked).count("Check of Orders") == 1
     assert decision_of(checked, "Check of Orders") == "Use it for panels up to 3 m²"
 
@@ -107,6 +108,17 @@ def test_another_range_gets_another_sheet(orders):
     run("check", orders, "Orders!D4:F74", "--in-place")
     names = sheet_names(orders)
     assert [n for n in names if n.startswith("Check of")] == ["Check of Orders (2)", "Check of Orders"]
+
+
+def test_a_copy_with_the_check_of_another_range_is_not_written_over(orders):
+    run("check", orders)
+    checked = orders.with_name("order-hours-unequal-spread-checked.xlsx")
+    before = checked.read_bytes()
+    refusal = run("check", orders, "Orders!D4:F74", exit_code=1).stderr
+    assert "also holds the check of another range (Check of Orders)" in refusal
+    assert checked.read_bytes() == before
+    run("check", checked, "Orders!D4:F74", "--in-place")
+    assert [n for n in sheet_names(checked) if n.startswith("Check of")] == ["Check of Orders (2)", "Check of Orders"]
 
 
 def test_a_workbook_that_opens_on_our_sheet_is_checked_again_as_before(orders):

@@ -62,7 +62,7 @@ def column_number(letters: str) -> int:
         for letter in letters.upper():
             number = 26 * number + ord(letter) - 64
     if not 1 <= number <= MAX_COLUMNS:
-        raise AddressError(f"There is no column {_shown(letters)}: columns run from A to XFD.")
+        raise AddressError(f"There is no column {shown(letters)}: columns run from A to XFD.")
     return number
 
 
@@ -111,14 +111,14 @@ def parse_area(text: str) -> Area:
     sheet, cells = _split_sheet(whole, text)
     if "," in cells or ";" in cells:
         raise AddressError(
-            f"{_shown(text)} is more than one area; give one rectangle that holds all columns and choose among them "
+            f"{shown(text)} is more than one area; give one rectangle that holds all columns and choose among them "
             "by name or letter."
         )
     corners = [part.strip() for part in cells.split(":")]
     if len(corners) == 2 and "!" in corners[1]:  # "Jobs!B3:Jobs!F64", as some programs write it
         second, corners[1] = _split_sheet(corners[1], text)
         if sheet is None or second is None or second.casefold() != sheet.casefold():
-            raise AddressError(f"{_shown(text)} spans two sheets; give an area of one sheet, such as Jobs!B3:F64.")
+            raise AddressError(f"{shown(text)} spans two sheets; give an area of one sheet, such as Jobs!B3:F64.")
     if len(corners) > 2:
         raise _malformed(text)
     return _area(sheet, corners[0], corners[-1], text)
@@ -129,7 +129,7 @@ def _split_sheet(whole: str, text: str) -> tuple[str | None, str]:
         match = re.match(r"'((?:[^']|'')+)'!", whole)
         if match is None:
             raise AddressError(
-                f"{_shown(text)} has a sheet name in quotes that is not closed before '!'; write it as "
+                f"{shown(text)} has a sheet name in quotes that is not closed before '!'; write it as "
                 "'Job list'!B3:F64, and a quote inside the name twice."
             )
         name, cells = match[1].replace("''", "'"), whole[match.end() :]
@@ -140,11 +140,11 @@ def _split_sheet(whole: str, text: str) -> tuple[str | None, str]:
     else:
         return None, whole
     if not name.strip():
-        raise AddressError(f"{_shown(text)} names no sheet before '!'; write it as Jobs!B3:F64.")
+        raise AddressError(f"{shown(text)} names no sheet before '!'; write it as Jobs!B3:F64.")
     if "[" in name or "]" in name:
-        raise AddressError(f"{_shown(text)} points into another workbook; only the workbook that was given is read.")
+        raise AddressError(f"{shown(text)} points into another workbook; only the workbook that was given is read.")
     if ":" in name:
-        raise AddressError(f"{_shown(text)} spans several sheets; give an area of one sheet, such as Jobs!B3:F64.")
+        raise AddressError(f"{shown(text)} spans several sheets; give an area of one sheet, such as Jobs!B3:F64.")
     return name if whole.startswith("'") else name.strip(), cells.strip()
 
 
@@ -160,7 +160,7 @@ def _area(sheet: str | None, first: str, last: str, text: str) -> Area:
         return Area(sheet, 1, numbers[0], None, numbers[1])
     if _ROW.fullmatch(first) and _ROW.fullmatch(last):
         raise AddressError(
-            f"{_shown(text)} is whole rows; observations stand in rows and variables in columns: give whole columns "
+            f"{shown(text)} is whole rows; observations stand in rows and variables in columns: give whole columns "
             "(B:D) or a rectangle (B3:F64)."
         )
     raise _malformed(text)
@@ -169,17 +169,18 @@ def _area(sheet: str | None, first: str, last: str, text: str) -> Area:
 def _row(digits: str, text: str) -> int:
     row = int(digits)
     if not 1 <= row <= MAX_ROWS:
-        raise AddressError(f"{_shown(text)} reaches outside the sheet: rows run from 1 to {MAX_ROWS}.")
+        raise AddressError(f"{shown(text)} reaches outside the sheet: rows run from 1 to {MAX_ROWS}.")
     return row
 
 
 def _malformed(text: str) -> AddressError:
     return AddressError(
-        f"{_shown(text)} is not an address; write a rectangle with its sheet, such as Jobs!B3:F64 or "
+        f"{shown(text)} is not an address; write a rectangle with its sheet, such as Jobs!B3:F64 or "
         "'Job list'!B3:F64, or whole columns, such as Jobs!B:D."
     )
 
 
-def _shown(text: str) -> str:
+def shown(text: str) -> str:
+    """What somebody typed, as sentences show it: on one line, in quotes, cut where it is long."""
     text = " ".join(text.split())
     return f"“{text if len(text) <= 80 else text[:77] + '...'}”"

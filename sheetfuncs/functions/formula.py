@@ -6,6 +6,7 @@ import re
 from collections.abc import Callable
 from dataclasses import dataclass
 
+from sheetfuncs.cells.address import shown
 from sheetfuncs.cells.block import ERROR_TEXTS, Block
 from sheetfuncs.errors import ArgumentError
 from sheetfuncs.functions.arguments import allowed
@@ -72,7 +73,7 @@ def parse_formula(text: str) -> ParsedCall:
     match = _CALL.match(formula)
     if match is None:
         raise ArgumentError(
-            f"{_shown(text)} is not a call of one function; write it like =FIT_VIF(Jobs!C4:F64), in single quotes on a "
+            f"{shown(text)} is not a call of one function; write it like =FIT_VIF(Jobs!C4:F64), in single quotes on a "
             "command line."
         )
     pieces, separator = _split_arguments(formula[match.end():], text)
@@ -139,7 +140,7 @@ def _argument(piece: str, separator: str, formula: str) -> FormulaArgument:
     nested = _NESTED.match(piece)
     if nested:
         raise ArgumentError(
-            f"{_shown(formula)} calls {nested[1]} inside another function: put that into a cell of its own and point "
+            f"{shown(formula)} calls {nested[1]} inside another function: put that into a cell of its own and point "
             "to the cell."
         )
     bare = _QUOTED_PARTS.sub("x", piece)
@@ -182,7 +183,7 @@ def _array(piece: str, formula: str) -> tuple[tuple[Value, ...], ...]:
     values = [[_value(item.strip(), decimal) for item in row] for row in rows]
     if any(value is None for row in values for value in row):
         raise ArgumentError(
-            f"{_shown(formula)} holds an array whose items are not all numbers, texts, TRUE or FALSE; write it like "
+            f"{shown(formula)} holds an array whose items are not all numbers, texts, TRUE or FALSE; write it like "
             "{1,2;3,4}."
         )
     return tuple(tuple(value for value in row if value is not None) for row in values)
@@ -201,16 +202,11 @@ def _refuse_wrong_count(function: WorksheetFunction, arguments: tuple[FormulaArg
 
 def _unpaired(found: str, formula: str) -> ArgumentError:
     where = f" at {found}" if found else " at its end"
-    return ArgumentError(f"{_shown(formula)} has quotes or brackets that do not pair{where}: each needs its partner.")
+    return ArgumentError(f"{shown(formula)} has quotes or brackets that do not pair{where}: each needs its partner.")
 
 
 def _calculation(found: str, formula: str) -> ArgumentError:
     return ArgumentError(
-        f"{_shown(formula)} holds {_shown(found)}, which is neither a range nor one value: one function on plain "
+        f"{shown(formula)} holds {shown(found)}, which is neither a range nor one value: one function on plain "
         "ranges is evaluated; put a calculation into a cell and point to it."
     )
-
-
-def _shown(text: str) -> str:
-    text = " ".join(text.split())
-    return f"“{text if len(text) <= 80 else text[:77] + '...'}”"

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import io
+import shlex
 from collections.abc import Callable, Mapping
 from contextlib import nullcontext
 from dataclasses import dataclass, field, replace
@@ -15,7 +16,7 @@ from sheetfuncs.cells.observations import read_observations
 from sheetfuncs.checking import Check, check_observations
 from sheetfuncs.errors import ArgumentError, WorkbookBusyError, WorkbookError
 from sheetfuncs.hosts.places import predictions_at
-from sheetfuncs.hosts.recorded import Earlier, earlier_sheet, recorded_settings
+from sheetfuncs.hosts.recorded import Earlier, earlier_sheet, recorded_settings, sheets_of_other_ranges
 
 Step = Callable[[str], None]
 DEFAULT_LEVEL = 0.95
@@ -69,6 +70,7 @@ def check_book(request: Request, step: Step = lambda text: None) -> Done:
     predictions = predictions_at(check, request.places, request.level)
     if target is None:
         return Done(check, None, None, False, warnings, predictions)
+    warnings = (*warnings, *_about_what_is_there(request, target, check))
     earlier = earlier_sheet(request.book, target, check.settings)
     step("Drawing the sheet ...")
     sheet, more = _write(request, check, target, earlier, step)
@@ -113,6 +115,19 @@ def _target(request: Request) -> Path | None:
                 "choose another name with --out."
             )
     return target
+
+
+def _about_what_is_there(request: Request, target: Path, check: Check) -> tuple[str, ...]:
+    """What becomes of the copy that is there already. Refused where it holds a check that would not come back."""
+    if request.in_place or not target.exists():
+        return ()
+    others = sheets_of_other_ranges(target, request.book, check.settings)
+    if others:
+        raise WorkbookError(
+            f"{target} also holds the check of another range ({', '.join(others)}), which writing it anew would take "
+            f"out. Add this check to it with --in-place on {target}, or choose another file with --out."
+        )
+    return (f"The {target.name} that was there is kept: sheetfuncs undo {shlex.quote(str(target))} brings it back.",)
 
 
 def _busy_warnings(request: Request, target: Path | None) -> tuple[str, ...]:

@@ -5,12 +5,15 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from sheetfuncs.cells.address import parse_area
 from sheetfuncs.cells.block import Block, Kind
 from sheetfuncs.checking import Settings
 from sheetfuncs.report.elements import Value
+
+if TYPE_CHECKING:
+    from sheetfuncs.workbook.settings import OurSheet
 
 
 @dataclass(frozen=True)
@@ -39,6 +42,19 @@ def earlier_sheet(book: Path, target: Path, settings: Settings) -> Earlier:
     return Earlier(sheet_title(f"Check of {settings.sheet}", taken=taken), None, decision)
 
 
+def sheets_of_other_ranges(target: Path, book: Path, settings: Settings) -> list[str]:
+    """Titles of our sheets in the file to be replaced that neither this check nor the workbook would bring back."""
+    from sheetfuncs.workbook import find_our_sheets
+
+    kept = [(settings.sheet, settings.area)] + [_place(sheet) for sheet in find_our_sheets(book)]
+    return [sheet.name for sheet in find_our_sheets(target) if _place(sheet) not in kept]
+
+
+def _place(sheet: OurSheet) -> tuple[object, object]:
+    found = sheet.settings or {}
+    return found.get("sheet"), found.get("area")
+
+
 def recorded_settings(book: Path) -> tuple[str, Mapping[str, Any]] | None:
     """Title and settings of our sheet, where the workbook opens on one; None elsewhere, and where they were damaged."""
     from sheetfuncs.workbook import find_our_sheets
@@ -57,8 +73,7 @@ def _sheet_of(book: Path, settings: Settings) -> str | None:
     from sheetfuncs.workbook import find_our_sheets
 
     for sheet in find_our_sheets(book):
-        kept = sheet.settings or {}
-        if (kept.get("sheet"), kept.get("area")) == (settings.sheet, settings.area):
+        if _place(sheet) == (settings.sheet, settings.area):
             return sheet.name
     return None
 

@@ -7,6 +7,7 @@ import math
 import numpy as np
 import pytest
 from reference_cases import NAMES, ROUNDING_NOISE, as_number, load_case
+from reference_checks import same_p
 
 from sheetfuncs.core.collinearity import variance_inflation
 from sheetfuncs.core.fit import fit_design
@@ -80,15 +81,6 @@ def may_refuse(name, result):
     return (name, result.method, args.get("type")) == ("syn_smalln_a", "breusch_godfrey", "Chisq") and (
         (args["order"], args["fill"]) in {(1, "drop first rows"), (2, "0")}
     )
-
-
-def same_p(ours, expected, label):
-    if expected == 0.0:
-        assert ours < 1e-15, label  # R prints 1 - P there
-    elif expected < 1e-10:
-        assert math.log(ours) == pytest.approx(math.log(expected), rel=1e-7), label
-    else:
-        assert ours == pytest.approx(expected, rel=1e-7), label
 
 
 @pytest.mark.parametrize("name", [n for n in NAMES if "tests" in load_case(n).exact and n != "syn_constcol_a"])
