@@ -60,16 +60,24 @@ def read_selection(
     block, titles = (cells.block, []) if area.last_row is not None else _below_titles(cells.block)
     chosen = _Columns(block)
     chosen.choose(response, predictors, order, date_predictors)
-    used = [chosen.response, *chosen.predictors, *([] if chosen.order is None else [chosen.order])]
-    remarks = [*earlier, *titles, *chosen.remarks, *_formula_remarks(book, cells, used, chosen)]
-    order_block = None if chosen.order is None else block.columns([chosen.order])
-    return SelectedColumns(
-        block.columns([chosen.response]),
-        block.columns(chosen.predictors),
-        order_block,
-        tuple(remarks),
-        replace(area, sheet=block.sheet),
-    )
+    remarks = [*earlier, *titles, *chosen.remarks, *_formula_remarks(book, cells, chosen.used, chosen)]
+    return chosen.selected(tuple(remarks), area)
+
+
+def select_columns(
+    block: Block,
+    *,
+    response: str | None = None,
+    predictors: Sequence[str] | None = None,
+    order: str | None = None,
+    date_predictors: Collection[str] = (),
+) -> SelectedColumns:
+    """The same for a block of cells that a running program hands over. Arguments and errors as of `read_selection`."""
+    chosen = _Columns(block)
+    chosen.choose(response, predictors, order, date_predictors)
+    last_row, last_column = block.first_row + block.row_count - 1, block.worksheet_column(block.column_count - 1)
+    area = Area(block.sheet, block.first_row, block.first_column, last_row, last_column)
+    return chosen.selected(tuple(chosen.remarks), area)
 
 
 def _below_titles(block: Block) -> tuple[Block, list[str]]:
@@ -138,6 +146,18 @@ class _Columns:
                 f"{self._where()} leaves no predictor beside the response, {self.label(self.response)}; give a range "
                 "that holds the predictors too."
             )
+
+    @property
+    def used(self) -> list[int]:
+        return [self.response, *self.predictors, *([] if self.order is None else [self.order])]
+
+    def selected(self, remarks: tuple[str, ...], area: Area) -> SelectedColumns:
+        block = self.block
+        order = None if self.order is None else block.columns([self.order])
+        return SelectedColumns(
+            block.columns([self.response]), block.columns(self.predictors), order, remarks,
+            replace(area, sheet=block.sheet),
+        )
 
     def _place(self, name: str, what: str) -> int:
         wanted = " ".join(name.split())
