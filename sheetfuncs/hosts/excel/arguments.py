@@ -3,10 +3,9 @@
 from __future__ import annotations
 
 from functools import cache
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
-if TYPE_CHECKING:
-    import xlwings as xw
+from sheetfuncs.hosts.excel.ranges import within_used
 
 MANY_AREAS = "#VALUE!"
 
@@ -35,25 +34,9 @@ def _read(context: Any) -> None:
     elif context.range.api.Areas.Count > 1:  # "(B2:B9,D2:D9)", of which Excel would give the first part only
         context.value, context.meta["bare"] = MANY_AREAS, True
     else:
-        context.value = read_exactly(within_used_rows(context.range))
+        context.value = within_used(context.range).api.Value2  # as the cells hold it, nothing rounded
 
 
 def _unwrap(context: Any) -> None:
     if context.meta.get("bare"):
         context.value = context.value[0][0]
-
-
-def within_used_rows(cells: xw.Range) -> xw.Range:
-    """Whole columns cut behind the sheet's last used row; any other range as it is."""
-    from sheetfuncs.cells.address import MAX_ROWS
-
-    if cells.row + cells.shape[0] - 1 < MAX_ROWS:
-        return cells
-    used = cells.sheet.used_range
-    last = used.row + used.shape[0] - 1
-    return cells.resize(max(1, last - cells.row + 1), cells.shape[1])
-
-
-def read_exactly(cells: xw.Range) -> Any:
-    """What the cells hold: dates and currency as their numbers, error values as Excel's numbers for them."""
-    return cells.api.Value2

@@ -39,9 +39,14 @@ def as_rows(given: object, *, date1904: bool = False) -> object:
     if not isinstance(given, list | tuple):
         cell = as_cell(given, date1904=date1904)
         return cell if isinstance(cell, str) and cell in ERROR_TEXTS else [[cell]]
-    if given and not isinstance(given[0], list | tuple):
-        given = [given]
-    return [[as_cell(cell, date1904=date1904) for cell in row] for row in given]
+    return [[as_cell(cell, date1904=date1904) for cell in row] for row in two_dimensional(given)]
+
+
+def two_dimensional(given: object) -> Sequence[Sequence[Any]]:
+    """Rows of cells, from what Excel gives for a rectangle, for one row (a flat one) and for one cell (itself)."""
+    if not isinstance(given, list | tuple):
+        return [[given]]
+    return given if not given or isinstance(given[0], list | tuple) else [given]
 
 
 def as_option(given: object) -> object:
@@ -82,12 +87,9 @@ def exact(seen: Sequence[Sequence[Any]], held: object) -> list[list[Any]]:
     Excel rounds currency to four decimals and dates to milliseconds in what it shows to programs (`Range.Value`), not
     in what the cells hold (`Range.Value2`).
     """
-    rows = held if isinstance(held, list | tuple) else [[held]]
-    if rows and not isinstance(rows[0], list | tuple):
-        rows = [rows]
     return [
         [b if isinstance(a, datetime | Decimal) else a for a, b in zip(left, right, strict=True)]
-        for left, right in zip(seen, rows, strict=True)
+        for left, right in zip(seen, two_dimensional(held), strict=True)
     ]
 
 

@@ -1,0 +1,120 @@
+"""Why a cell with one of our functions shows what it shows."""
+
+from __future__ import annotations
+
+import re
+from typing import TYPE_CHECKING
+
+from sheetfuncs.cells.address import cell_name, is_address, parse_area
+from sheetfuncs.cells.block import ERROR_TEXTS, Block
+from sheetfuncs.errors import AddressError, ArgumentError, SheetfuncsError
+from sheetfuncs.functions.evaluate import evaluate, find_function, why
+from sheetfuncs.functions.formula import ParsedCall, RangeText, parse_formula
+from sheetfuncs.functions.registry import REGISTRY
+from sheetfuncs.hosts.excel.native import ask, on_mac
+from sheetfuncs.hosts.excel.ranges import read_block, within_used
+
+if TYPE_CHECKING:
+    import xlwings as xw
+
+_OURS = re.compile(rf"\b(?:{'|'.join(map(re.escape, sorted(REGISTRY, key=len, reverse=True)))})\s*\(", re.IGNORECASE)
+_PIECE = re.compile(r'"(?:[^"]|"")*"|\'(?:[^\']|\'\')*\'|[()]|[^"\'()]+|["\']')
+
+
+def explain_cell(cell: xw.Range) -> str:
+    """One or more sentences on the value of a cell that calls one of our functions.
+
+    Raises AddressError for a cell that does not, ArgumentError for a formula that cannot be read.
+    """
+    where = cell_name(cell.row, cell.column, cell.sheet.name)
+    calls = calls_in(_formula_of(cell))
+    if not calls:
+        raise AddressError(
+            f"{where} holds no function of sheetfuncs: select one cell with a FIT_ formula, and press the button again."
+        )
+    texts = [_explain(call, cell) for call in calls]
+    return f"{where}: " + "\n\n".join(dict.fromkeys(texts))
+
+
+def calls_in(formula: str) -> list[str]:
+    """Every call of one of our functions in a formula, from its name to its closing bracket."""
+    found, place = [], 0
+    while match := _OURS.search(formula, place):
+        end = _closing(formula, match.end())
+        found.append(formula[match.start() : end])
+        place = end
+    return found
+
+
+def _closing(formula: str, place: int) -> int:
+    depth = 1
+    for piece in _PIECE.finditer(formula, place):
+        depth += {"(": 1, ")": -1}.get(piece[0], 0)
+        if depth == 0:
+            return piece.end()
+    return len(formula)
+
+
+def _formula_of(cell: xw.Range) -> str:
+    """The formula behind a cell, also where it is filled from a formula above or beside it."""
+    formula = str(cell.formula or "")
+    parent = None if on_mac() or formula.startswith("=") else ask(cell, "SpillParent", "")
+    return str(parent.Formula) if parent is not None else formula
+
+
+def _explain(text: str, cell: xw.Range) -> str:
+    call = parse_formula(text)
+    function = find_function(call.name)
+    if len(call.arguments) > len(function.arguments):
+        raise ArgumentError(
+            f"{function.name} takes at most {len(function.arguments)} arguments and {len(call.arguments)} were given: "
+            f"{function.signature}."
+        )
+    given = _given(call, cell)
+    sentence = why(call.name, *given)
+    if sentence != "ok":
+        return f"{call.name} gives {evaluate(call.name, *given)}. {sentence}"
+    rows = _about_rows(call.name, given)
+    shown = cell.options(err_to_str=not on_mac()).value
+    if shown in ERROR_TEXTS and not rows:
+        return f"{call.name} gives a value now: have the sheet calculated again."
+    return f"{call.name} gives a value." + (f" {rows}" if rows else "")
+
+
+def _given(call: ParsedCall, cell: xw.Range) -> list[object]:
+    blocks: dict[str, Block] = {}
+    given: list[object] = []
+    for argument in call.arguments:
+        if isinstance(argument, RangeText):
+            if argument.text not in blocks:
+                blocks[argument.text] = read_block(_range_called(argument.text, cell))
+            given.append(blocks[argument.text])
+        else:
+            given.append(argument)
+    return given
+
+
+def _range_called(text: str, cell: xw.Range) -> xw.Range:
+    """The range that a formula's text means, seen from the cell that holds it."""
+    from sheetfuncs.hosts.excel.sheets import sheet_called
+
+    area = parse_area(text) if is_address(text.rstrip("#")) and not text.endswith("#") else None
+    sheet = cell.sheet if area is None or area.sheet is None else sheet_called(cell.sheet.book, area.sheet)
+    try:
+        return within_used(sheet.range(text if area is None else str(area.without_sheet())))
+    except SheetfuncsError:
+        raise
+    except Exception:
+        raise AddressError(
+            f"Excel does not find {text!r} here: give a range of this workbook, such as Jobs!C4:F64."
+        ) from None
+
+
+def _about_rows(name: str, given: list[object]) -> str:
+    """What FIT_WHY says of the rows behind a call on a response and predictors; empty where there is nothing to say."""
+    known = dict(zip([argument.name for argument in REGISTRY[name].arguments], given, strict=False))
+    if "response" not in known or known.get("predictors") is None:
+        return ""
+    options = {option: known[option] for option in ("intercept", "order") if known.get(option) is not None}
+    said = str(evaluate("FIT_WHY", known["response"], known["predictors"], **options))
+    return "" if said == "ok" else said.removeprefix("ok; ")

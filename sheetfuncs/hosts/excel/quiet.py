@@ -1,0 +1,31 @@
+"""Excel held still while a macro works: nothing flickers, asks or reacts, and all is as before at the end."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator
+from contextlib import ExitStack, contextmanager, suppress
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    import xlwings as xw
+
+_HELD = {"screen_updating": False, "display_alerts": False, "enable_events": False}
+
+Step = Callable[[str], None]
+
+
+@contextmanager
+def held_still(app: xw.App) -> Iterator[Step]:
+    """Gives a function that shows a step in the status bar. Every setting is restored, whatever happens."""
+    with ExitStack() as restoring:
+        for name in ("status_bar", *_HELD):
+            restoring.callback(_restore, app, name, getattr(app, name))
+        for name, value in _HELD.items():
+            setattr(app, name, value)
+        yield lambda text: _restore(app, "status_bar", f"sheetfuncs: {text}")
+
+
+def _restore(app: xw.App, name: str, value: Any) -> None:
+    # A setting that Excel does not take now must not hide the failure that led here, nor keep the others from it.
+    with suppress(Exception):
+        setattr(app, name, value)

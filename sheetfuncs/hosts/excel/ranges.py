@@ -1,0 +1,159 @@
+"""Ranges of a running Excel: which cells are meant by a selection, and what they hold."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from datetime import datetime
+from typing import TYPE_CHECKING, Any, cast
+
+import numpy as np
+
+from sheetfuncs.cells.address import cell_name
+from sheetfuncs.cells.block import ERROR_TEXTS, Block, Kind
+from sheetfuncs.errors import AddressError
+from sheetfuncs.hosts.excel.native import ask, on_mac
+from sheetfuncs.hosts.excel.values import as_cell, exact, needs_exact, two_dimensional
+
+if TYPE_CHECKING:
+    import xlwings as xw
+
+# One reading holds at most so many cells: macOS' scripting gives up on much larger answers.
+CELLS_A_READING = 200_000
+
+
+@dataclass(frozen=True)
+class Place:
+    """The cells that are meant, and one sentence for each thing that was decided on the way."""
+
+    cells: xw.Range
+    remarks: tuple[str, ...] = ()
+
+
+def place_of_selection(selection: xw.Range | None) -> Place:
+    """The data meant by a selection: itself; for a single cell its table, or the filled block around it.
+
+    Raises AddressError for several areas, for a selected chart or picture, and for a cell that stands alone.
+    """
+    if selection is None:
+        raise AddressError(
+            "No cells are selected (a chart or a picture is, or this is no worksheet): select the columns of the data, "
+            "or one cell inside them, and press the button again."
+        )
+    if "," in selection.address:
+        raise AddressError(
+            f"Several areas are selected ({selection.address.replace('$', '')}): select one rectangle that holds the "
+            "response and the predictors side by side, and press the button again."
+        )
+    if selection.size == 1:
+        return _around(selection)
+    return Place(within_used(selection))
+
+
+def _around(cell: xw.Range) -> Place:
+    where = cell_name(cell.row, cell.column)
+    table = cell.table
+    if table is not None and table.data_body_range is not None:
+        header, body = table.header_row_range, table.data_body_range
+        cells = body if header is None else cell.sheet.range(header, body)
+        return Place(cells, (f"{where} lies in the table {table.name}, which is used.",))
+    region = cell.current_region
+    if region.size == 1:
+        raise AddressError(
+            f"{cell_name(cell.row, cell.column, cell.sheet.name)} stands alone: select the columns of the data, or one "
+            "cell inside them, and press the button again."
+        )
+    address = region.get_address(False, False)
+    return Place(region, (f"{where} is one cell: the block around it, {address}, is used.",))
+
+
+def within_used(cells: xw.Range) -> xw.Range:
+    """Whole columns and whole rows, cut behind the last used row and column; any other range as it is."""
+    height, width = cells.sheet.cells.shape
+    whole_columns = cells.row + cells.shape[0] - 1 >= height
+    whole_rows = cells.column + cells.shape[1] - 1 >= width
+    if not whole_columns and not whole_rows:
+        return cells
+    used = cells.sheet.used_range
+    rows, columns = cells.shape
+    if whole_columns:
+        rows = max(1, used.row + used.shape[0] - cells.row)
+    if whole_rows:
+        columns = max(1, used.column + used.shape[1] - cells.column)
+    return cells.resize(min(rows, cells.shape[0]), min(columns, cells.shape[1]))
+
+
+def read_block(cells: xw.Range) -> Block:
+    """A range as a Block: exact numbers, dates as DATE cells, hidden rows, and where it stands."""
+    date1904 = counts_from_1904(cells.sheet.book)
+    rows: list[list[Any]] = []
+    for part in _parts(cells):
+        rows += _read(part)
+    dates = np.array([[isinstance(value, _Date) for value in row] for row in rows], bool).reshape(cells.shape)
+    block = Block.from_rows(
+        [[as_cell(value.held if isinstance(value, _Date) else value, date1904=date1904) for value in row]
+         for row in rows],
+        sheet=cells.sheet.name, first_row=cells.row, first_column=cells.column, hidden=hidden_rows(cells),
+        date1904=date1904,
+    )
+    block.kinds[dates & (block.kinds == Kind.NUMBER)] = Kind.DATE
+    return block
+
+
+def counts_from_1904(book: xw.Book) -> bool:
+    """Whether the workbook counts its dates from 1904."""
+    return bool(ask(book, "Date1904", "date_1904"))
+
+
+@dataclass(frozen=True)
+class _Date:
+    """A cell with a date format, and what it holds: its number, or the moment where Excel tells no more."""
+
+    held: object
+
+
+def _parts(cells: xw.Range) -> Iterator[xw.Range]:
+    height, width = cells.shape
+    step = max(1, CELLS_A_READING // width)
+    for start in range(0, height, step):
+        yield cells[start : start + step, :]
+
+
+def _read(cells: xw.Range) -> list[list[Any]]:
+    if on_mac():
+        return _read_on_mac(cells)
+    seen = cells.options(ndim=2, err_to_str=True).value
+    held = exact(seen, cells.api.Value2) if needs_exact(seen) else seen
+    return [
+        [_Date(number) if isinstance(value, datetime) else number for value, number in zip(left, right, strict=True)]
+        for left, right in zip(seen, held, strict=True)
+    ]
+
+
+def _read_on_mac(cells: xw.Range) -> list[list[Any]]:
+    """The same there, where error values are told apart by what the cells show.
+
+    xlwings' own err_to_str fails there on ranges of several rows (seen in the source of 0.37.8).
+    """
+    seen = cells.options(ndim=2).value
+    texts = two_dimensional(cells.api.string_value.get())
+    return [
+        [text if text in ERROR_TEXTS else _Date(value) if isinstance(value, datetime) else value
+         for value, text in zip(left, right, strict=True)]
+        for left, right in zip(seen, texts, strict=True)
+    ]
+
+
+def hidden_rows(cells: xw.Range) -> np.ndarray | None:
+    """Which rows are hidden or filtered out, bool (rows,); None where Excel does not say."""
+    try:
+        areas = cast("list[xw.Range]", cells.get_special_cells("visible"))
+    except Exception:  # on a protected sheet, say: the check then does not tell how many rows are hidden
+        return None
+    if not areas:  # all columns are hidden, so nothing is known of the rows
+        return None
+    hidden = np.ones(cells.shape[0], bool)
+    for area in areas:
+        first = area.row - cells.row
+        hidden[first : first + area.shape[0]] = False
+    return hidden
