@@ -95,8 +95,8 @@ def check_dates(source: Source, start: int, end: int, counts: Sequence[int], rul
     if not asked and source.role != "response":
         raise CellKindError(
             f"{source.label} holds dates or times (first in {source.cell(position)}), which are no predictor unless "
-            f"asked for: name it as the order (--order {source.name}), or, if days themselves are meant, as a "
-            f"predictor with --date-predictor {source.name}."
+            f"asked for: leave it out of the range, or name it as the time order (--order {source.name}) or, if days "
+            f"themselves are meant, as a predictor (--date-predictor {source.name})."
         )
     return f"{source.label} holds dates or times; they count in days."
 
@@ -153,13 +153,13 @@ def _refuse_levels(source: Source, levels: list[str], rows: int) -> None:
     if len(levels) == rows:
         raise CellKindError(
             f"{source.label} holds a different text in every used row ({shown(levels[0])}, ...), like a list of names; "
-            "such a column cannot explain anything: choose predictors without it (check: --predictors A,B)."
+            "such a column cannot explain anything: leave it out of the range, or name the others (--predictors A,B)."
         )
     if len(levels) > MOST_LEVELS:
         raise CellKindError(
             f"{source.label} is text with {len(levels):,} different values ({', '.join(map(shown, levels[:3]))}, ...); "
-            f"a category may have at most {MOST_LEVELS}: group them, or choose predictors without it "
-            "(check: --predictors A,B)."
+            f"a category may have at most {MOST_LEVELS}: group them, leave the column out of the range, or name the "
+            "others (--predictors A,B)."
         )
 
 

@@ -17,6 +17,7 @@ from sheetfuncs.checking import Check, check_observations
 from sheetfuncs.errors import ArgumentError, WorkbookBusyError, WorkbookError
 from sheetfuncs.hosts.places import predictions_at
 from sheetfuncs.hosts.recorded import Earlier, earlier_sheet, recorded_settings, sheets_of_other_ranges
+from sheetfuncs.judgement.words import listed
 
 Step = Callable[[str], None]
 DEFAULT_LEVEL = 0.95
@@ -146,7 +147,7 @@ def _as_recorded(request: Request) -> tuple[Request, tuple[str, ...]]:
     found = recorded_settings(request.book) if request.range_text is None else None
     if found is None:
         return request, ()
-    title, kept = found
+    kept = found.settings
     place = f"{quote_sheet(kept['sheet'])}!{kept['area']}"
     again = replace(
         request, range_text=place,
@@ -158,7 +159,10 @@ def _as_recorded(request: Request) -> tuple[Request, tuple[str, ...]]:
         intercept=request.intercept and bool(kept.get("intercept", True)),
         level=request.level if request.level != DEFAULT_LEVEL else float(kept.get("level", DEFAULT_LEVEL)),
     )
-    return again, (f"The workbook opens on “{title}”, so that check of {place} was made again with its settings.",)
+    changed = f", of which {listed(found.changed)} changed there" if found.changed else ""
+    return again, (
+        f"The workbook opens on “{found.title}”, so that check of {place} was made again with its settings{changed}.",
+    )
 
 
 def _read_and_check(request: Request, remarks: tuple[str, ...], step: Step) -> Check:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -11,6 +11,9 @@ from sheetfuncs.cells.address import parse_area
 from sheetfuncs.cells.block import Block, Kind
 from sheetfuncs.checking import Settings
 from sheetfuncs.report.elements import Value
+from sheetfuncs.report.entries import ENTRY_FIELDS, changed_entries, settings_from_entries
+from sheetfuncs.report.names import DECISION, ENTRY
+from sheetfuncs.report.record import DECISION_FIELDS
 
 if TYPE_CHECKING:
     from sheetfuncs.workbook.settings import OurSheet
@@ -55,8 +58,20 @@ def _place(sheet: OurSheet) -> tuple[object, object]:
     return found.get("sheet"), found.get("area")
 
 
-def recorded_settings(book: Path) -> tuple[str, Mapping[str, Any]] | None:
-    """Title and settings of our sheet, where the workbook opens on one; None elsewhere, and where they were damaged."""
+@dataclass(frozen=True)
+class Recorded:
+    """title: of our sheet. settings: what it was made with, changed as its cells say. changed: labels of those."""
+
+    title: str
+    settings: Mapping[str, Any]
+    changed: tuple[str, ...]
+
+
+def recorded_settings(book: Path) -> Recorded | None:
+    """What our sheet says, where the workbook opens on one; None elsewhere, and where its settings were damaged.
+
+    Raises ArgumentError for a cell of the settings that is not understood.
+    """
     from sheetfuncs.workbook import find_our_sheets
     from sheetfuncs.workbook.read import open_book
 
@@ -64,7 +79,8 @@ def recorded_settings(book: Path) -> tuple[str, Mapping[str, Any]] | None:
         active = opened.active_sheet
     for sheet in find_our_sheets(book):
         if sheet.name == active and sheet.settings and sheet.settings.get("sheet") and sheet.settings.get("area"):
-            return sheet.name, sheet.settings
+            settings = settings_from_entries(sheet.settings, _cells(book, sheet.name, ENTRY, ENTRY_FIELDS))
+            return Recorded(sheet.name, settings, tuple(changed_entries(sheet.settings, settings)))
     return None
 
 
@@ -80,19 +96,20 @@ def _sheet_of(book: Path, settings: Settings) -> str | None:
 
 def _decision(book: Path, sheet: str) -> dict[str, Value]:
     """The filled cells of the sheet's decision record, by field."""
-    from sheetfuncs.report.names import DECISION
-    from sheetfuncs.report.record import DECISION_FIELDS
+    found = _cells(book, sheet, DECISION, DECISION_FIELDS)
+    return {field: value for field, value in found.items() if value is not None}
+
+
+def _cells(book: Path, sheet: str, prefix: str, fields: Sequence[str]) -> dict[str, Value]:
+    """What stands in the cells that the sheet's hidden names point at, by field; without those whose name is gone."""
     from sheetfuncs.workbook.read import open_book
 
     found: dict[str, Value] = {}
     with open_book(book) as opened:
-        for place, field in enumerate(DECISION_FIELDS, 1):
-            formula = opened.local_name(sheet, f"{DECISION}{place}")
-            if formula is None:
-                continue
-            value = _first_value(opened.read(parse_area(formula)))
-            if value is not None:
-                found[field] = value
+        for place, field in enumerate(fields, 1):
+            formula = opened.local_name(sheet, f"{prefix}{place}")
+            if formula is not None:
+                found[field] = _first_value(opened.read(parse_area(formula)))
     return found
 
 

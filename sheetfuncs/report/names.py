@@ -1,4 +1,4 @@
-"""Hidden names of the sheet: the settings by which it is recognised, and the places of the decision record."""
+"""Hidden names of the sheet: the settings by which it is recognised, and the places of its cells to be filled in."""
 
 from __future__ import annotations
 
@@ -8,6 +8,7 @@ from typing import Any
 
 SETTINGS = "_sheetfuncs_settings_"
 DECISION = "_sheetfuncs_decision_"
+ENTRY = "_sheetfuncs_entry_"
 # A text constant in a formula holds at most 255 characters; doubled quotes are counted too, to be safe everywhere.
 _CHUNK = 240
 

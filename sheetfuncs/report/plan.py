@@ -14,7 +14,7 @@ from sheetfuncs.report.layout import COLUMN_PIXELS, FIRST, LAST, MARGIN_PIXELS, 
 from sheetfuncs.report.ledger import write_ledger
 from sheetfuncs.report.names import settings_to_names
 from sheetfuncs.report.paging import page_breaks
-from sheetfuncs.report.record import fingerprint_of, write_decision, write_settings
+from sheetfuncs.report.record import entries_of, fingerprint_of, write_decision, write_settings
 from sheetfuncs.report.reviewer import reserve_cross_check, why_no_copy, write_copy, write_cross_check
 from sheetfuncs.report.rows import write_rows
 from sheetfuncs.report.separation import write_separation
@@ -50,7 +50,7 @@ def plan_sheet(
         write_cross_check(page, check, start, write_copy(page, check))
     write_figures(page, panels)
     write_jumps(page)
-    settings = {**check.settings.to_dict(), "fingerprint": fingerprint}
+    settings = {**check.settings.to_dict(), "fingerprint": fingerprint, "shown": entries_of(check)}
     page.names.update(settings_to_names(settings))
     return _finished(page, check, settings, printed, data_sheet)
 

@@ -212,8 +212,8 @@ class _Columns:
         if len(dates) == 1:
             self.order = dates[0]
             self.remarks.append(
-                f"{_capital(self.label(dates[0]))} holds dates and was taken as the time order of the rows; name it "
-                "with --date-predictor to use it as a predictor."
+                f"{_capital(self.label(dates[0]))} holds dates and was taken as the time order of the rows; to use "
+                "it as a predictor, say so under Settings on the sheet, or with --date-predictor."
             )
 
     def _holds_dates(self, index: int) -> bool:

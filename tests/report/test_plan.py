@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 
 import numpy as np
 import pytest
@@ -14,6 +15,7 @@ from sheetfuncs.judgement.uses import uses
 from sheetfuncs.report.first_screen import CAUTION
 from sheetfuncs.report.layout import COLUMN_PIXELS, LAST, ROW_POINTS
 from sheetfuncs.report.links import to_area, to_row
+from sheetfuncs.report.names import ENTRY
 from sheetfuncs.report.statistics import METHODS, place_of
 from sheetfuncs.report.text import text_width
 
@@ -239,8 +241,13 @@ def test_the_settings_stand_in_cells_and_in_the_plan():
     check = orders(level=0.9)
     plan = planned(check)
     texts = [cell.value for cell in plan.cells]
-    assert {f"{SHEET}!{AREA}", "Weight (kg) and Holes", "90 %"} <= set(texts)
+    assert {f"{SHEET}!{AREA}", "Weight (kg); Holes", 0.9} <= set(texts)
     fingerprint = data_fingerprint(check.design)
-    assert plan.settings == {**check.settings.to_dict(), "fingerprint": fingerprint}
+    shown = plan.settings["shown"]
+    assert plan.settings == {**check.settings.to_dict(), "fingerprint": fingerprint, "shown": shown}
+    cells = {(cell.row, cell.column): cell.value for cell in plan.cells}
+    for place, value in enumerate(shown.values(), 1):
+        row, column = re.search(r"\$([A-Z]+)\$(\d+)$", plan.names[f"{ENTRY}{place}"]).group(2, 1)
+        assert cells[int(row), ord(column) - 64] == value
     assert f"SHA-256 {fingerprint}" in texts
     assert plan.title == TITLE

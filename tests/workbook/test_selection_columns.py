@@ -69,8 +69,8 @@ def test_a_single_date_column_becomes_the_order_and_is_said():
     found = select(ROWS, "Tank!A1:E10")
     assert names(found) == ("Litres", ["Hours", "Valve", "Crew"], "Day")
     assert found.remarks == (
-        "Column A (Day) holds dates and was taken as the time order of the rows; name it with --date-predictor to use "
-        "it as a predictor.",
+        "Column A (Day) holds dates and was taken as the time order of the rows; to use it as a predictor, say so "
+        "under Settings on the sheet, or with --date-predictor.",
         "Column B (Litres) is the response, the first column left.",
     )
 
