@@ -55,5 +55,5 @@ def test_unchanged_cells_change_nothing(checked: Done) -> None:
 
 def test_a_column_that_is_not_there_is_refused(checked: Done) -> None:
     changed(checked.out, checked.sheet, order="Weekday")
-    with pytest.raises(ArgumentError, match="The order .Weekday. is no column"):
+    with pytest.raises(ArgumentError, match=r"The order .Weekday. is no column"):
         check_book(Request(book=checked.out, in_place=True))
