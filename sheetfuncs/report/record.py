@@ -73,8 +73,10 @@ def write_settings(
         "What this sheet was made with. Change a pale cell, and run the check again with this sheet in front: it is "
         "written anew with the change, and the decision record stays.",
     )
+    first = page.kept.pop()[0]
     page.labelled("Data", f"{data_sheet}!{data_area}", label_span=_LABEL)
     _write_entries(page, check)
+    page.kept.append((first, page.row - 1))  # what can be changed stands on one page
     lines = [
         ("Workbook", check.settings.book),
         ("Checked", checked_at.strftime("%Y-%m-%d %H:%M") if checked_at else None),
