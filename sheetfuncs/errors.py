@@ -13,10 +13,11 @@
     |- NotApplicableError       #N/A      this test has no meaning for this fit
     |- UnknownFunctionError     #NAME?
     |- WorkbookError            #REF!     the file cannot be read or written
-       |- WorkbookFormatError             encrypted, damaged, or of a format that is not supported
-       |- WorkbookUnsafeError             an archive or XML that is not safe to open
-       |- WorkbookBusyError               someone has the file open
-       |- SheetNameError                  a sheet that is not there, or a name that is taken or not allowed
+    |  |- WorkbookFormatError             encrypted, damaged, or of a format that is not supported
+    |  |- WorkbookUnsafeError             an archive or XML that is not safe to open
+    |  |- WorkbookBusyError               someone has the file open
+    |  |- SheetNameError                  a sheet that is not there, or a name that is taken or not allowed
+    |- InstallError             #VALUE!   an add-in cannot be installed, checked or removed here
 
 A sentence says what was found and where, what is allowed, and what to try.
 """
@@ -104,3 +105,7 @@ class WorkbookBusyError(WorkbookError):
 
 class SheetNameError(WorkbookError):
     """A sheet that is not there, or a name that is taken or not allowed."""
+
+
+class InstallError(SheetfuncsError):
+    """An add-in cannot be installed, checked or removed here."""
