@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import replace
 from datetime import datetime
 from pathlib import Path
 from typing import Any, BinaryIO
 
-from sheetfuncs.cells.address import format_area
+from sheetfuncs.cells.address import MAX_COLUMNS, Area, column_letters, format_area
 from sheetfuncs.cells.block import Block
 from sheetfuncs.cells.observations import read_observations
 from sheetfuncs.checking import Check, check_observations
+from sheetfuncs.errors import ArgumentError
 from sheetfuncs.report.draw import draw_report
 from sheetfuncs.report.elements import SheetPlan, Value
 from sheetfuncs.workbook.selection_columns import select_columns
@@ -42,6 +43,31 @@ def check_block(
         remarks=(*remarks, *selected.remarks), date_predictors=dates, base_levels=bases, book=book,
         sheet=selected.area.sheet, area=format_area(replace(selected.area, sheet=None)),
     )
+
+
+def area_of_parts(parts: Sequence[Area]) -> tuple[Area, dict[str, Any]]:
+    """The rectangle over the parts of a selection, and settings that take their columns alone: the first one is the
+    response, the others are the predictors, in the order in which they were selected.
+
+    One part gives itself and no settings. Raises ArgumentError where the parts stand on different rows or sheets, or
+    are a single column.
+    """
+    first = parts[0]
+    if len(parts) == 1:
+        return first, {}
+    if any((part.sheet, part.first_row, part.last_row) != (first.sheet, first.first_row, first.last_row)
+           for part in parts):
+        said = ", ".join(format_area(replace(part, sheet=None)) for part in parts[:4])
+        raise ArgumentError(
+            f"The selected parts ({said}{', ...' if len(parts) > 4 else ''}) stand on different rows: select columns "
+            "over the same rows, the response first, or one whole block."
+        )
+    places = [place for part in parts for place in range(part.first_column, (part.last_column or MAX_COLUMNS) + 1)]
+    columns = [column_letters(place) for place in dict.fromkeys(places)]
+    if len(columns) == 1:
+        raise ArgumentError(f"Only column {columns[0]} is selected: select the response and at least one predictor.")
+    cover = replace(first, first_column=min(places), last_column=max(places))
+    return cover, {"response": columns[0], "predictors": columns[1:]}
 
 
 def draw_check(

@@ -5,10 +5,11 @@ from pathlib import Path
 
 import pytest
 
+from sheetfuncs.cells.address import parse_area
 from sheetfuncs.cells.block import Block
-from sheetfuncs.errors import BlockShapeError
+from sheetfuncs.errors import ArgumentError, BlockShapeError
 from sheetfuncs.hosts.files import Request, check_book
-from sheetfuncs.hosts.live import check_block, draw_check, same_range, title_of_check
+from sheetfuncs.hosts.live import area_of_parts, check_block, draw_check, same_range, title_of_check
 from sheetfuncs.workbook import find_our_sheets
 from sheetfuncs.workbook.read import open_book
 from sheetfuncs.workbook.selection import resolve
@@ -58,3 +59,30 @@ def test_one_column_is_refused_in_a_sentence() -> None:
     block = Block.from_rows([[1.0], [2.0], [4.0]], sheet="Data")
     with pytest.raises(BlockShapeError, match="leaves no predictor"):
         check_block(block, book="b")
+
+
+def parts(*texts: str):
+    return area_of_parts([parse_area(f"Orders!{text}") for text in texts])
+
+
+def test_parts_of_a_selection_are_columns_of_the_block_over_them(block: Block) -> None:
+    area, settings = parts("E4:E74", "G4:G74", "D4:D74")
+    assert str(area) == "Orders!D4:G74"
+    check = check_block(block, book="b", settings=settings)
+    whole = check_block(block, book="b").settings
+    d, (e, _, g) = whole.response, whole.predictors
+    assert (check.settings.response, check.settings.predictors) == (e, (g, d))
+    assert check.settings.area == "D4:G74"
+
+
+def test_one_part_is_taken_as_it_is() -> None:
+    assert parts("D4:G74") == (parse_area("Orders!D4:G74"), {})
+    assert parts("D:D", "F:G")[1] == {"response": "D", "predictors": ["F", "G"]}
+    assert parts("D4:E9", "E4:F9")[1] == {"response": "D", "predictors": ["E", "F"]}
+
+
+def test_parts_on_different_rows_and_a_single_column_are_refused() -> None:
+    with pytest.raises(ArgumentError, match=r"The selected parts \(D4:D74, F5:G74\) stand on different rows"):
+        parts("D4:D74", "F5:G74")
+    with pytest.raises(ArgumentError, match="Only column D is selected"):
+        parts("D4:D9", "D4:D9")
