@@ -32,7 +32,7 @@ THIRD_PARTY = {
     "report": {"numpy", "xlsxwriter"},
     "workbook": {"numpy", "lxml", "python_calamine"},
     "hosts": {"numpy"},
-    "hosts.excel": {"numpy", "xlwings"},
+    "hosts.excel": {"numpy", "xlwings", "pyopenvba"},
     "hosts.calc": {"numpy", "uno", "unohelper"},
     "cli": {"click"},
 }
