@@ -9,14 +9,11 @@ from typing import Any
 import numpy as np
 from scipy.linalg import lapack
 
-from sheetfuncs.core.basis import EPS, ROUNDINGS, Basis, column_lengths
+from sheetfuncs.core.basis import DETERMINED, EPS, ROUNDINGS, Basis, column_lengths
 from sheetfuncs.core.cross_products import apart
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply
 from sheetfuncs.core.threads import few_threads
-
-# A column of which no more than this share is left is determined by the others.
-DETERMINED = 1e-12
 
 
 @dataclass(frozen=True)

@@ -20,6 +20,8 @@ from sheetfuncs.errors import CollinearPredictorsError, NoVariationError, TooFew
 EPS = float(np.finfo(float).eps)
 # A column that is this many roundings of its own values away from the others is determined by them.
 ROUNDINGS = 16.0
+# A column of which no more than this share is left is determined by the others.
+DETERMINED = 1e-12
 # Columns of which at least this share is left after the others are told apart without a closer look.
 SUSPICIOUS = 1e-6
 # Below this the squares of what is left of a column lose digits to the end of the number range.
@@ -43,11 +45,11 @@ class Basis:
     raw_norm: np.ndarray
     intercept: bool
 
-    @property
+    @cached_property
     def n(self) -> int:
         return self.q.shape[0]
 
-    @property
+    @cached_property
     def rank(self) -> int:
         """Dimension of the column space, the constant counted."""
         return self.q.shape[1] + int(self.intercept)

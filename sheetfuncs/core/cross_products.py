@@ -7,6 +7,34 @@ from scipy.linalg import lapack
 
 # Cross products of columns of which at least this share is left after the others lose no digit that matters.
 WELL_APART = 1e-3
+# The same for one step without a second one that takes back its roundings; of squares.
+FAR_APART = 1e-2
+
+
+def coordinates(gram: np.ndarray, enough: np.ndarray | None = None) -> np.ndarray | None:
+    """Coordinates of the last of some columns along the others, made orthonormal one after the other; (m,).
+
+    gram: (m, m) cross products, of which the lower triangle is read. The last coordinate is the length of what is left,
+    so that all squares add up to the column's own. Squares of the first few are what these first few columns explain.
+    enough: (m - 1,) squares of what must be left of the other columns, by default a hundredth of what they are.
+    None where less is left, or less than a hundredth of the last column, since both would cost digits.
+    """
+    root, info = lapack.dpotrf(gram, lower=1)
+    if info != 0:
+        return None
+    left, before = root.diagonal() ** 2, gram.diagonal()
+    least = FAR_APART * before
+    if enough is not None:
+        least[:-1] = enough
+    return root[-1] if (left >= least).all() else None
+
+
+def leading(gram: np.ndarray, count: int) -> np.ndarray:
+    """The lower triangle of the cross products of the first columns and the last one, (count + 1, count + 1)."""
+    part = np.empty((count + 1, count + 1))
+    part[:count, :count] = gram[:count, :count]
+    part[count, :count], part[count, count] = gram[-1, :count], gram[-1, -1]
+    return part
 
 
 def apart(q: np.ndarray, e: np.ndarray) -> tuple[np.ndarray | None, int]:

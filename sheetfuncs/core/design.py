@@ -63,11 +63,11 @@ class Design:
     rows: np.ndarray
     base_levels: tuple[tuple[str, str], ...] = ()
 
-    @property
+    @cached_property
     def n(self) -> int:
         return self.response.shape[0]
 
-    @property
+    @cached_property
     def p(self) -> int:
         """Number of coefficients, the constant counted."""
         return self.columns.shape[1] + int(self.intercept)

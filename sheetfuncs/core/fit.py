@@ -2,18 +2,32 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, wraps
 from math import isfinite, sqrt
+from typing import Any, TypeVar
 
 import numpy as np
 from scipy.special import fdtrc, stdtr, stdtrit
 
-from sheetfuncs.core.basis import EPS, ROUNDINGS, SMALLEST, Basis, back_substituted, centred, column_means, factorize
+from sheetfuncs.core.basis import (
+    DETERMINED,
+    EPS,
+    ROUNDINGS,
+    SMALLEST,
+    Basis,
+    back_substituted,
+    centred,
+    column_means,
+    factorize,
+)
 from sheetfuncs.core.design import Design
 from sheetfuncs.core.refinement import ill_conditioned, loses_digits, refined_basis, refined_solution
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import NoVariationError
+
+Of = TypeVar("Of")
 
 
 @dataclass(frozen=True, eq=False)
@@ -33,24 +47,24 @@ class Fit:
     perfect: bool
     noise: float
 
-    @property
+    @cached_property
     def n(self) -> int:
         return self.design.n
 
-    @property
+    @cached_property
     def p(self) -> int:
         return self.design.p
 
-    @property
+    @cached_property
     def df(self) -> int:
         return self.n - self.p
 
     @property
     def relative_noise(self) -> float:
         """The roundings in the residuals, relative to the residuals: 1 and more where they are nothing else."""
-        return self.noise / float(np.sqrt(self.rss)) if self.rss > 0 else 1.0
+        return self.noise / sqrt(self.rss) if self.rss > 0 else 1.0
 
-    @property
+    @cached_property
     def has_error_bars(self) -> bool:
         """Whether the residuals say anything: some degrees of freedom, and more than rounding noise."""
         return self.df > 0 and not self.perfect
@@ -58,6 +72,32 @@ class Fit:
     @cached_property
     def fitted(self) -> np.ndarray:
         return self.design.response - self.residuals
+
+    @cached_property
+    def rows_in_basis(self) -> np.ndarray:
+        """(n, p + 1): the constant direction where there is an intercept, the basis, and the residuals; columns of
+        length 1, from whose cross products over some of the rows many regressions follow."""
+        first = int(self.design.intercept)
+        rows = np.empty((self.n, self.p + 1))
+        rows[:, :first] = 1.0 / sqrt(self.n)
+        rows[:, first:-1] = self.basis.q
+        np.divide(self.residuals, self.length or 1.0, out=rows[:, -1])
+        return rows
+
+    @cached_property
+    def length(self) -> float:
+        """Euclidean length of the residuals."""
+        return sqrt(self.rss)
+
+    @cached_property
+    def told_apart_to(self) -> float:
+        """A share of a column below which what the predictors leave of it may be rounding."""
+        return max(DETERMINED, ROUNDINGS * EPS * self.basis.amplification)
+
+    @cached_property
+    def results(self) -> dict[Any, Any]:
+        """What `once_per_fit` keeps."""
+        return {}
 
     @cached_property
     def sorted_residuals(self) -> np.ndarray:
@@ -173,6 +213,8 @@ class Fit:
 
     def nothing_left(self) -> str:
         """Why the residuals say nothing; empty where they do."""
+        if self.has_error_bars:
+            return ""
         if self.df == 0:
             return (
                 f"{self.n} rows for {self.p} coefficients leave no degrees of freedom: the line passes through every "
@@ -181,9 +223,20 @@ class Fit:
         if self.perfect and self.tss == 0.0:
             same = "the same value" if self.design.intercept else "a zero"
             return f"Every used row has {same} of {self.design.response_name}, so that there is nothing to explain."
-        if self.perfect:
-            return "The fit is perfect: what is left is rounding noise, and nothing can be tested on it."
-        return ""
+        return "The fit is perfect: what is left is rounding noise, and nothing can be tested on it."
+
+
+def once_per_fit(compute: Callable[[Fit], Of]) -> Callable[[Fit], Of]:
+    """Keep what compute(fit) gives with the fit, for all methods that ask for it."""
+
+    @wraps(compute)
+    def kept(fit: Fit) -> Of:
+        if compute not in fit.results:
+            fit.results[compute] = compute(fit)
+        found: Of = fit.results[compute]
+        return found
+
+    return kept
 
 
 def fit_design(design: Design) -> Fit:

@@ -7,13 +7,13 @@ from dataclasses import replace
 from typing import Any
 
 import numpy as np
-from scipy.linalg import lapack
 from scipy.special import fdtr, fdtrc
 
 from sheetfuncs.core.auxiliary import refused
-from sheetfuncs.core.basis import ROUNDINGS, column_means, factorize
+from sheetfuncs.core.basis import ROUNDINGS, factorize
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.some_rows import rest_of_rows
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import ArgumentError, NumbersError
 
@@ -21,9 +21,6 @@ SAME_SPREAD = "the errors have the same variance in both parts of the rows"
 _ALTERNATIVES = {"greater": "greater", "less": "less", "two-sided": "two.sided"}
 _AGAINST = {"greater": "against a wider spread in the later part", "less": "against a wider spread in the earlier part",
             "two-sided": "against a wider spread in either part"}
-# Cross products square what is left of a column or of the residuals: with less than this, columns are decomposed.
-_ENOUGH_OF_COLUMN = 1e-3
-_ENOUGH_OF_RESIDUALS = 1e-2
 
 
 def goldfeld_quandt(
@@ -153,35 +150,9 @@ def _variant(fit: Fit, first: int, second: int, alternative: str, column: int | 
 
 def _residual_sum(fit: Fit, rows: slice | np.ndarray) -> float:
     """Residual sum of squares of these rows' own fit; from cross products where they are good enough for it."""
-    found = _from_cross_products(fit, rows)
+    found = rest_of_rows(fit, rows)
     if found is not None:
         return found
     basis = factorize(fit.design.columns[rows], fit.design.column_names, intercept=fit.design.intercept)
     left = basis.project_out(fit.residuals[rows])
     return float(left @ left)
-
-
-def _from_cross_products(fit: Fit, rows: slice | np.ndarray) -> float | None:
-    """The basis of the whole fit spans the same columns in these rows, and is nearly orthogonal there as a rule."""
-    q, e = fit.basis.q[rows], fit.residuals[rows]
-    total = float(e @ e)
-    if fit.design.intercept:
-        mean = column_means(q)
-        gram = q.T @ q - q.shape[0] * np.outer(mean, mean)
-        along = q.T @ e - mean * e.sum()
-        total -= float(e.sum()) ** 2 / q.shape[0]
-    else:
-        gram, along = q.T @ q, q.T @ e
-    size = np.diag(gram)
-    before = np.einsum("ij,ij->j", q, q)
-    if not (size > _ENOUGH_OF_COLUMN * before).all() or total <= _ENOUGH_OF_RESIDUALS * float(e @ e):
-        return None
-    if not size.shape[0]:
-        return total
-    unit = np.sqrt(size)
-    root, info = lapack.dpotrf(gram / np.outer(unit, unit), lower=1)
-    if info != 0 or not (np.diag(root) ** 2 > _ENOUGH_OF_COLUMN).all():
-        return None
-    coordinates = lapack.dtrtrs(root, along / unit, lower=1)[0]
-    rest = total - float(coordinates @ coordinates)
-    return rest if rest > _ENOUGH_OF_RESIDUALS * total else None

@@ -9,14 +9,17 @@ import numpy as np
 from scipy.special import chdtrc, fdtrc
 
 from sheetfuncs.core.auxiliary import Addition, add_columns, refused
-from sheetfuncs.core.basis import ROUNDINGS, column_means, factorize
-from sheetfuncs.core.cross_products import apart
-from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.basis import ROUNDINGS, factorize
+from sheetfuncs.core.cross_products import FAR_APART, coordinates, leading
+from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.quadratic_forms import durbin_watson_tails
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import ArgumentError, NumbersError
 
 NO_CORRELATION = "errors are not correlated with earlier ones"
+# Tests of up to so many lags share their cross products.
+TOGETHER = 4
 _FILLS = {"zeros": "0", "omitted": "drop first rows"}
 _TYPES = {"chi-square": "Chisq", "F": "F"}
 _ALTERNATIVES = {"positive": "greater", "negative": "less", "two-sided": "two.sided"}
@@ -183,6 +186,9 @@ def _too_few_rows(fit: Fit, lags: int, before_first: str) -> DoesNotApply | None
 
 def _lagged_sums(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float] | DoesNotApply:
     """Sums of squares of the residuals that design and lags explain, and leave (0 if rounding); or why none."""
+    quick = _sums_by_products(fit, lags, zeros=zeros)
+    if quick is not None:
+        return quick
     e = fit.design.in_order(fit.residuals)
     lagged = np.zeros((fit.n, lags), order="F")
     for lag in range(1, lags + 1):
@@ -194,9 +200,6 @@ def _lagged_sums(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float] | D
     else:
         if np.linalg.norm(e[lags:]) <= ROUNDINGS * fit.noise:
             return _cannot("Without the first rows the fit is perfect, so that nothing can be tested on it.", "#NUM!")
-        quick = _omitted_by_products(fit, e, lagged, lags)
-        if quick is not None:
-            return quick
         try:
             part, added = _omitted_by_factors(fit, e, lagged, lags)
         except NumbersError:
@@ -206,20 +209,36 @@ def _lagged_sums(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float] | D
     return part, 0.0 if added.fits_perfectly(fit.noise) else added.rest
 
 
-def _omitted_by_products(fit: Fit, e: np.ndarray, lagged: np.ndarray, lags: int) -> tuple[float, float] | None:
-    """The sums without the first rows from the whole fit's basis; None where that could cost digits."""
-    q = fit.basis.q if fit.design.order is None else fit.basis.q[fit.design.order]
-    columns = np.concatenate([q[lags:], lagged[lags:]], axis=1)
-    kept = centred_kept = e[lags:]
-    if fit.basis.intercept:
-        columns -= column_means(columns)
-        centred_kept = kept - column_means(kept)
-    left, _ = apart(columns, centred_kept)
-    if left is None:
+def _sums_by_products(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float] | None:
+    """The same from cross products; None where that could cost digits."""
+    if lags > TOGETHER or fit.told_apart_to > FAR_APART:
         return None
-    explained = kept - left
-    part, rest = float(explained @ explained), float(left @ left)
-    return (part, rest) if rest > 1e-12 * part else None
+    gram, first = _lagged_products(fit)
+    if not zeros:
+        whole, gram = gram, gram - first[:lags].T @ first[:lags]
+        if (gram.diagonal() < FAR_APART * whole.diagonal()).any():
+            return None
+    found = coordinates(leading(gram, fit.p + lags))
+    if found is None:
+        return None
+    squares = fit.rss * found**2
+    rest = float(squares[-1])
+    # The residuals of all rows are orthogonal to the design, those without the first rows are not.
+    part = float(np.add.reduce(squares[fit.p if zeros else 0 : -1]))
+    return (part, rest) if rest > (ROUNDINGS * fit.noise) ** 2 else None
+
+
+@once_per_fit
+def _lagged_products(fit: Fit) -> tuple[np.ndarray, np.ndarray]:
+    """Cross products of basis, residuals of 1 to TOGETHER rows before (zeros before the first), and residuals; and the
+    first TOGETHER rows of these columns. Rows in time order, columns of about length 1."""
+    rows = fit.design.in_order(fit.rows_in_basis)
+    columns = np.zeros((fit.n, fit.p + TOGETHER + 1))
+    columns[:, : fit.p], columns[:, -1] = rows[:, :-1], rows[:, -1]
+    for lag in range(1, TOGETHER + 1):
+        columns[lag:, fit.p + lag - 1] = rows[:-lag, -1]
+    with few_threads(columns.size):
+        return columns.T @ columns, columns[:TOGETHER].copy()
 
 
 def _omitted_by_factors(fit: Fit, e: np.ndarray, lagged: np.ndarray, lags: int) -> tuple[float, Addition]:

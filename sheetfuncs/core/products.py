@@ -11,8 +11,8 @@ from __future__ import annotations
 import numpy as np
 from scipy.linalg import lapack, solve_triangular
 
-from sheetfuncs.core.auxiliary import DETERMINED, Addition
-from sheetfuncs.core.basis import EPS, ROUNDINGS, Basis
+from sheetfuncs.core.auxiliary import Addition
+from sheetfuncs.core.basis import DETERMINED, EPS, ROUNDINGS, Basis
 from sheetfuncs.core.threads import few_threads
 
 PRODUCTS_AT_MOST = 2_000

@@ -5,8 +5,8 @@ from __future__ import annotations
 import numpy as np
 from scipy.special import fdtrc
 
-from sheetfuncs.core.auxiliary import DETERMINED, refused
-from sheetfuncs.core.basis import EPS, ROUNDINGS
+from sheetfuncs.core.auxiliary import refused
+from sheetfuncs.core.basis import DETERMINED, EPS, ROUNDINGS
 from sheetfuncs.core.design import Design
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic

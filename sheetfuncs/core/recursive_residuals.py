@@ -7,8 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.linalg import lapack
 
-from sheetfuncs.core.auxiliary import DETERMINED
-from sheetfuncs.core.basis import EPS, ROUNDINGS, back_substituted
+from sheetfuncs.core.basis import DETERMINED, EPS, ROUNDINGS, back_substituted
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.threads import few_threads
 

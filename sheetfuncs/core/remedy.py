@@ -9,8 +9,7 @@ from typing import Any
 import numpy as np
 from scipy.special import stdtr, stdtrit
 
-from sheetfuncs.core.auxiliary import DETERMINED
-from sheetfuncs.core.basis import EPS, ROUNDINGS, Basis, centred, factorize
+from sheetfuncs.core.basis import DETERMINED, EPS, ROUNDINGS, Basis, centred, factorize
 from sheetfuncs.core.design import Design
 from sheetfuncs.core.results import DoesNotApply
 from sheetfuncs.core.threads import few_threads

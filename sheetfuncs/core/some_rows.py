@@ -7,9 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.linalg import lapack
 
-from sheetfuncs.core.auxiliary import DETERMINED
-from sheetfuncs.core.basis import EPS, ROUNDINGS, column_means
-from sheetfuncs.core.cross_products import apart
+from sheetfuncs.core.basis import DETERMINED, EPS, ROUNDINGS, column_means
+from sheetfuncs.core.cross_products import FAR_APART, apart, coordinates
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.threads import few_threads
 
@@ -31,6 +30,10 @@ def fit_rows(fit: Fit, rows: slice | np.ndarray) -> PartialFit:
     design's: a category that does not occur there, a predictor that does not vary.
     """
     basis = fit.basis
+    rest = rest_of_rows(fit, rows)
+    if rest is not None:
+        count = rows.shape[0] if isinstance(rows, np.ndarray) else len(range(*rows.indices(fit.n)))
+        return PartialFit(count, fit.p, rest)
     q, e = basis.q[rows], fit.residuals[rows]
     with few_threads(q.size):
         if basis.intercept:
@@ -40,6 +43,17 @@ def fit_rows(fit: Fit, rows: slice | np.ndarray) -> PartialFit:
         if left is None:
             left, rank = _by_pivoting(q, e, max(DETERMINED, ROUNDINGS * EPS * basis.amplification))
     return PartialFit(e.shape[0], rank + int(basis.intercept), float(left @ left))
+
+
+def rest_of_rows(fit: Fit, rows: slice | np.ndarray) -> float | None:
+    """The residual sum of squares of these rows' own fit, from cross products; None where that could cost digits, and
+    where fewer coefficients than the whole design's can be told apart there."""
+    if fit.told_apart_to > FAR_APART:
+        return None
+    part = fit.rows_in_basis[rows]
+    with few_threads(part.size):
+        found = coordinates(part.T @ part)
+    return None if found is None else fit.rss * float(found[-1]) ** 2
 
 
 def _by_pivoting(q: np.ndarray, e: np.ndarray, limit: float) -> tuple[np.ndarray, int]:

@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 import threading
-from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import AbstractContextManager, nullcontext
 from functools import cache
 
 from threadpoolctl import LibController, ThreadpoolController
@@ -21,23 +20,30 @@ def blas_libraries() -> list[LibController]:
     return ThreadpoolController().select(user_api="blas").lib_controllers
 
 
-@contextmanager
-def few_threads(elements: int) -> Iterator[None]:
+class _OneThread:
+    """Holds every BLAS library to one thread; threadpoolctl's own context describes every library each time, which
+    takes longer than a small factorization."""
+
+    def __enter__(self) -> None:
+        self.counts = [(library, library.num_threads or 1) for library in blas_libraries()]
+        _active.limited = True
+        for library, _ in self.counts:
+            library.set_num_threads(1)
+
+    def __exit__(self, *_: object) -> None:
+        _active.limited = False
+        for library, count in self.counts:
+            library.set_num_threads(count)
+
+
+_AS_IT_IS: AbstractContextManager[None] = nullcontext()
+
+
+def few_threads(elements: int) -> AbstractContextManager[None]:
     """A context with one BLAS thread where the matrix has fewer than ONE_THREAD_BELOW elements.
 
     Inside such a context a further one does nothing.
     """
     if elements >= ONE_THREAD_BELOW or getattr(_active, "limited", False):
-        yield
-        return
-    # threadpoolctl's own context describes every library each time, which takes longer than a small factorization.
-    counts = [(library, library.num_threads or 1) for library in blas_libraries()]
-    _active.limited = True
-    try:
-        for library, _ in counts:
-            library.set_num_threads(1)
-        yield
-    finally:
-        _active.limited = False
-        for library, count in counts:
-            library.set_num_threads(count)
+        return _AS_IT_IS
+    return _OneThread()

@@ -7,8 +7,8 @@ from typing import Any
 import numpy as np
 from scipy.special import chdtrc, fdtrc
 
-from sheetfuncs.core.auxiliary import DETERMINED, Addition, add_columns, refused
-from sheetfuncs.core.basis import ROUNDINGS
+from sheetfuncs.core.auxiliary import Addition, add_columns, refused
+from sheetfuncs.core.basis import DETERMINED, ROUNDINGS
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.products import PRODUCTS_AT_MOST, explain_by_products, number_of_products
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
