@@ -1,0 +1,86 @@
+"""One call of a worksheet function: its arguments as LibreOffice hands them over, its value as a cell shows it."""
+
+from __future__ import annotations
+
+import struct
+
+from sheetfuncs_bridge import protocol
+from sheetfuncs_bridge.client import CELLS, Packed, WorkerTrouble
+
+ERROR_CODES = {
+    "#NULL!": 521, "#DIV/0!": 532, "#VALUE!": 519, "#REF!": 524, "#NAME?": 525, "#NUM!": 503, "#N/A": 32767,
+}
+NO_ANSWER = "#VALUE!"
+# A quiet NaN whose low word is an error's code: LibreOffice shows it as that error, also inside a matrix.
+ERRORS = {
+    text: struct.unpack("<d", struct.pack("<Q", 0x7FF8_0000_0000_0000 | code))[0] for text, code in ERROR_CODES.items()
+}
+
+
+def call(recalculation, document, name: str, given):
+    """The value of a function: a float, a text, or a list of rows of None, float, bool, str and error texts.
+
+    given: its arguments; ranges as XCellRange, options as None, float, str, or rows of cells.
+    """
+    recalculation.begin_call()
+    try:
+        if recalculation.trouble is not None:
+            return NO_ANSWER
+        head, blocks = gather(recalculation, document, name, given)
+        answer = CELLS.request("evaluate", head, blocks)
+    except WorkerTrouble as trouble:
+        recalculation.trouble = str(trouble)
+        return NO_ANSWER
+    finally:
+        recalculation.end_call()
+    return value_of(answer)
+
+
+def value_of(answer):
+    """What a worker's answer to "evaluate" holds."""
+    if answer.status != "ok":
+        return answer.head.get("cell_error", NO_ANSWER)
+    if answer.head.get("rows"):
+        return protocol.rows_of_block(protocol.unpack(answer.part))
+    return answer.head.get("value")
+
+
+def gather(recalculation, document, name: str, given):
+    """(head, blocks) of the request: ranges become packed blocks, the rest stays in the head."""
+    ranges = [value for value in given if hasattr(value, "getDataArray")]
+    blocks = recalculation.packed(document, ranges)
+    places = iter(range(len(blocks)))
+    arguments = []
+    for value in given:
+        if hasattr(value, "getDataArray"):
+            arguments.append({"block": next(places)})
+        elif isinstance(value, tuple):  # cells that stand for an optional argument
+            arguments.append({"block": len(blocks)})
+            blocks.append(Packed(protocol.pack(protocol.block_of_rows(value))))
+        else:
+            arguments.append({"value": value})
+    return {"name": name, "arguments": arguments}, blocks
+
+
+def as_scalar(value):
+    """The value for a function that gives one cell."""
+    if isinstance(value, list):
+        value = value[0][0] if value and value[0] else None
+    return _cell(value)
+
+
+def as_matrix(value):
+    """The value for a function that gives rows of cells."""
+    if not isinstance(value, list):
+        return ((_cell(value),),)
+    return tuple(tuple(map(_cell, row)) for row in value)
+
+
+def _cell(value):
+    if type(value) is float:
+        return value
+    if value is None:
+        return ""
+    if isinstance(value, (bool, int)):
+        return float(value)
+    return ERRORS.get(value, value)

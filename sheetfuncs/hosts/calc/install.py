@@ -1,0 +1,103 @@
+"""Put the extension into LibreOffice, and take it out again."""
+
+from __future__ import annotations
+
+import contextlib
+import json
+import subprocess
+import sys
+import tempfile
+from pathlib import Path
+from typing import Any
+
+import sheetfuncs
+from sheetfuncs.errors import ArgumentError
+from sheetfuncs.hosts.calc import office
+from sheetfuncs.hosts.calc.build import build_extension
+
+SECONDS = 20  # the longest wait for one value in a cell
+LONGEST_SECONDS = 180
+SCRIPT = Path(__file__).parent / "extension_script.py"
+
+
+def install(profile: Path | None = None, *, seconds: float = SECONDS) -> str:
+    """Install or replace the extension in a profile (None: the user's own); returns a sentence on what to do next.
+
+    It records this interpreter, which the worker runs in from then on. Works as root too, where LibreOffice's own
+    command refuses. Raises ArgumentError where LibreOffice is not there, runs, or refuses.
+    """
+    with tempfile.TemporaryDirectory() as folder:
+        file = Path(folder) / "sheetfuncs.oxt"
+        file.write_bytes(build_extension(settings(seconds)))
+        found = ask_office(profile, "add", str(file))
+    if not found.get("registered"):
+        raise ArgumentError("LibreOffice took the extension but does not list it; try `sheetfuncs calc install` again.")
+    ask_office(profile, "list")  # the first start after an installation settles it
+    return (
+        f"The extension (version {found['registered']}) is in LibreOffice and runs {sys.executable}. Start Calc: the "
+        "functions FIT_... are in the function wizard under Statistical, the check is in the menu Regression check."
+    )
+
+
+def remove(profile: Path | None = None) -> str:
+    """Take the extension out of a profile; workbooks stay as they are."""
+    ask_office(profile, "remove")
+    return "The extension is no longer in LibreOffice; formulas with FIT_... keep their text and show #NAME?."
+
+
+def settings(seconds: float = SECONDS) -> dict[str, object]:
+    """What the bridge needs to know: which Python, where sheetfuncs is, its version, the limit in seconds."""
+    return {
+        "interpreter": sys.executable,
+        "package_folder": str(Path(sheetfuncs.__file__).resolve().parents[1]),
+        "version": sheetfuncs.__version__,
+        "seconds": seconds,
+    }
+
+
+def ask_office(profile: Path | None, *action: str) -> dict[str, Any]:
+    """Start LibreOffice without a window, let it add, remove or list the extension, and end it."""
+    folder = office.find_office()
+    python = office.find_uno_python(folder)
+    if python is None:
+        raise ArgumentError(
+            f"LibreOffice in {folder} has no Python that knows it: install its Python part (Debian: python3-uno)."
+        )
+    with office.Office(profile, folder=folder) as program:
+        command = [str(python), str(SCRIPT), program.address, *action]
+        with tempfile.TemporaryFile("w+") as said, tempfile.TemporaryFile("w+") as errors:
+            asking = subprocess.Popen(command, env=office.clean_environment(), stdout=said, stderr=errors)
+            try:
+                _wait_for(asking, program)
+            finally:
+                asking.kill()
+                asking.wait()
+            said.seek(0)
+            errors.seek(0)
+            return _said(said.read(), errors.read())
+
+
+def _wait_for(asking: subprocess.Popen[bytes], program: office.Office) -> None:
+    """Until the question is answered. A program that ended before it was asked handed over to one that runs."""
+    for _ in range(LONGEST_SECONDS * 5):
+        with contextlib.suppress(subprocess.TimeoutExpired):
+            asking.wait(0.2)
+            return
+        if program.wait(0):
+            with contextlib.suppress(subprocess.TimeoutExpired):
+                asking.wait(5)
+                return
+            raise ArgumentError("LibreOffice is running with this profile: close all its windows, then try again.")
+    raise ArgumentError("LibreOffice did not answer within three minutes; try again.")
+
+
+def _said(said: str, errors: str) -> dict[str, Any]:
+    try:
+        answer: dict[str, Any] = json.loads(said.strip().splitlines()[-1])
+    except (ValueError, IndexError):
+        last = (errors.strip().splitlines() or ["no message"])[-1]
+        raise ArgumentError(f"LibreOffice could not be asked ({last[:200]}); start it once by hand, close it, and try "
+                            "again.") from None
+    if "trouble" in answer:
+        raise ArgumentError(f"LibreOffice refused: {answer['trouble']}")
+    return answer
