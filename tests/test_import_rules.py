@@ -33,10 +33,14 @@ THIRD_PARTY = {
     "workbook": {"numpy", "lxml", "python_calamine"},
     "hosts": {"numpy"},
     "hosts.excel": {"numpy", "xlwings", "pyopenvba"},
-    "hosts.calc": {"numpy", "uno", "unohelper"},
+    "hosts.calc": {"numpy"},
+    "hosts.calc.bridge": {"uno", "unohelper", "com", "org", "sheetfuncs_bridge"},  # inside LibreOffice
+    "hosts.calc.extension_script": {"uno", "unohelper", "com"},
+    "hosts.calc.protocol": set(),  # copied into LibreOffice's side too
     "cli": {"click"},
 }
 LATE_ONLY = {"statsmodels", "pandas", "xlwings", "scipy.stats"}
+INSIDE_OFFICE = {"hosts.calc.bridge", "hosts.calc.extension_script", "hosts.calc.protocol"}  # nothing of sheetfuncs there
 NEVER = {"xlwings.pro"}  # its licence is commercial
 
 
@@ -69,15 +73,24 @@ def within(name: str, packages: set[str]) -> bool:
     return any(name == package or name.startswith(package + ".") for package in packages)
 
 
+def allowed_in(module: str) -> set[str]:
+    """The third-party packages of the nearest folder, or of the module itself, that has an entry."""
+    parts = module.split(".")
+    names = (".".join(parts[:length]) for length in range(len(parts), 0, -1))
+    return next((THIRD_PARTY[name] for name in names if name in THIRD_PARTY), set())
+
+
 def broken_rules(module: str, source: str) -> list[str]:
     """One sentence for each import of this module (dotted, without the package's name) that breaks a rule."""
-    top, *rest = module.split(".")
-    allowed = THIRD_PARTY.get(f"{top}.{rest[0]}" if rest else top, THIRD_PARTY.get(top, set()))
+    top = module.split(".")[0]
+    allowed = allowed_in(module)
     found = []
     for name, line, late in imports(ast.parse(source)):
         first, *inner = name.split(".")
         if first == "":
             found.append(f"{module}:{line} imports {name}: write the whole name")
+        elif first == "sheetfuncs" and within(module, INSIDE_OFFICE):
+            found.append(f"{module}:{line} imports {name}, which LibreOffice's own Python does not have")
         elif first == "sheetfuncs":
             if inner[0] in FLOORS and top in FLOORS and FLOORS.index(inner[0]) > FLOORS.index(top):
                 found.append(f"{module}:{line} imports {name}, of a later floor")
@@ -126,6 +139,10 @@ def test_modules_form_no_circle():
         ("hosts.excel.book", "import xlwings", "at the top"),
         ("hosts.excel.book", "def f():\n    from xlwings import pro", "not allowed in this folder"),
         ("hosts.files", "def f():\n    import xlwings", "not allowed in this folder"),
+        ("hosts.calc.worker", "import uno", "not allowed in this folder"),
+        ("hosts.calc.bridge.ranges", "import numpy", "not allowed in this folder"),
+        ("hosts.calc.bridge.ranges", "from sheetfuncs.cells import block", "does not have"),
+        ("hosts.calc.bridge.ranges", "from com.sun.star.awt import XCallback", None),
         ("checking", "if TYPE_CHECKING:\n    import pandas", None),
         ("workbook.read", "import_module('requests')", "not allowed in this folder"),
         ("workbook.read", "import_module(name)", "not allowed in this folder"),
