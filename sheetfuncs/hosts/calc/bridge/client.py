@@ -59,9 +59,9 @@ class Worker:
 
     def __init__(self, purpose: str):
         self.purpose = purpose
-        self._process = None
+        self._process: _Process | None = None
         self._turn = threading.Lock()
-        self._owner = None
+        self._owner: int | None = None
 
     @property
     def pid(self):
@@ -137,9 +137,10 @@ class _Process:
                 "`sheetfuncs calc install` from where sheetfuncs is installed now."
             ) from None
         self.pid = self._child.pid
-        self._sent = set()
+        self._sent: set = set()
         self._fresh = True
-        self._requests, self._outcomes = queue.Queue(), queue.Queue()
+        self._requests: queue.Queue = queue.Queue()
+        self._outcomes: queue.Queue = queue.Queue()
         threading.Thread(target=self._exchange, daemon=True).start()
 
     @property
