@@ -3,16 +3,20 @@
 from __future__ import annotations
 
 import io
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from typing import Any
 
+from sheetfuncs.cells.address import parse_area
 from sheetfuncs.cells.block import Block, Kind
 from sheetfuncs.checking import Check, Settings
 from sheetfuncs.hosts.calc.worker import Head, Progress
-from sheetfuncs.hosts.live import check_block, draw_check, same_range, title_of_check
+from sheetfuncs.hosts.live import area_of_parts, check_block, draw_check, same_range, title_of_check
+from sheetfuncs.judgement.words import listed
 from sheetfuncs.report.elements import Chart, SheetPlan
+from sheetfuncs.report.entries import ENTRY_FIELDS, changed_entries, settings_from_entries
 from sheetfuncs.report.layout import COLUMN_PIXELS
+from sheetfuncs.report.names import DECISION, ENTRY
 from sheetfuncs.report.record import DECISION_FIELDS
 from sheetfuncs.workbook.regions import first_block
 from sheetfuncs.workbook.settings import settings_from_names
@@ -27,9 +31,10 @@ def check(head: Head, blocks: list[Block], progress: Progress) -> tuple[Head, by
     """Check one block and draw its sheet.
 
     head: book, the document's title; sheets, the titles of all its sheets; ours, its diagnostics sheets, each with
-    title, names (sheet-scoped names and what they hold) and decision (place in the record, from "1" -> value);
-    settings, those to be used again, or None; titled, whether what was chosen may have titles above the data (whole
-    columns, the block around a cell); area, what to record where that is not the block ("B:F"); remarks.
+    title, names (sheet-scoped names and what they hold) and cells (name -> what stands in the cell it points at);
+    again, the title of the one whose settings are used again, or None; titled, whether what was chosen may have titles
+    above the data (whole columns, the block around a cell); area, what to record where that is not the block ("B:F");
+    parts, the areas of a selection of several, which the block covers; remarks.
 
     The answer: title of the new sheet; replaces, the title of the sheet in whose place it comes, or None; finding,
     one sentence; layout, what the import cannot carry (see `layout_of`). Its part is the package.
@@ -39,7 +44,8 @@ def check(head: Head, blocks: list[Block], progress: Progress) -> tuple[Head, by
         block, skipped = _below_titles(block)
         remarks += skipped
     progress("Checking ...")
-    done = check_block(block, book=head["book"], settings=head.get("settings"), remarks=remarks)
+    settings, said = _settings(head)
+    done = check_block(block, book=head["book"], settings=settings, remarks=[*remarks, *said])
     if head.get("area"):
         done = replace(done, settings=replace(done.settings, area=head["area"]))
     earlier = _earlier(head.get("ours", ()), done)
@@ -49,7 +55,7 @@ def check(head: Head, blocks: list[Block], progress: Progress) -> tuple[Head, by
     plan = draw_check(done, out, title=title, decision=_decision(earlier))
     answer = {
         "title": title, "replaces": earlier["title"] if earlier else None, "finding": finding(done),
-        "notes": _lost_choices(earlier, done.settings), "layout": layout_of(plan),
+        "notes": _lost_choices(earlier, done.settings, bool(head.get("again"))), "layout": layout_of(plan),
     }
     return answer, out.getvalue()
 
@@ -68,14 +74,13 @@ def layout_of(plan: SheetPlan) -> dict[str, Any]:
     """Sizes and places for the sheet once it is imported, lengths in hundredths of a millimetre.
 
     widths, heights: [first, last, length] of neighbouring columns or rows of one length; charts: [row, column, offset,
-    width, height], in the order of the drawing; frozen_rows; print_rows and print_columns; repeated_rows.
+    width, height], in the order of the drawing; frozen_rows.
     """
     return {
         "widths": _runs({column: pixels * _PIXEL for column, pixels in plan.widths.items()}),
         "heights": _runs({row: points * _POINT for row, points in plan.heights.items()}),
         "charts": [_place(chart) for chart in plan.charts],
-        "frozen_rows": plan.frozen_rows, "print_rows": plan.print_rows, "print_columns": plan.last_column,
-        "repeated_rows": int(plan.print_rows > plan.frozen_rows),
+        "frozen_rows": plan.frozen_rows,
     }
 
 
@@ -119,18 +124,36 @@ def _earlier(ours: Any, check: Check) -> dict[str, Any] | None:
     return None
 
 
+def _settings(head: Head) -> tuple[dict[str, Any] | None, list[str]]:
+    """The settings to use, and a sentence on those that were changed in the cells of the sheet that holds them."""
+    if head.get("parts"):
+        return area_of_parts([parse_area(part) for part in head["parts"]])[1], []
+    found = next((sheet for sheet in head.get("ours", ()) if sheet["title"] == head.get("again")), None)
+    recorded = settings_from_names(found["names"].items()) if found else None
+    if found is None or recorded is None:
+        return None, []
+    settings = settings_from_entries(recorded, _cells(found, ENTRY, ENTRY_FIELDS))
+    changed = changed_entries(recorded, settings)
+    said = [f"Made again with what was changed under Settings: {listed(changed)}."] if changed else []
+    return settings, said
+
+
 def _decision(earlier: Mapping[str, Any] | None) -> dict[str, Any]:
     """The filled cells of the earlier sheet's record, by field."""
-    filled = earlier["decision"] if earlier else {}
-    return {
-        DECISION_FIELDS[int(place) - 1]: value for place, value in filled.items()
-        if value not in (None, "") and 1 <= int(place) <= len(DECISION_FIELDS)
-    }
+    cells = _cells(earlier, DECISION, DECISION_FIELDS) if earlier else {}
+    return {field: value for field, value in cells.items() if value not in (None, "")}
 
 
-def _lost_choices(earlier: Mapping[str, Any] | None, settings: Settings) -> list[str]:
-    """A sentence where the replaced sheet was made with other settings than the new one."""
-    if earlier is None:
+def _cells(sheet: Mapping[str, Any], prefix: str, fields: Sequence[str]) -> dict[str, Any]:
+    """What stands in the cells that the sheet's names of this kind point at, by field."""
+    cells = sheet["cells"]
+    named = {f"{prefix}{place}": field for place, field in enumerate(fields, 1)}
+    return {field: cells[name] for name, field in named.items() if name in cells}
+
+
+def _lost_choices(earlier: Mapping[str, Any] | None, settings: Settings, asked: bool) -> list[str]:
+    """A sentence where the replaced sheet was made with other settings, and nobody asked for that."""
+    if earlier is None or asked:
         return []
     now, before = settings.to_dict(), earlier["settings"]
     changed = [name.replace("_", " ") for name in _KEPT if name in before and before[name] != now[name]]

@@ -11,6 +11,7 @@ from sheetfuncs.cells.block import Block
 from sheetfuncs.errors import SheetfuncsError
 from sheetfuncs.hosts.calc.check_job import check
 from sheetfuncs.hosts.files import Request, check_book
+from sheetfuncs.report.entries import ENTRY_FIELDS
 from sheetfuncs.report.names import settings_to_names
 from sheetfuncs.workbook import find_our_sheets
 from sheetfuncs.workbook.read import open_book
@@ -35,8 +36,16 @@ def run(block: Block, **head):
     return answer, package, ours.settings
 
 
-def our_sheet(settings: dict, **decision) -> dict:
-    return {"title": "Seen in spring", "names": settings_to_names(settings), "decision": decision}
+def first_texts(package: bytes) -> list[str]:
+    """The texts of the first screen."""
+    with open_book(io.BytesIO(package)) as book:
+        sheet = book.read(resolve(book, f"'{book.sheets[0].name}'!A1:O30"))
+    return [sheet.text(row, column) or "" for row in range(30) for column in range(15)]
+
+
+def our_sheet(settings: dict, **cells) -> dict:
+    named = {f"_sheetfuncs_{name}": value for name, value in cells.items()}
+    return {"title": "Seen in spring", "names": settings_to_names(settings), "cells": named}
 
 
 def test_a_new_sheet_has_the_settings_of_the_files_host_and_a_free_title():
@@ -50,7 +59,7 @@ def test_a_new_sheet_has_the_settings_of_the_files_host_and_a_free_title():
 
 def test_a_sheet_of_the_same_range_is_replaced_under_its_title_and_its_record_is_kept():
     _, _, settings = run(read("Panels"))
-    earlier = our_sheet(settings, **{"1": "Use it", "2": "", "4": 45_000.0})
+    earlier = our_sheet(settings, decision_1="Use it", decision_2="", decision_4=45_000.0)
     other = our_sheet(settings | {"area": "D4:G20"}) | {"title": "Another"}
     answer, package, _ = run(read("Panels"), ours=[other, earlier])
     assert (answer["title"], answer["replaces"]) == ("Seen in spring", "Seen in spring")
@@ -66,13 +75,30 @@ def test_other_settings_than_those_of_the_replaced_sheet_are_said():
     earlier = our_sheet(settings | {"intercept": False})
     answer, _, _ = run(read("Panels"), ours=[earlier])
     assert answer["notes"] == ["The sheet before was made with another choice of intercept: undo brings it back."]
-    again, _, settings = run(read("Panels"), ours=[earlier], settings=settings | {"intercept": False})
+    again, _, settings = run(read("Panels"), ours=[earlier], again="Seen in spring")
     assert again["notes"] == []
     assert settings["intercept"] is False
 
 
+def test_a_setting_that_was_changed_in_its_cell_is_used_and_said():
+    _, _, settings = run(read("Panels"))
+    place = ENTRY_FIELDS.index("predictors") + 1
+    earlier = our_sheet(settings, **{f"entry_{place}": "Glaze colours; Panel area (m²)"})
+    answer, package, settings = run(read("Panels"), ours=[earlier], again="Seen in spring")
+    assert answer["replaces"] == "Seen in spring"
+    assert settings["predictors"] == ["Glaze colours", "Panel area (m²)"]
+    assert any("changed under Settings: Predictors" in text for text in first_texts(package))
+
+
+def test_parts_of_a_selection_are_the_columns_to_use():
+    _, _, settings = run(read("Orders!D4:G74"), parts=["D4:D74", "F4:G74"])
+    assert settings["predictors"] == ["Glaze colours", "Cut pieces"]
+    with pytest.raises(SheetfuncsError, match="different rows"):
+        run(read("Orders!D4:G74"), parts=["D4:D74", "F4:G70"])
+
+
 def test_names_that_were_damaged_make_no_sheet_ours():
-    damaged = {"title": "Torn", "names": {"_sheetfuncs_settings_1": '"{"'}, "decision": {}}
+    damaged = {"title": "Torn", "names": {"_sheetfuncs_settings_1": '"{"'}, "cells": {}}
     assert run(read("Panels"), ours=[damaged])[0]["replaces"] is None
 
 
@@ -86,18 +112,13 @@ def test_whole_columns_are_recorded_as_such_and_titles_above_the_data_skipped():
     assert answer["replaces"] is None
     _, package, settings = run(block, titled=True)
     assert settings["area"] == "D4:G74"
-    with open_book(io.BytesIO(package)) as book:
-        sheet = book.read(resolve(book, f"'{book.sheets[0].name}'!A1:O30"))
-    texts = [sheet.text(row, column) or "" for row in range(30) for column in range(15)]
-    assert any("above row 4 was skipped" in text for text in texts)
+    assert any("above row 4 was skipped" in text for text in first_texts(package))
 
 
 def test_the_layout_says_what_the_import_loses():
     layout = run(read("Panels"))[0]["layout"]
     assert layout["frozen_rows"] == 2
-    assert layout["repeated_rows"] == 1
     assert layout["widths"][0][:2] == [1, 1]
-    assert sum(last - first + 1 for first, last, _ in layout["widths"]) >= layout["print_columns"]
     assert len(layout["charts"]) == 7
     row, column, _, width, height = layout["charts"][0]
     assert column == 2
