@@ -9,6 +9,7 @@ from dataclasses import dataclass
 from functools import cached_property
 from hashlib import blake2b
 from threading import Lock
+from weakref import WeakKeyDictionary
 
 import numpy as np
 
@@ -135,18 +136,33 @@ def content_key(blocks: Sequence[Block | None], *options: object) -> bytes:
     """A key that differs wherever cells, their place in the sheet, hidden rows or options differ."""
     digest = blake2b(repr((len(blocks), options)).encode(), digest_size=20)
     for block in blocks:
-        if block is None:
-            digest.update(b"none")
-            continue
-        place = (block.kinds.shape, block.sheet, block.first_row, block.first_column, block.worksheet_columns,
-                 block.date1904, sorted(block.texts), block.hidden is not None)
-        digest.update(repr(place).encode())
-        digest.update(_bytes(block.numbers))
-        digest.update(_bytes(block.kinds))
-        for column in sorted(block.texts):
-            digest.update(repr(block.texts[column].tolist()).encode("utf-8", "surrogatepass"))
-        if block.hidden is not None:
-            digest.update(_bytes(block.hidden))
+        digest.update(b"none" if block is None else _block_digest(block))
+    return digest.digest()
+
+
+def _block_digest(block: Block) -> bytes:
+    """The digest of one block; that of a block which nobody can write to is found once and kept."""
+    kept: bytes | None = _DIGESTS.get(block)
+    if kept is None:
+        kept = _digest_now(block)
+        if not (block.numbers.flags.writeable or block.kinds.flags.writeable):
+            _DIGESTS[block] = kept
+    return kept
+
+
+_DIGESTS: WeakKeyDictionary[Block, bytes] = WeakKeyDictionary()
+
+
+def _digest_now(block: Block) -> bytes:
+    place = (block.kinds.shape, block.sheet, block.first_row, block.first_column, block.worksheet_columns,
+             block.date1904, sorted(block.texts), block.hidden is not None)
+    digest = blake2b(repr(place).encode("utf-8", "surrogatepass"), digest_size=20)
+    digest.update(_bytes(block.numbers))
+    digest.update(_bytes(block.kinds))
+    for column in sorted(block.texts):
+        digest.update(repr(block.texts[column].tolist()).encode("utf-8", "surrogatepass"))
+    if block.hidden is not None:
+        digest.update(_bytes(block.hidden))
     return digest.digest()
 
 

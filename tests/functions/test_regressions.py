@@ -148,3 +148,13 @@ def test_threads_get_their_own_answers(monkeypatch):
     with ThreadPoolExecutor(4) as pool:
         found = pool.map(lambda h: evaluate("FIT_PRESS", RESPONSE[:h], PREDICTORS[:h]), heights)
     assert list(found) == [expected[h] for h in heights]
+
+
+def test_key_follows_cells_that_may_be_written_to():
+    written = block([[1.0], [2.0]])
+    before = content_key((written,))
+    written.numbers[1, 0] = 3.0
+    assert content_key((written,)) != before
+    for array in (written.numbers, written.kinds):
+        array.flags.writeable = False
+    assert content_key((written,)) == content_key((written,)) == content_key((block([[1.0], [3.0]]),))
