@@ -144,7 +144,8 @@ def _taken_out(earlier: xw.Sheet, copied: xw.Sheet) -> Pointers:
         earlier.delete()
         return pointers
     except Exception as failure:
-        copied.delete()
+        with suppress(Exception):
+            copied.delete()
         raise _not_taken(book, failure) from failure
 
 
