@@ -6,6 +6,7 @@ import struct
 
 from sheetfuncs_bridge import protocol
 from sheetfuncs_bridge.client import CELLS, Packed, WorkerTrouble
+from sheetfuncs_bridge.ranges import common_last_row, cut_to_row, read_block
 
 ERROR_CODES = {
     "#NULL!": 521, "#DIV/0!": 532, "#VALUE!": 519, "#REF!": 524, "#NAME?": 525, "#NUM!": 503, "#N/A": 32767,
@@ -26,7 +27,7 @@ def call(recalculation, document, name: str, given):
     try:
         if recalculation.trouble is not None:
             return NO_ANSWER
-        head, blocks = gather(recalculation, document, name, given)
+        head, blocks = gather(name, given, lambda ranges: recalculation.packed(document, ranges))
         answer = CELLS.request("evaluate", head, blocks)
     except WorkerTrouble as trouble:
         recalculation.trouble = str(trouble)
@@ -45,10 +46,23 @@ def value_of(answer):
     return answer.head.get("value")
 
 
-def gather(recalculation, document, name: str, given):
+def explain(name: str, given) -> str:
+    """The sentence behind the value of this call, or "ok"; given as for `call`. Raises WorkerTrouble."""
+    head, blocks = gather(name, given, pack_afresh)
+    return CELLS.request("why", head, blocks).head["sentence"]
+
+
+def pack_afresh(ranges) -> list:
+    """A Packed block for each range, read now."""
+    last_row = common_last_row(ranges)
+    parts = [cells if last_row is None else cut_to_row(cells, last_row) for cells in ranges]
+    return [Packed(protocol.pack(read_block(part))) for part in parts]
+
+
+def gather(name: str, given, pack_ranges):
     """(head, blocks) of the request: ranges become packed blocks, the rest stays in the head."""
     ranges = [value for value in given if hasattr(value, "getDataArray")]
-    blocks = recalculation.packed(document, ranges)
+    blocks = pack_ranges(ranges)
     places = iter(range(len(blocks)))
     arguments = []
     for value in given:

@@ -9,7 +9,8 @@ import json
 from pathlib import Path
 
 import unohelper
-from com.sun.star.frame import XDispatch, XDispatchProvider, XTerminateListener
+from com.sun.star.frame import DispatchResultEvent, XDispatchProvider, XNotifyingDispatch, XTerminateListener
+from com.sun.star.frame.DispatchResultState import FAILURE, SUCCESS
 from com.sun.star.lang import XInitialization, XLocalizable, XServiceInfo, XServiceName
 from com.sun.star.task import XJob
 from org.sheetfuncs.calc import XFunctions
@@ -65,7 +66,7 @@ for _function in FUNCTIONS:
     )
 
 
-class Commands(unohelper.Base, XDispatchProvider, XDispatch, XInitialization, XServiceInfo):
+class Commands(unohelper.Base, XDispatchProvider, XNotifyingDispatch, XInitialization, XServiceInfo):
     """The entries of menu and toolbar."""
 
     def __init__(self, context):
@@ -82,14 +83,25 @@ class Commands(unohelper.Base, XDispatchProvider, XDispatch, XInitialization, XS
         return tuple(self.queryDispatch(one.FeatureURL, one.FrameName, one.SearchFlags) for one in requests)
 
     def dispatch(self, url, arguments):
+        self._run(url, None)
+
+    def dispatchWithNotification(self, url, arguments, listener):
+        """For a caller that wants the outcome, such as a macro: it gets the sentence, and no box is shown."""
+
+        def done(succeeded, text):
+            listener.dispatchFinished(DispatchResultEvent(self, SUCCESS if succeeded else FAILURE, text))
+
+        self._run(url, done if listener is not None else None)
+
+    def _run(self, url, done):
         from sheetfuncs_bridge import button
 
         command = {
             "check": button.check_selection, "again": button.check_again, "why": button.why_this_value,
-            "health": button.show_health,
+            "health": button.show_health, "show": button.show_sheet,
         }.get(url.Complete[len(PROTOCOL):])
         if command is not None:
-            command(self.context, self.frame)
+            command(self.context, self.frame, done)
 
     def addStatusListener(self, listener, url):
         pass  # the entries are always enabled; a selection that makes no sense gets a sentence

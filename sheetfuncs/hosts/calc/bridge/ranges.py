@@ -16,6 +16,12 @@ MOST_ERRORS = 5_000  # asked for one by one; beyond that a cell is an error with
 DATE_OR_TIME, LOGICAL = 2 | 4, 1024  # com.sun.star.util.NumberFormat
 
 
+def common_last_row(ranges):
+    """The row (from 0) at which the whole columns among the ranges of one call end: the lowest used one of their
+    sheets, so that they stay equally high. None where no range is open-ended."""
+    return max((last_used_row(cells.getSpreadsheet()) for cells in ranges if is_open_ended(cells)), default=None)
+
+
 def last_used_row(sheet) -> int:
     """The last row (from 0) of the sheet that holds anything."""
     cursor = sheet.createCursor()

@@ -14,7 +14,8 @@ from com.sun.star.awt import XCallback
 from com.sun.star.util import XModifyListener
 from sheetfuncs_bridge import protocol
 from sheetfuncs_bridge.client import Packed
-from sheetfuncs_bridge.ranges import cut_to_row, is_open_ended, last_used_row, read_block
+from sheetfuncs_bridge.ranges import common_last_row, cut_to_row, read_block
+from sheetfuncs_bridge.troubles import hide_trouble, show_trouble
 
 PAUSE_SECONDS = 0.05
 
@@ -29,6 +30,7 @@ class Recalculation(unohelper.Base, XCallback):
         self._posted = False
         self._last_call = 0.0
         self._trouble = None
+        self._shown = False
 
     @property
     def trouble(self):
@@ -51,16 +53,20 @@ class Recalculation(unohelper.Base, XCallback):
 
     def packed(self, document, ranges) -> list:
         """A Packed block for each range of one call. Whole columns are cut to the used part, all at the same row."""
-        last_rows = [last_used_row(cells.getSpreadsheet()) for cells in ranges if is_open_ended(cells)]
-        last_row = max(last_rows, default=None)
+        last_row = common_last_row(ranges)
         owner = document.getPropertyValue("RuntimeUID")
         return [self._one(owner, cells, last_row) for cells in ranges]
 
     def notify(self, data) -> None:
         """Called from the main loop: the recalculation that posted this is over."""
         self._posted = False
-        self._trouble = None
+        trouble, self._trouble = self._trouble, None
         self._forget_ranges()
+        if trouble is not None:
+            show_trouble(self._context, trouble)
+        elif self._shown:
+            hide_trouble(self._context)
+        self._shown = trouble is not None
 
     def _forget_ranges(self) -> None:
         self._kept.clear()
