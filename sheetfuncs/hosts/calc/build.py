@@ -74,7 +74,7 @@ def gives_matrix(function: WorksheetFunction) -> bool:
 def type_library() -> str:
     """The interface of the add-in, in the language of LibreOffice's type descriptions.
 
-    Data are ranges; everything that may be left out is `any`, the only type that LibreOffice takes as optional. The
+    Data are ranges, needed numbers doubles; what may be left out is `any`, the only type taken as optional. The
     first parameter, which no one sees, is the document that the call comes from.
     """
     lines = ["module org { module sheetfuncs { module calc {", "interface XFunctions {"]
@@ -87,8 +87,9 @@ def type_library() -> str:
 
 
 def _type(argument: Argument) -> str:
-    whole_range = argument.kind == "range" and not argument.optional
-    return "com::sun::star::table::XCellRange" if whole_range else "any"
+    if argument.optional:
+        return "any"
+    return "com::sun::star::table::XCellRange" if argument.kind == "range" else "double"
 
 
 def _parameter(argument: Argument) -> str:
