@@ -1,4 +1,4 @@
-"""Values follow the cells: edits, formula cells among the data, whole columns, two documents, files saved and loaded."""
+"""Values follow the cells: edits, formulas among the data, whole columns, two documents, files saved and loaded."""
 
 from __future__ import annotations
 
