@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from itertools import pairwise
+from math import exp, expm1, isfinite, log, log1p, sqrt
 
 import numpy as np
 from scipy.special import chdtrc, chdtri
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import EPS, ROUNDINGS
+from sheetfuncs.core.box_cox_series import PowerSeries, power_series
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 from sheetfuncs.core.threads import few_threads
@@ -17,10 +19,12 @@ from sheetfuncs.errors import ArgumentError
 
 POWERS = np.linspace(-5.0, 5.0, 21)  # where the highest likelihood is looked for first
 ZERO_AND_ONE = [10, 12]
-THIN = 400
+THIN, SOME = 400, 250  # rows that the search starts from, without and with a power series
+TINY = 1e-300
 CHUNK = 16384  # rows at a time, which stay in the processor's cache
 SMALL = 0.005
 CARRIES = 0.2
+NEAR_ZERO = -0.9
 # (k + 1)/(k + 2)!: the series of (x e^x - e^x + 1)/x^2, as exact as doubles below SMALL; highest power first.
 _SERIES = (5 / 720, 4 / 120, 3 / 24, 2 / 6, 1 / 2)
 FEWEST_DF = 2
@@ -61,13 +65,15 @@ def box_cox(fit: Fit, *, level: float = 0.95, without_intercept: bool = False) -
         return cannot(f"{fit.n} rows are too few to find a power beside {fit.p} coefficients.", "#NUM!")
     with few_threads(fit.basis.q.size):
         profile = _Profile(_log_ratio(y), fit.basis.q, fit.design.intercept)
-        best = _likeliest(profile)
-        if best.rss <= (ROUNDINGS * EPS) ** 2 * profile.squares(best.power):
+        cut = float(chdtri(1, 1.0 - level))
+        found = _by_series(profile, cut)
+        best = found[0] if found else _likeliest(profile)
+        if profile.fits_perfectly(best):
             return cannot(
                 f"With the power {best.power:.6g} the fit is perfect, so that nothing can be tested on it.", "#NUM!"
             )
-        ends = _interval(profile, best, float(chdtri(1, 1.0 - level)))
-        tests = _ratio_tests(profile, best)
+        ends = found[1] if found else _interval(profile, best, cut)
+        tests = _ratio_tests(profile, best, found[2] if found else None)
     note = "1 leaves the response as it is, 0 is its logarithm."
     if not fit.design.intercept:
         note += " Fitted without an intercept: for the response divided by its geometric mean, and only for that."
@@ -75,17 +81,20 @@ def box_cox(fit: Fit, *, level: float = 0.95, without_intercept: bool = False) -
         method="box_cox", args={}, variant=variant, statistic=best.power, note=note,
         details={
             "lambda": best.power, f"ci{100 * level:g}": [end if np.isfinite(end) else None for end in ends],
-            "loglik_max": -0.5 * fit.n * float(np.log(best.rss)), **tests,
+            "loglik_max": -0.5 * fit.n * log(best.rss), **tests,
         },
     )
 
 
 def _log_ratio(y: np.ndarray) -> np.ndarray:
     """log(y / geometric mean), every digit kept where the values lie close together."""
-    centre = float(np.exp(np.log(y).mean()))
+    centre = exp(float(np.add.reduce(np.log(y))) / y.shape[0])
     off = (y - centre) / centre
-    u = np.where(np.abs(off) < 0.5, np.log1p(np.maximum(off, -0.5)), np.log(y / centre))
-    return u - u.mean()
+    u = np.log1p(np.maximum(off, NEAR_ZERO))
+    far = off <= NEAR_ZERO
+    if far.any():  # what is left of 1 has few digits there
+        u[far] = np.log(y[far] / centre)
+    return u - np.add.reduce(u) / u.shape[0]
 
 
 @dataclass(frozen=True, eq=False)
@@ -137,10 +146,27 @@ class _Profile:
         rss, half = self.at(np.array([power]))
         return float(rss[0]), float(half[0])
 
-    def squares(self, power: float) -> float:
-        """Sum of squares of z itself."""
-        z, _ = _power(self.u, np.array([power]))
-        return float(np.sum(z * z))
+    def rss(self, powers: np.ndarray) -> np.ndarray:
+        """rss alone (m,), for rows that are few or powers that are; not finite where powers of the response are not."""
+        zero = powers == 0.0
+        with np.errstate(over="ignore", invalid="ignore"):
+            z = np.expm1(self.u * powers[:, None])
+            z /= (powers + zero)[:, None]
+            z[zero] = self.u
+            z -= (z @ self.q) @ self.q.T
+            if self.intercept:
+                z -= (np.add.reduce(z, axis=1) / self.u.shape[0])[:, None]
+            return np.einsum("ij,ij->i", z, z)
+
+    def fits_perfectly(self, best: _Least) -> bool:
+        """Whether the least rss is rounding of the sum of squares of z itself."""
+        ends = (float(self.u.max()), float(self.u.min()))
+        largest = max(abs(expm1(best.power * u) / best.power if best.power else u) for u in ends)
+        limit = (ROUNDINGS * EPS) ** 2
+        if best.rss > limit * self.u.shape[0] * largest * largest:
+            return False
+        z, _ = _power(self.u, np.array([best.power]))
+        return best.rss <= limit * float(np.sum(z * z))
 
 
 @dataclass(frozen=True)
@@ -183,18 +209,63 @@ def _power(u: np.ndarray, powers: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     return z, grown
 
 
+def _by_series(profile: _Profile, cut: float) -> tuple[_Least, tuple[float, float], PowerSeries] | None:
+    """The likeliest power and the ends of its interval from a power series; None where it does not reach so far."""
+    start = _start(profile)
+    if start is None:
+        return None
+    (power, reach), n = start, profile.u.shape[0]
+    for _ in range(2):
+        series = power_series(profile.u, profile.q, profile.intercept, power, reach)
+        lowest = series.lowest() if series else None
+        if series is None or lowest is None or abs(lowest[0] - start[0]) > start[1]:
+            return None
+        power, height, bend = lowest
+        distance = sqrt(2.0 * cut / (n * bend))
+        low, high = (series.rises_to(power, cut / n, side * distance) for side in (-1.0, 1.0))
+        if low is not None and high is not None:
+            rss = exp(height)
+            return _Least(power, rss, 0.5 * bend * rss), (low, high), series
+        reach = 2.0 * distance
+    return None
+
+
+def _start(profile: _Profile) -> tuple[float, float] | None:
+    """A power near the likeliest one, by some rows at whole and half powers, and how far around it to look."""
+    n = profile.u.shape[0]
+    some = profile if n <= 2 * SOME else _thinned(profile, max(SOME, n // 8))
+    height = np.log(np.maximum(some.rss(POWERS), TINY))
+    # Derivatives of the quartics through five neighbours.
+    slope = (height[:-4] - height[4:] + 8.0 * (height[3:-1] - height[1:-3])) / (12.0 * (POWERS[1] - POWERS[0]))
+    inner = POWERS[2:-2]
+    place = int(height.argmin()) - 2
+    if not (0 <= place < inner.shape[0] and isfinite(slope[place])):
+        return None
+    left = place - 1 if slope[place] >= 0.0 else place
+    if left < 0 or left + 1 == inner.shape[0] or not slope[left] < 0.0 <= slope[left + 1]:
+        return None
+    bend = float(slope[left + 1] - slope[left]) / float(inner[1] - inner[0])
+    deviation = sqrt(2.0 / (some.u.shape[0] * bend))
+    # The power of all rows lies within a few standard errors of that of some of them, the interval's ends beyond.
+    return _between(inner, slope, left), 3.0 * deviation if some is profile else 3.5 * deviation
+
+
+def _thinned(profile: _Profile, rows: int) -> _Profile:
+    some = slice(None, None, profile.u.shape[0] // rows)
+    q = profile.q[some] - (profile.q[some].mean(axis=0) if profile.intercept else 0.0)
+    return _Profile(profile.u[some], np.linalg.qr(q)[0], profile.intercept)
+
+
 def _likeliest(profile: _Profile) -> _Least:
     n = profile.u.shape[0]
     if n <= 4 * THIN:
         return _least(profile)
-    some = slice(None, None, n // THIN)
-    q = profile.q[some] - (profile.q[some].mean(axis=0) if profile.intercept else 0.0)
-    thinned = profile.u[some]
-    thin = _least(_Profile(thinned, np.linalg.qr(q)[0], profile.intercept))
+    some = _thinned(profile, THIN)
+    thin = _least(some)
     if thin.bend > 0.0 and thin.rss > 0.0:
         # Five standard errors of the thinned rows to either side hold the root of all rows, or the search starts anew.
-        reach = 5.0 * np.sqrt(thin.rss / (thin.bend * thinned.shape[0]))
-        bend = thin.bend * n / thinned.shape[0]
+        reach = 5.0 * np.sqrt(thin.rss / (thin.bend * some.u.shape[0]))
+        bend = thin.bend * n / some.u.shape[0]
         found = _root(profile, thin.power, bend, thin.power - reach, thin.power + reach)
         if abs(found.power - thin.power) < 0.99 * reach:
             return found
@@ -218,16 +289,22 @@ def _least(profile: _Profile) -> _Least:
             powers = np.linspace(powers[left], powers[left + 1], 9)
     else:
         return _Least(float(powers[place]), float(rss[place]), 0.0, grid)
+    low, high = float(powers[left]), float(powers[left + 1])
+    at_low, at_high = float(half[left]), float(half[left + 1])
+    start = _between(powers, half, left)
+    found = _root(profile, start, (at_high - at_low) / (high - low), low, high)
+    return _Least(found.power, found.rss, found.bend, grid)
+
+
+def _between(powers: np.ndarray, half: np.ndarray, left: int) -> float:
+    """Roughly where half is zero between powers[left] and the next one."""
     around = slice(max(left - 1, 0), left + 3)
     low, high = float(powers[left]), float(powers[left + 1])
     at_low, at_high = float(half[left]), float(half[left + 1])
     start = _inverse(powers[around].tolist(), half[around].tolist())
     if not low < start < high:
         start = (low * at_high - high * at_low) / (at_high - at_low) if np.isfinite(at_high - at_low) else np.nan
-    if not low < start < high:
-        start = 0.5 * (low + high)
-    found = _root(profile, start, (at_high - at_low) / (high - low), low, high)
-    return _Least(found.power, found.rss, found.bend, grid)
+    return start if low < start < high else 0.5 * (low + high)
 
 
 def _inverse(x: list[float], y: list[float]) -> float:
@@ -292,10 +369,15 @@ def _interval(profile: _Profile, best: _Least, cut: float) -> tuple[float, float
     return float(low), float(high)
 
 
-def _ratio_tests(profile: _Profile, best: _Least) -> dict[str, dict[str, float]]:
-    rss = best.grid[ZERO_AND_ONE] if best.grid is not None else profile.at(np.array([0.0, 1.0]))[0]
+def _ratio_tests(profile: _Profile, best: _Least, series: PowerSeries | None) -> dict[str, dict[str, float]]:
     tests = {}
-    for name, value in zip(("LR_lambda_0", "LR_lambda_1"), rss.tolist(), strict=True):
-        statistic = profile.u.shape[0] * float(np.log1p(max(0.0, value - best.rss) / best.rss))
+    for place, (name, power) in enumerate((("LR_lambda_0", 0.0), ("LR_lambda_1", 1.0))):
+        height = series.at(power)[0] if series else float("nan")
+        if isfinite(height):
+            above = height - log(best.rss)
+        else:
+            rss = float(profile.rss(np.array([power]))[0] if best.grid is None else best.grid[ZERO_AND_ONE[place]])
+            above = log1p(max(0.0, rss - best.rss) / best.rss)
+        statistic = profile.u.shape[0] * max(0.0, above)
         tests[name] = {"statistic": statistic, "p": float(chdtrc(1, statistic))}
     return tests
