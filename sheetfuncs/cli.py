@@ -150,6 +150,47 @@ def undo(book: Path, force: bool) -> None:
     click.echo(undo_check(book, force=force))
 
 
+@main.group()
+def excel() -> None:
+    """The add-in for Excel on Windows and macOS: put it in, take it out, see whether all is in place."""
+
+
+@excel.command("install")
+@click.option("--xlam", type=click.Path(path_type=Path), metavar="FILE",
+              help="Install this copy of the add-in, which your firm has signed, in place of one built here.")
+def excel_install(xlam: Path | None) -> None:
+    """Put the add-in where Excel finds it, or bring an older one up to date. Excel is not started."""
+    from sheetfuncs.hosts.excel.folders import find_place
+    from sheetfuncs.hosts.excel.summary import install_lines
+
+    for line in install_lines(find_place(), xlam):
+        click.echo(line)
+
+
+@excel.command("remove")
+def excel_remove() -> None:
+    """Take out what `install` wrote, and nothing else. Workbooks stay as they are."""
+    from sheetfuncs.hosts.excel.folders import find_place
+    from sheetfuncs.hosts.excel.summary import remove_lines
+
+    for line in remove_lines(find_place()):
+        click.echo(line)
+
+
+@excel.command("health")
+def excel_health() -> None:
+    """Look at every part of the installation, and say what to do where one is not in order (exit code 1)."""
+    from sheetfuncs.hosts.excel.folders import find_place
+    from sheetfuncs.hosts.excel.health import finding_lines, headline, health
+
+    findings = health(find_place())
+    for line in finding_lines(findings):
+        click.echo(line)
+    if not all(finding.ok for finding in findings):
+        _stop(headline(findings))
+    click.echo(headline(findings))
+
+
 @contextmanager
 def _steps() -> Iterator[Callable[[str], None]]:
     """Say each step on one line of a terminal that somebody watches; elsewhere stay silent."""

@@ -43,12 +43,22 @@ def _package_version(name: str) -> str | None:
         return None
 
 
+def _requirements() -> list[str]:
+    """What sheetfuncs itself requires ("numpy>=1.26"), as it was installed; nothing where it was not."""
+    from importlib.metadata import PackageNotFoundError, requires
+
+    try:
+        return [line for line in requires(PROJECT) or [] if "extra ==" not in line]
+    except PackageNotFoundError:
+        return []
+
+
 @dataclass(frozen=True)
 class Environment:
     """What decides where things go. A test gives its own; `this_environment` is the real one.
 
     platform: as sys.platform; code_page: the encoding in which VBA reads text files; short_path: 8.3 form of a path;
-    package_version: version of an installed package, or None.
+    package_version: version of an installed package, or None; requirements: what sheetfuncs needs, with lower bounds.
     """
 
     platform: str
@@ -60,6 +70,7 @@ class Environment:
     code_page: str
     short_path: Callable[[str], str] = field(default=_short_path, repr=False)
     package_version: Callable[[str], str | None] = field(default=_package_version, repr=False)
+    requirements: Callable[[], list[str]] = field(default=_requirements, repr=False)
 
 
 def this_environment() -> Environment:
@@ -164,8 +175,20 @@ def _mac(environment: Environment) -> Place:
     )
 
 
+def refused_by_macos(path: object) -> InstallError:
+    """macOS keeps the folders of one program from others until the user allows it."""
+    return InstallError(
+        f"macOS did not let this program into {path}: allow your terminal under System Settings, Privacy & Security, "
+        "Full Disk Access, and run the command again; nothing was changed."
+    )
+
+
 def _require(folder: Path) -> None:
-    if not folder.is_dir():
+    try:
+        there = folder.is_dir()
+    except PermissionError as denied:
+        raise refused_by_macos(folder) from denied
+    if not there:
         raise InstallError(
             f"Excel's folder {folder} is not there: if Excel is installed, start it once, close it, and run this "
             "command again."
