@@ -191,6 +191,49 @@ def excel_health() -> None:
     click.echo(headline(findings))
 
 
+@main.group()
+def calc() -> None:
+    """The extension for LibreOffice Calc: put it in, take it out, see whether all is in place."""
+
+
+_PROFILE = click.option(
+    "--profile", type=click.Path(path_type=Path, file_okay=False), metavar="DIR",
+    help="Folder of another LibreOffice user profile. Default: your own.",
+)
+
+
+@calc.command("install")
+@_PROFILE
+def calc_install(profile: Path | None) -> None:
+    """Put the extension into LibreOffice, or bring an older one up to date. Close LibreOffice before."""
+    from sheetfuncs.hosts.calc.install import install
+
+    click.echo(install(profile))
+
+
+@calc.command("remove")
+@_PROFILE
+def calc_remove(profile: Path | None) -> None:
+    """Take the extension out of LibreOffice. Workbooks stay as they are."""
+    from sheetfuncs.hosts.calc.install import remove
+
+    click.echo(remove(profile))
+
+
+@calc.command("health")
+@_PROFILE
+def calc_health(profile: Path | None) -> None:
+    """Look at every part of the installation, and say what to do where one is not in order (exit code 1)."""
+    from sheetfuncs.hosts.calc.health import finding_lines, headline, health
+
+    findings = health(profile)
+    for line in finding_lines(findings):
+        click.echo(line)
+    if not all(finding.ok for finding in findings):
+        _stop(headline(findings))
+    click.echo(headline(findings))
+
+
 @contextmanager
 def _steps() -> Iterator[Callable[[str], None]]:
     """Say each step on one line of a terminal that somebody watches; elsewhere stay silent."""
