@@ -30,7 +30,7 @@ def answer(name: str, *given: object) -> object:
     try:
         kinds = [argument.kind for argument in REGISTRY[name].arguments]
         values = [as_rows(one) if kind == "range" else as_option(one) for one, kind in zip(given, kinds, strict=False)]
-        return for_excel(evaluate(name, *values))
+        return for_excel(evaluate(name, *values, *given[len(kinds) :]))
     except Exception as failure:
         _keep(name, failure)
         return "#VALUE!"
@@ -47,9 +47,10 @@ def failure_sentence(failure: BaseException) -> str:
     while place is not None and place.tb_next is not None:
         place = place.tb_next
     where = "" if place is None else f", {place.tb_frame.f_code.co_name}, line {place.tb_lineno}"
+    said = " ".join(str(failure).split())[:200]
     return (
-        f"Something that should not happen did ({type(failure).__name__}: {str(failure)[:200]}{where}): please report "
-        "it with the data that led to it."
+        f"Something that should not happen did ({type(failure).__name__}: {said}{where}): please report it with the "
+        "data that led to it."
     )
 
 
@@ -81,14 +82,14 @@ def _made(function: WorksheetFunction) -> Callable[..., object]:
 def _marked(function: WorksheetFunction) -> Callable[..., object]:
     import xlwings as xw
 
-    called = xw.func(category=CATEGORY)(_made(function))
+    called = _made(function)
     for argument in function.arguments:
         # err_to_str: else errors look like blanks. ndim: else one row and one column look alike.
         options: dict[str, Any] = {"doc": argument.help, "err_to_str": True}
         if argument.kind == "range":
             options |= {"convert": range_reader(), "ndim": 2}
         called = xw.arg(argument.name, **options)(called)
-    return called
+    return xw.func(category=CATEGORY)(called)  # last, since arg sets the category back to its default
 
 
 globals().update({name: _marked(function) for name, function in REGISTRY.items()})

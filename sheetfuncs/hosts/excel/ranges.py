@@ -63,7 +63,7 @@ def _around(cell: xw.Range) -> Place:
             f"{cell_name(cell.row, cell.column, cell.sheet.name)} stands alone: select the columns of the data, or one "
             "cell inside them, and press the button again."
         )
-    address = region.get_address(False, False)
+    address = region.address.replace("$", "")
     return Place(region, (f"{where} is one cell: the block around it, {address}, is used.",))
 
 
@@ -80,7 +80,7 @@ def within_used(cells: xw.Range) -> xw.Range:
         rows = max(1, used.row + used.shape[0] - cells.row)
     if whole_rows:
         columns = max(1, used.column + used.shape[1] - cells.column)
-    return cells.resize(min(rows, cells.shape[0]), min(columns, cells.shape[1]))
+    return cells[:rows, :columns]
 
 
 def read_block(cells: xw.Range) -> Block:
