@@ -112,7 +112,7 @@ def _name_and_least(requirement: str) -> tuple[str, str]:
 
 
 def _numbers(version: str) -> tuple[int, ...]:
-    return tuple(int(number) for number in re.findall(r"\d+", version)[:3])
+    return tuple(int(number) for number in [*re.findall(r"\d+", version), 0, 0][:3])
 
 
 def _addin(place: Place) -> Finding:
