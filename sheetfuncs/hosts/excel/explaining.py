@@ -11,6 +11,7 @@ from sheetfuncs.errors import AddressError, ArgumentError, SheetfuncsError
 from sheetfuncs.functions.evaluate import evaluate, find_function, why
 from sheetfuncs.functions.formula import ParsedCall, RangeText, parse_formula
 from sheetfuncs.functions.registry import REGISTRY
+from sheetfuncs.hosts.excel.functions import unexpected_failure
 from sheetfuncs.hosts.excel.native import ask, on_mac
 from sheetfuncs.hosts.excel.ranges import read_block, within_used
 
@@ -18,7 +19,7 @@ if TYPE_CHECKING:
     import xlwings as xw
 
 _OURS = re.compile(rf"\b(?:{'|'.join(map(re.escape, sorted(REGISTRY, key=len, reverse=True)))})\s*\(", re.IGNORECASE)
-_PIECE = re.compile(r'"(?:[^"]|"")*"|\'(?:[^\']|\'\')*\'|[()]|[^"\'()]+|["\']')
+_IN_QUOTES = re.compile(r'"(?:[^"]|"")*"|\'(?:[^\']|\'\')*\'')
 
 
 def explain_cell(cell: xw.Range) -> str:
@@ -38,21 +39,22 @@ def explain_cell(cell: xw.Range) -> str:
 
 def calls_in(formula: str) -> list[str]:
     """Every call of one of our functions in a formula, from its name to its closing bracket."""
+    bare = _IN_QUOTES.sub(lambda quoted: " " * len(quoted[0]), formula)
     found, place = [], 0
-    while match := _OURS.search(formula, place):
-        end = _closing(formula, match.end())
-        found.append(formula[match.start() : end])
-        place = end
+    while match := _OURS.search(bare, place):
+        place = _closing(bare, match.end())
+        found.append(formula[match.start() : place])
     return found
 
 
-def _closing(formula: str, place: int) -> int:
+def _closing(bare: str, place: int) -> int:
+    """The place behind the bracket that closes what was opened before `place`."""
     depth = 1
-    for piece in _PIECE.finditer(formula, place):
-        depth += {"(": 1, ")": -1}.get(piece[0], 0)
+    for bracket in re.finditer("[()]", bare[place:]):
+        depth += 1 if bracket[0] == "(" else -1
         if depth == 0:
-            return piece.end()
-    return len(formula)
+            return place + bracket.end()
+    return len(bare)
 
 
 def _formula_of(cell: xw.Range) -> str:
@@ -75,10 +77,11 @@ def _explain(text: str, cell: xw.Range) -> str:
     if sentence != "ok":
         return f"{call.name} gives {evaluate(call.name, *given)}. {sentence}"
     rows = _about_rows(call.name, given)
-    shown = cell.options(err_to_str=not on_mac()).value
-    if shown in ERROR_TEXTS and not rows:
-        return f"{call.name} gives a value now: have the sheet calculated again."
-    return f"{call.name} gives a value." + (f" {rows}" if rows else "")
+    shown = read_block(cell).value(0, 0)
+    if shown not in ERROR_TEXTS or rows:
+        return f"{call.name} gives a value." + (f" {rows}" if rows else "")
+    kept = unexpected_failure(call.name)
+    return f"{call.name} gives a value now: have the sheet calculated again." + (f" Before: {kept}" if kept else "")
 
 
 def _given(call: ParsedCall, cell: xw.Range) -> list[object]:

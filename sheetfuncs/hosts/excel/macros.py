@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import sys
 from collections.abc import Callable, Iterable
 from dataclasses import replace
 from typing import TYPE_CHECKING, Any
@@ -182,10 +181,10 @@ def _why_this_value(book: xw.Book, step: Step) -> str:
 
 
 def _show_health(book: xw.Book, step: Step) -> str:
-    from sheetfuncs.checking import versions
+    from sheetfuncs.hosts.excel.health import health_text
 
-    packages = "\n".join(f"{name} {version}" for name, version in versions().items())
-    return f"Python is found and answers: {sys.executable}\n\n{packages}"
+    step("looking at the installation ...")
+    return health_text()
 
 
 def _active_sheet(book: xw.Book) -> xw.Sheet | None:

@@ -164,8 +164,8 @@ def _copied(package: Path, place: xw.Sheet) -> xw.Sheet:
 def _not_taken(book: xw.Book, failure: Exception) -> WorkbookError:
     said = " ".join(str(failure).split())[:120]
     return WorkbookError(
-        f"Excel did not take the sheet into {book.name} ({type(failure).__name__}: {said}): see whether the workbook is "
-        "shared or protected, or check a copy of it."
+        f"Excel did not take the sheet into {book.name} ({type(failure).__name__}: {said}): see whether the workbook "
+        "is shared or protected, or check a copy of it."
     )
 
 

@@ -19,7 +19,7 @@ ERROR_NUMBERS = {
     "#NUM!": -2146826252, "#N/A": -2146826246,
 }
 _ERROR_TEXTS = {number: text for text, number in ERROR_NUMBERS.items()}
-_CORNER = re.compile(r"\$?([A-Z]*)\$?([0-9]*)", re.IGNORECASE)
+_CORNER = re.compile(r"\$?([A-Z]{0,3})\$?([0-9]{0,7})", re.IGNORECASE)
 
 
 class Engine:
