@@ -47,7 +47,8 @@ def test_a_value_is_said_to_be_one_and_rows_left_out_are_named(app):
 
 
 def test_a_call_inside_a_calculation_is_found(app):
-    said = ask(app, '=IF(FIT_VIF(C4:D33,3)>5,"FIT_ROWS(","ok")&FIT_PRESS(Jobs!B4:B33,Jobs!C4:D33)', "#VALUE!", on="Notes")
+    formula = '=IF(FIT_VIF(C4:D33,3)>5,"FIT_ROWS(","ok")&FIT_PRESS(Jobs!B4:B33,Jobs!C4:D33)'
+    said = ask(app, formula, "#VALUE!", on="Notes")
     first, second = said.removeprefix("Notes!H40: ").split("\n\n")
     assert first.startswith("FIT_VIF gives #NUM!. There are no rows of data in")
     assert second == "FIT_PRESS gives a value now: have the sheet calculated again."
