@@ -12,6 +12,8 @@ from sheetfuncs.errors import ArgumentError
 from sheetfuncs.functions.arguments import allowed
 from sheetfuncs.functions.declaration import CellResult, WorksheetFunction
 from sheetfuncs.functions.evaluate import evaluate, find_function
+from sheetfuncs.functions.registry import REGISTRY
+from sheetfuncs.functions.spellings import Spellings
 
 LONGEST_FORMULA = 8_192  # what a cell can hold
 
@@ -29,7 +31,7 @@ FormulaArgument = RangeText | Value | tuple[tuple[Value, ...], ...] | None
 
 @dataclass(frozen=True)
 class ParsedCall:
-    """A formula's function (upper case, without a file's prefixes) and arguments; an omitted one is None.
+    """A formula's function (upper case, its plain name where it is ours) and arguments; an omitted one is None.
 
     A text is the text itself, an error value its text; an array constant is a tuple of rows.
     """
@@ -80,12 +82,14 @@ def parse_formula(text: str) -> ParsedCall:
     if len(pieces) == 1 and not pieces[0]:
         pieces = []
     arguments = tuple(_argument(piece, separator, text) for piece in pieces)
-    return ParsedCall(match["name"].upper(), arguments)
+    return ParsedCall(_SPELLINGS.plain_name(match["name"]) or match["name"].upper(), arguments)
 
 
 _CALL = re.compile(
-    r"=?\s*@?\s*(?:\[\d+\]!)?(?:_xl\w+\.)*(?P<name>[A-Za-z_][\w.]*)\s*\(", re.IGNORECASE
+    r"""=?\s*@?\s*(?:(?:\[\d+\]|'[^']*\.xlam?'|[\w.-]+\.xlam?)!)?(?:_xl\w+\.)*(?P<name>[A-Za-z_][\w.]*)\s*\(""",
+    re.IGNORECASE,
 )
+_SPELLINGS = Spellings(REGISTRY)
 # What may stand in a formula, longest first; brackets of table references may nest and escape with an apostrophe.
 _TOKEN = re.compile(
     r"""(?P<text>"(?:[^"]|"")*")

@@ -26,6 +26,8 @@ def arguments(text: str) -> list[object]:
         "=FIT_VIF(Jobs!C4:F64)", "FIT_VIF(Jobs!C4:F64)", " = fit_vif ( Jobs!C4:F64 ) ", "=_xlfn.FIT_VIF(Jobs!C4:F64)",
         "=_xludf.FIT_VIF(Jobs!C4:F64)", "=_xll.FIT_VIF(Jobs!C4:F64)", "=_xlfn._xlws.FIT_VIF(Jobs!C4:F64)",
         "=[1]!FIT_VIF(Jobs!C4:F64)", "{=FIT_VIF(Jobs!C4:F64)}", "=@FIT_VIF(Jobs!C4:F64)",
+        "=sheetfuncs.xlam!FIT_VIF(Jobs!C4:F64)", r"='C:\Add-ins (ours)\sheetfuncs.xlam'!FIT_VIF(Jobs!C4:F64)",
+        "=ORG.SHEETFUNCS.CALC.FUNCTIONS.FITVIF(Jobs!C4:F64)",
     ],
 )
 def test_a_call_is_read_however_a_file_writes_it(text):
