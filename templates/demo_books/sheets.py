@@ -4,7 +4,7 @@ import datetime
 import math
 from collections.abc import Sequence
 from pathlib import Path
-from typing import Any
+from typing import Any, BinaryIO
 
 import xlsxwriter
 from xlsxwriter.format import Format
@@ -37,6 +37,9 @@ _FORMATS: dict[str, dict[str, Any]] = {
     "whole": {"num_format": "#,##0"},
     "tenth": {"num_format": "#,##0.0"},
     "hundredth": {"num_format": "#,##0.00"},
+    "figure": {"num_format": "[>=0.00005]0.0000;[<=-0.00005]-0.0000;0.0E+00", "align": "right", "valign": "top"},
+    "call": {"align": "left", "indent": 1, "valign": "top"},
+    "title_line": {"bold": True, "font_color": CLAY},
     "price": {"num_format": "€ 0.000"},
     "money": {"num_format": "€ #,##0"},
     "date": {"num_format": "d mmm yyyy", "align": "left"},
@@ -64,9 +67,9 @@ class Book:
     versions of XlsxWriter treat other heights and orders differently and the file would not come out the same.
     """
 
-    def __init__(self, path: Path, title: str) -> None:
+    def __init__(self, path: Path | BinaryIO, title: str) -> None:
         # In memory every zip entry gets the same fixed time stamp; a temporary folder would add its own.
-        self.file = xlsxwriter.Workbook(str(path), {"in_memory": True})
+        self.file = xlsxwriter.Workbook(str(path) if isinstance(path, Path) else path, {"in_memory": True})
         self.file.set_properties({"title": title, "comments": MARK, "company": FIRM, "created": CREATED})
         self.file.set_size(24000, 14000)
         self._formats: dict[str, Format] = {}

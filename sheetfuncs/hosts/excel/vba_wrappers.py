@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from sheetfuncs.cells.block import ERROR_TEXTS
 from sheetfuncs.functions.registry import REGISTRY, Argument, WorksheetFunction
-from sheetfuncs.hosts.excel.vba_text import in_lines, literal
+from sheetfuncs.hosts.excel.vba_text import identifier, in_lines, literal
 
 PYTHON_MODULE = "sheetfuncs.hosts.excel.functions"
 # Only these exist in every version of Excel; the newer ones become #VALUE!.
@@ -37,7 +37,7 @@ def wrapper(function: WorksheetFunction) -> str:
     depends on them, and xlwings would look into the workbook for Python of its own.
     """
     name = function.name
-    given = f"Array({', '.join(argument.name for argument in function.arguments)})"
+    given = f"Array({', '.join(identifier(argument.name) for argument in function.arguments)})"
     may_be_text = "True" if function.returns == "text" else "False"
     return (
         in_lines(f"Public Function {name}(", map(_parameter, function.arguments), ") As Variant")
@@ -53,4 +53,4 @@ End Function
 
 
 def _parameter(argument: Argument) -> str:
-    return f"{'Optional ' if argument.optional else ''}ByVal {argument.name} As Variant"
+    return f"{'Optional ' if argument.optional else ''}ByVal {identifier(argument.name)} As Variant"
