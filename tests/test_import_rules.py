@@ -40,7 +40,7 @@ THIRD_PARTY = {
     "cli": {"click"},
 }
 LATE_ONLY = {"statsmodels", "pandas", "xlwings", "scipy.stats"}
-INSIDE_OFFICE = {"hosts.calc.bridge", "hosts.calc.extension_script", "hosts.calc.protocol"}  # nothing of sheetfuncs there
+INSIDE_OFFICE = {"hosts.calc.bridge", "hosts.calc.extension_script", "hosts.calc.protocol"}  # without sheetfuncs
 NEVER = {"xlwings.pro"}  # its licence is commercial
 
 
@@ -60,7 +60,8 @@ def imports(tree: ast.AST, late: bool = False) -> Iterator[Import]:
             yield from (Import(f"{base}.{alias.name}", node.lineno, late) for alias in node.names)
         elif isinstance(node, ast.Call) and ast.unparse(node.func).endswith(("import_module", "__import__")):
             name = ast.unparse(node.args[0])
-            if not name.startswith(("f'{__name__}.", "f'{__package__}.")):  # a package may load its own modules at their first use
+            # A package may load its own modules at their first use.
+            if not name.startswith(("f'{__name__}.", "f'{__package__}.")):
                 yield Import(name.strip("'"), node.lineno, late)
         elif isinstance(node, ast.If) and "TYPE_CHECKING" in ast.unparse(node.test):
             yield from imports(ast.Module(node.body, []), late=True)
