@@ -10,8 +10,8 @@ import tempfile
 from pathlib import Path
 from typing import Any
 
-import sheetfuncs
-from sheetfuncs.errors import ArgumentError
+from sheetfuncs import __version__
+from sheetfuncs.errors import InstallError
 from sheetfuncs.hosts.calc import office
 from sheetfuncs.hosts.calc.build import build_extension
 
@@ -24,14 +24,14 @@ def install(profile: Path | None = None, *, seconds: float = SECONDS) -> str:
     """Install or replace the extension in a profile (None: the user's own); returns a sentence on what to do next.
 
     It records this interpreter, which the worker runs in from then on. Works as root too, where LibreOffice's own
-    command refuses. Raises ArgumentError where LibreOffice is not there, runs, or refuses.
+    command refuses. Raises InstallError where LibreOffice is not there, runs, or refuses.
     """
     with tempfile.TemporaryDirectory() as folder:
         file = Path(folder) / "sheetfuncs.oxt"
         file.write_bytes(build_extension(settings(seconds)))
         found = ask_office(profile, "add", str(file))
     if not found.get("registered"):
-        raise ArgumentError("LibreOffice took the extension but does not list it; try `sheetfuncs calc install` again.")
+        raise InstallError("LibreOffice took the extension but does not list it; try `sheetfuncs calc install` again.")
     ask_office(profile, "list")  # the first start after an installation settles it
     return (
         f"The extension (version {found['registered']}) is in LibreOffice and runs {sys.executable}. Start Calc: the "
@@ -49,8 +49,8 @@ def settings(seconds: float = SECONDS) -> dict[str, object]:
     """What the bridge needs to know: which Python, where sheetfuncs is, its version, the limit in seconds."""
     return {
         "interpreter": sys.executable,
-        "package_folder": str(Path(sheetfuncs.__file__).resolve().parents[1]),
-        "version": sheetfuncs.__version__,
+        "package_folder": str(Path(__file__).resolve().parents[3]),
+        "version": __version__,
         "seconds": seconds,
     }
 
@@ -60,7 +60,7 @@ def ask_office(profile: Path | None, *action: str) -> dict[str, Any]:
     folder = office.find_office()
     python = office.find_uno_python(folder)
     if python is None:
-        raise ArgumentError(
+        raise InstallError(
             f"LibreOffice in {folder} has no Python that knows it: install its Python part (Debian: python3-uno)."
         )
     with office.Office(profile, folder=folder) as program:
@@ -87,8 +87,8 @@ def _wait_for(asking: subprocess.Popen[bytes], program: office.Office) -> None:
             with contextlib.suppress(subprocess.TimeoutExpired):
                 asking.wait(5)
                 return
-            raise ArgumentError("LibreOffice is running with this profile: close all its windows, then try again.")
-    raise ArgumentError("LibreOffice did not answer within three minutes; try again.")
+            raise InstallError("LibreOffice is running with this profile: close all its windows, then try again.")
+    raise InstallError("LibreOffice did not answer within three minutes; try again.")
 
 
 def _said(said: str, errors: str) -> dict[str, Any]:
@@ -96,8 +96,8 @@ def _said(said: str, errors: str) -> dict[str, Any]:
         answer: dict[str, Any] = json.loads(said.strip().splitlines()[-1])
     except (ValueError, IndexError):
         last = (errors.strip().splitlines() or ["no message"])[-1]
-        raise ArgumentError(f"LibreOffice could not be asked ({last[:200]}); start it once by hand, close it, and try "
+        raise InstallError(f"LibreOffice could not be asked ({last[:200]}); start it once by hand, close it, and try "
                             "again.") from None
     if "trouble" in answer:
-        raise ArgumentError(f"LibreOffice refused: {answer['trouble']}")
+        raise InstallError(f"LibreOffice refused: {answer['trouble']}")
     return answer

@@ -11,7 +11,7 @@ import threading
 import uuid
 from pathlib import Path
 
-from sheetfuncs.errors import ArgumentError
+from sheetfuncs.errors import InstallError
 
 USUAL_FOLDERS = (
     "/usr/lib/libreoffice/program", "/usr/lib64/libreoffice/program", "/opt/libreoffice*/program",
@@ -25,7 +25,7 @@ NOT_FOUND = (
 
 
 def find_office() -> Path:
-    """The folder of the programs. Raises ArgumentError where LibreOffice is not found."""
+    """The folder of the programs. Raises InstallError where LibreOffice is not found."""
     on_path = shutil.which("soffice") or shutil.which("libreoffice")
     folders = [Path(on_path).resolve().parent] if on_path else []
     for pattern in USUAL_FOLDERS:
@@ -34,7 +34,7 @@ def find_office() -> Path:
     for folder in folders:
         if _program(folder) is not None:
             return folder
-    raise ArgumentError(NOT_FOUND)
+    raise InstallError(NOT_FOUND)
 
 
 def _program(folder: Path) -> Path | None:
@@ -98,7 +98,8 @@ class Office:
             if not self.wait(5):
                 self.process.kill()
                 self._ended.wait()
-        self._messages.close()
+        if not self._messages.closed:
+            self._messages.close()
 
     def __enter__(self) -> Office:
         return self

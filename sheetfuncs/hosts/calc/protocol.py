@@ -26,10 +26,19 @@ LONGEST_PART = 2_000_000_000
 BLANK, NUMBER, BOOLEAN, TEXT, ERROR, DATE = range(6)  # as in sheetfuncs.cells.block.Kind
 ERROR_TEXTS = frozenset({"#NULL!", "#DIV/0!", "#VALUE!", "#REF!", "#NAME?", "#NUM!", "#N/A"})
 
+_START = "import sys; sys.path.append(sys.argv[1]); from sheetfuncs.hosts.calc.worker import main; main()"
 _HEAD = struct.Struct("<4sBBHI")
 _LENGTH = struct.Struct("<Q")
 _PLACE = struct.Struct("<IIIIBHI")  # rows, columns, first row, first column, flags, length of the title, of the texts
 _KINDS, _HIDDEN, _TITLED, _DATE1904 = 1, 2, 4, 8
+
+
+def worker_command(settings: dict) -> list:
+    """The command that starts a worker: no module is taken from the current folder (-P), which may hold anything.
+
+    settings: as the installer wrote them, with interpreter and package_folder. Raises KeyError where one is missing.
+    """
+    return [settings["interpreter"], "-P", "-c", _START, settings["package_folder"]]
 
 
 class ProtocolError(Exception):
@@ -126,10 +135,14 @@ def unpack(data) -> Block:
         pieces.append(view[start:start + length])
         start += length
     title, numbers, kinds, hidden, texts = pieces
+    try:
+        sheet = bytes(title).decode("utf-8", "surrogatepass") if flags & _TITLED else None
+    except UnicodeDecodeError:
+        raise ProtocolError("The title of a block's sheet cannot be read.") from None
     return Block(
         rows, columns, _doubles(numbers), bytes(kinds) if flags & _KINDS else None, _texts(texts),
         first_row=first_row, first_column=first_column,
-        sheet=bytes(title).decode("utf-8", "surrogatepass") if flags & _TITLED else None,
+        sheet=sheet,
         hidden=bytes(hidden) if flags & _HIDDEN else None, date1904=bool(flags & _DATE1904),
     )
 

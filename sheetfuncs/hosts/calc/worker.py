@@ -75,13 +75,6 @@ def evaluate(head: Head, blocks: list[Block], progress: Progress) -> tuple[Head,
     return {"rows": False, "value": result}, None
 
 
-def why(head: Head, blocks: list[Block], progress: Progress) -> tuple[Head, bytes | None]:
-    """The sentence behind the error value of a call, or "ok"; the head is that of `evaluate`."""
-    from sheetfuncs.functions.evaluate import why as explain
-
-    return {"sentence": explain(head["name"], *arguments(head, blocks))}, None
-
-
 def arguments(head: Head, blocks: list[Block]) -> list[object]:
     """The arguments of a call: its blocks and its plain values, None for one that was omitted."""
     return [blocks[given["block"]] if "block" in given else given.get("value") for given in head["arguments"]]
@@ -100,7 +93,7 @@ def _late(module: str, function: str) -> Handler:
 HANDLERS: dict[str, Handler] = {
     "hello": hello,
     "evaluate": evaluate,
-    "why": why,
+    "explain": _late("explain_job", "explain"),
     "check": _late("check_job", "check"),
     "rename": _late("rename_job", "rename"),
 }

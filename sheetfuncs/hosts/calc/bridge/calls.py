@@ -46,12 +46,6 @@ def value_of(answer):
     return answer.head.get("value")
 
 
-def explain(name: str, given) -> str:
-    """The sentence behind the value of this call, or "ok"; given as for `call`. Raises WorkerTrouble."""
-    head, blocks = gather(name, given, pack_afresh)
-    return CELLS.request("why", head, blocks).head["sentence"]
-
-
 def pack_afresh(ranges) -> list:
     """A Packed block for each range, read now."""
     last_row = common_last_row(ranges)

@@ -23,7 +23,6 @@ from sheetfuncs_bridge import protocol
 EXTENSION = Path(__file__).resolve().parents[2]
 START_SECONDS = 30.0  # for loading the worker's libraries, on top of a request's own limit
 HEARTBEAT_SECONDS = 0.2
-START = "import sys; sys.path.append(sys.argv[1]); from sheetfuncs.hosts.calc.worker import main; main()"
 
 
 class WorkerTrouble(Exception):
@@ -131,7 +130,11 @@ class _Process:
         self._errors = tempfile.TemporaryFile()  # noqa: SIM115 (closed in end)
         try:
             self._child = _start(settings, self._errors)
+        except WorkerTrouble:
+            self._errors.close()
+            raise
         except OSError as trouble:
+            self._errors.close()
             raise WorkerTrouble(
                 f"The Python of sheetfuncs ({settings.get('interpreter')}) cannot be started ({trouble.strerror}); run "
                 "`sheetfuncs calc install` from where sheetfuncs is installed now."
@@ -224,14 +227,14 @@ class _Process:
 
 
 def _start(settings: dict, errors) -> subprocess.Popen:
-    """Start the worker: no shell, no module of the current folder, no Python settings of LibreOffice."""
-    interpreter, package_folder = settings.get("interpreter"), settings.get("package_folder")
-    if not interpreter or not package_folder:
-        raise WorkerTrouble("The extension does not know its Python; run `sheetfuncs calc install` again.")
+    """Start the worker: without a shell, and without the settings for LibreOffice's own Python and libraries."""
+    try:
+        command = protocol.worker_command(settings)
+    except KeyError:
+        raise WorkerTrouble("The extension does not know its Python; run `sheetfuncs calc install` again.") from None
     unwanted = ("PYTHON", "LD_LIBRARY_PATH", "DYLD_", "URE_", "UNO_")
     return subprocess.Popen(
-        [interpreter, "-P", "-c", START, package_folder],
-        stdin=subprocess.PIPE, stdout=subprocess.PIPE, stderr=errors, cwd=str(EXTENSION),
+        command, stdin=subprocess.PIPE, stdout=subprocess.PIPE, stderr=errors, cwd=str(EXTENSION),
         env={name: value for name, value in os.environ.items() if not name.startswith(unwanted)},
         creationflags=getattr(subprocess, "CREATE_NO_WINDOW", 0) if sys.platform == "win32" else 0,
     )
