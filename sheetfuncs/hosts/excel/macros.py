@@ -121,6 +121,8 @@ def _check(
     require_open_structure(book)
     step("reading the cells ...")
     block = read_block(cells)
+    if block.hidden is None:
+        remarks = (*remarks, "Excel did not say which rows are hidden, so hidden rows are not counted as such.")
     step("checking ...")
     check = check_block(block, book=book.name, settings=settings, remarks=remarks)
     if earlier is None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from contextlib import suppress
 from dataclasses import dataclass
 from datetime import datetime
 from typing import TYPE_CHECKING, Any, cast
@@ -20,6 +21,7 @@ if TYPE_CHECKING:
 
 # One reading holds at most so many cells: macOS' scripting gives up on much larger answers.
 CELLS_A_READING = 200_000
+MOST_QUESTIONS = 2_000  # about hidden rows, each of which takes some milliseconds
 
 
 @dataclass(frozen=True)
@@ -148,12 +150,39 @@ def hidden_rows(cells: xw.Range) -> np.ndarray | None:
     """Which rows are hidden or filtered out, bool (rows,); None where Excel does not say."""
     try:
         areas = cast("list[xw.Range]", cells.get_special_cells("visible"))
-    except Exception:  # on a protected sheet, say: the check then does not tell how many rows are hidden
-        return None
-    if not areas:  # all columns are hidden, so nothing is known of the rows
-        return None
+    except Exception:  # on a protected sheet, or in an older xlwings
+        return _hidden_by_halves(cells)
+    if not areas:  # all columns are hidden, so that this tells nothing of the rows
+        return _hidden_by_halves(cells)
     hidden = np.ones(cells.shape[0], bool)
     for area in areas:
         first = area.row - cells.row
         hidden[first : first + area.shape[0]] = False
     return hidden
+
+
+def _hidden_by_halves(cells: xw.Range) -> np.ndarray | None:
+    """The same, asked of all rows at once, then of halves wherever some are hidden and others are not."""
+    hidden = np.zeros(cells.shape[0], bool)
+    open_parts = [(0, cells.shape[0])]
+    for _ in range(MOST_QUESTIONS):
+        if not open_parts:
+            return hidden
+        start, stop = open_parts.pop()
+        answer = _all_hidden(cells[start:stop, :1])
+        if answer is None and stop - start == 1:
+            return None
+        if answer is None:
+            middle = (start + stop) // 2
+            open_parts += [(start, middle), (middle, stop)]
+        else:
+            hidden[start:stop] = answer
+    return None
+
+
+def _all_hidden(cells: xw.Range) -> bool | None:
+    """True where all rows are hidden, False where none is, None for some of them or without an answer."""
+    with suppress(Exception):
+        answer = cells.api.entire_row.hidden.get() if on_mac() else cells.api.EntireRow.Hidden
+        return answer if isinstance(answer, bool) else None
+    return None

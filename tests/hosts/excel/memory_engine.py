@@ -312,11 +312,21 @@ class Range(base_classes.Range):
     def api(self):
         shown = self._shaped([["" if c.value is None else str(c.value) for c in row] for row in self._cells()])
         first = self.model.cell(self.row, self.column)
+        hidden = self._rows_hidden()
         return _Native(
+            EntireRow=_Native(Hidden=hidden), entire_row=_Native(hidden=_Get(hidden)),
             Value2=self.held, Areas=SimpleNamespace(Count=len(self.areas)), string_value=_Get(shown),
             HasSpill=first.shape == "spill", has_spill=_Get(first.shape == "spill"),
             SpillParent=self._spill_parent() if first.shape == "spilled" else _Missing(),
         )
+
+    def _rows_hidden(self):
+        """True or False for all rows, None for some of them, as Excel's Null; an error where it does not say."""
+        if not self.app.model.tells_hidden_rows:
+            return _Missing()
+        top, _, bottom, _ = self.areas[0]
+        found = {row in self.model.hidden_rows for row in range(top, bottom + 1)}
+        return found.pop() if len(found) == 1 else None
 
     def _spill_parent(self):
         for row in range(self.row, 0, -1):

@@ -139,6 +139,7 @@ class App:
     fail: dict[str, Exception] = field(default_factory=dict)
     carries_names: bool = True
     has_formula2: bool = True
+    tells_hidden_rows: bool = True
     mac: bool = False
     opened: list[Path] = field(default_factory=list)
 

@@ -290,6 +290,22 @@ def test_an_older_excel_without_spilling_keeps_formulas_too(app):
     assert sheet(app, "Notes").cells[5, 1].formula == "='Check of Jobs'!B5"
 
 
+@pytest.mark.parametrize("mac", [False, True])
+def test_hidden_rows_are_counted_on_a_protected_sheet_too(app, mac, monkeypatch, tmp_path):
+    monkeypatch.setattr("sheetfuncs.hosts.excel.ranges.on_mac", lambda: mac)
+    sheet(app).protected, sheet(app).hidden_rows = True, {1, 3, 7, 8, 20, 33, 50}
+    press(app)
+    texts = [str(cell.value) for cell in sheet(app, "Check of Jobs").cells.values()]
+    assert "4 used rows are hidden or filtered out, and counted like the others." in texts
+
+
+def test_that_hidden_rows_are_not_known_is_said(app):
+    sheet(app).protected, app.tells_hidden_rows = True, False
+    press(app)
+    texts = [str(cell.value) for cell in sheet(app, "Check of Jobs").cells.values()]
+    assert any("Excel did not say which rows are hidden" in text for text in texts)
+
+
 def awkward_jobs():
     """Dates, currency with more digits than it shows, an error, a blank, a truth value."""
     rows = invented_jobs()
