@@ -18,6 +18,7 @@ class System(VBAObject):
 
     def __init__(self, python, settings, libraries):
         self.python, self.settings, self.libraries, self.asked = python, settings, libraries, []
+        self.script_is_there = True
 
     @method(name="Setting")
     def setting(self, key):
@@ -39,6 +40,8 @@ class System(VBAObject):
 
     @method(name="AppleScriptTask")
     def apple_script_task(self, script, handler, parameter):
+        if not self.script_is_there:
+            raise VBARuntimeError(5, "Invalid procedure call or argument")
         self.asked.append((script, handler, parameter))
 
 
@@ -71,7 +74,7 @@ Private Sub AppleScriptTask(ByVal script As String, ByVal handler As String, ByV
     System.AppleScriptTask script, handler, parameter
 End Sub
 """
-INTERPRETERS = {"INTERPRETER_WIN": "C:\\my env\\Scripts\\python.exe", "INTERPRETER_MAC": "/Users/ada/my env/bin/python"}
+INTERPRETERS = {"INTERPRETER_WIN": "C:\\my env\\Scripts\\python.exe"}
 
 
 def link(system, *, python=None, libraries=(), book="orders.xlsx", settings=INTERPRETERS):
@@ -125,24 +128,26 @@ def test_on_windows_a_macro_gets_the_active_workbook_itself():
 
 
 def test_on_macos_a_macro_goes_through_the_script():
-    vba, asked, excel = link("macOS", book="Ada's orders (2).xlsx")
+    book = "Ada's $(open x) `y` \"z\".xlsx"  # the script quotes it for the shell
+    vba, asked, excel = link("macOS", book=book)
     vba.run("Perform", ["import m; m.f()"])
-    (script, handler, parameter), = asked.asked
+    ((script, handler, parameter),) = asked.asked
     assert (script, handler) == (SCRIPT_NAME, "VbaHandler")
-    assert parameter.split("|") == [
-        "false;;;;;", "'/Users/ada/my env/bin/python' -P", "import m; m.f()", "Ada's orders (2).xlsx", "/Excel", "/Log",
-    ]
+    assert parameter.split("|") == ["", "", "import m; m.f()", book, "/Excel", ""]
     assert "at work" in excel.application.status
 
 
-@pytest.mark.parametrize("name", ["a$(open x).xlsx", "a`open x`.xlsx", 'a".xlsx', "a\\.xlsx", "a|b.xlsx"])
-def test_on_macos_a_name_that_a_shell_would_act_on_is_refused(name):
+@pytest.mark.parametrize("name", ["a|b.xlsx", "a=b.xlsx"])
+def test_on_macos_a_name_that_cannot_be_handed_on_is_refused(name):
     vba, asked, _ = link("macOS", book=name)
-    assert failure(vba, "Perform", ["import m; m.f()"]).startswith("The name of this workbook holds the character ")
+    sentence = failure(vba, "Perform", ["import m; m.f()"])
+    assert sentence.startswith(f"The name of this workbook holds the character {name[1]}, with which")
     assert asked.asked == []
 
 
-def test_on_macos_a_path_of_python_that_a_shell_would_act_on_is_refused():
-    vba, asked, _ = link("macOS", settings={"INTERPRETER_MAC": "/a'b/python"})
-    assert failure(vba, "Perform", ["import m; m.f()"]).startswith("The path of Python holds the character '")
-    assert asked.asked == []
+def test_on_macos_a_script_that_cannot_be_run_is_said_with_its_cure():
+    vba, asked, excel = link("macOS")
+    asked.script_is_there = False
+    sentence = failure(vba, "Perform", ["import m; m.f()"])
+    assert sentence.startswith("The script that starts Python could not be run.")
+    assert excel.application.status == "busy"
