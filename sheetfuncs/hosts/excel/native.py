@@ -8,6 +8,7 @@ from typing import Any
 
 
 def on_mac() -> bool:
+    """Whether this is macOS, where xlwings speaks to Excel by scripting, and Excel has no functions in Python."""
     return sys.platform == "darwin"
 
 
