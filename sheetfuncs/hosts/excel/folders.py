@@ -21,7 +21,6 @@ SCRIPT_NAME = f"{PROJECT}.applescript"
 """What the add-in's VBA asks macOS to run. A name of our own: scripts of other xlwings add-ins stay untouched."""
 
 _MAC_EXCEL = "com.microsoft.Excel"
-_MAC_START = "User Content.localized/Startup.localized/Excel"
 
 
 def _short_path(path: str) -> str:
@@ -146,7 +145,7 @@ def _windows(environment: Environment) -> Place:
             f"The environment variable {missing[0]} is not set, so Excel's folder cannot be found: run the command in "
             "a window of the user who works with Excel."
         )
-    if "WindowsApps" in PureWindowsPath(environment.base_prefix).parts:
+    if "windowsapps" in PureWindowsPath(environment.base_prefix.lower()).parts:
         raise InstallError(
             "This Python comes from the Microsoft Store, and Windows keeps apart what such a program writes, so Excel "
             "would not find the add-in: install Python from python.org and run the command from there."
@@ -167,12 +166,20 @@ def _mac(environment: Environment) -> Place:
     office = library / "Group Containers" / "UBF8T346G9.Office"
     _require(container)
     _require(office)
+    user_content = _localized(office, "User Content")
+    start = _localized(user_content, "Startup") / "Excel"
     return Place(
-        environment, "macOS", addin=office / _MAC_START / ADDIN_NAME, configuration=container / f"{PROJECT}.conf",
+        environment, "macOS", addin=start / ADDIN_NAME, configuration=container / f"{PROJECT}.conf",
         script=library / "Application Scripts" / _MAC_EXCEL / SCRIPT_NAME,
         record=container / f"{PROJECT}-installed.json", log=container / f"{PROJECT}.log",
-        also_loaded=office / "User Content.localized" / "Add-Ins.localized",
+        also_loaded=_localized(user_content, "Add-Ins"),
     )
+
+
+def _localized(parent: Path, name: str) -> Path:
+    """The folder that the Finder shows under this name; on the disk it has an ending, in some versions it has not."""
+    plain, ending = parent / name, parent / f"{name}.localized"
+    return plain if plain.is_dir() and not ending.is_dir() else ending
 
 
 def refused_by_macos(path: object) -> InstallError:

@@ -44,9 +44,10 @@ def install(place: Place, *, xlam: Path | None = None) -> Installed:
     earlier = read_record(place)
     addin = built_addin() if xlam is None else given_addin(xlam)
     contents = file_contents(place, addin)
-    for path, content in contents.items():
-        _require_ours(place, path, content, earlier)
-    _keep_signature(place, addin)
+    with _refusals(place):
+        for path, content in contents.items():
+            _require_ours(place, path, content, earlier)
+        _keep_signature(place, addin)
     with _refusals(place), _made_folders(contents) as made:
         known = earlier.folders if earlier else []
         folders = [*known, *(str(folder) for folder in made if str(folder) not in known)]
@@ -70,15 +71,14 @@ def remove(place: Place) -> Removed:
         raise InstallError(
             f"No installation by `sheetfuncs excel install` is recorded for this user, so nothing is removed.{there}"
         )
-    ours, notes = [], []
-    for path in map(Path, record.files):
-        if not path.is_file():
-            continue
-        if record.wrote(path) or (path == place.addin and is_ours(path)):
-            ours.append(path)
-        else:
-            notes.append(f"{path} was changed since it was installed, so it is left: delete it if nobody needs it.")
+    ours: list[Path] = []
+    notes: list[str] = []
     with _refusals(place):
+        for path in filter(Path.is_file, map(Path, record.files)):
+            if record.wrote(path) or (path == place.addin and is_ours(path)):
+                ours.append(path)
+            else:
+                notes.append(f"{path} was changed since it was installed, so it is left: delete it if nobody needs it.")
         for path in sorted(ours, key=lambda path: path != place.addin):  # the one that Excel may hold open comes first
             path.unlink()
         place.record.unlink()
@@ -103,9 +103,8 @@ def _require_ours(place: Place, path: Path, content: bytes, earlier: Record | No
     if not os.path.lexists(path):
         return
     if path.is_file() and not path.is_symlink():
-        if path == place.addin and is_ours(path):
-            return
-        if path.read_bytes() == content or (earlier and earlier.wrote(path)):
+        there = path.read_bytes()  # a file that Excel keeps to itself fails here, and is not taken for a foreign one
+        if there == content or (earlier and earlier.wrote(path)) or (path == place.addin and is_ours(path)):
             return
     changed = earlier is not None and str(path) in earlier.files
     raise InstallError(
@@ -154,7 +153,7 @@ def _refusals(place: Place) -> Iterator[None]:
     except OSError as trouble:
         path = trouble.filename2 or trouble.filename  # the second is the one that was to be replaced
         denied = isinstance(trouble, PermissionError)
-        if denied and str(path) == str(place.addin):
+        if denied and str(path) == str(place.addin) and place.addin.exists():
             raise WorkbookBusyError(
                 f"{place.addin} cannot be replaced or removed, most likely because Excel has it open: close every "
                 "Excel window and run the command again; nothing was changed."

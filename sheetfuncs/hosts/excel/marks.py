@@ -12,7 +12,11 @@ from sheetfuncs.hosts.excel.folders import Place
 def is_marked(place: Place, path: Path) -> bool:
     """Whether a file carries the mark of a download: a stream of its own on Windows, an attribute on macOS."""
     if place.windows:
-        return os.path.exists(f"{path}:Zone.Identifier")
+        try:
+            open(f"{path}:Zone.Identifier", "rb").close()
+        except OSError:
+            return False
+        return True
     return _has_attribute(path, "com.apple.quarantine")
 
 

@@ -309,6 +309,39 @@ def test_add_in_that_excel_holds_open_is_not_removed_and_all_else_stays(tmp_path
     assert tree(tmp_path) == before
 
 
+def test_add_in_that_excel_keeps_to_itself_is_not_taken_for_a_foreign_one(tmp_path, monkeypatch):
+    place = place_on("Windows", tmp_path)
+    install(place)
+    before = tree(tmp_path)
+    real = Path.read_bytes
+
+    def refuse(path):
+        if path == place.addin:
+            raise PermissionError(13, "The process cannot access the file", str(path))
+        return real(path)
+
+    with monkeypatch.context() as patch:
+        patch.setattr(Path, "read_bytes", refuse)
+        for job in (install, remove):
+            with pytest.raises(WorkbookBusyError, match="close every Excel window"):
+                job(place)
+    assert tree(tmp_path) == before
+
+
+def test_start_folder_that_may_not_be_written_to_is_not_laid_at_excels_door(tmp_path, monkeypatch):
+    place = place_on("Windows", tmp_path)
+    refuse_to_replace(monkeypatch, place.addin)
+    with pytest.raises(InstallError, match="see that you may write to its folder"):
+        install(place)
+
+
+def test_macos_folder_without_the_hidden_ending_is_used_where_it_is_the_one_there_is(tmp_path):
+    environment = mac(tmp_path)
+    start = environment.home / "Library/Group Containers/UBF8T346G9.Office/User Content/Startup.localized/Excel"
+    start.mkdir(parents=True)
+    assert find_place(environment).addin.parent == start
+
+
 def test_macos_that_lets_nobody_into_excels_folders_is_said_in_a_sentence(tmp_path, monkeypatch):
     environment = mac(tmp_path)
     place = find_place(environment)
@@ -425,6 +458,14 @@ def test_signed_copy_is_installed_as_it_is(tmp_path, built):
     assert install(place, xlam=file).notes == ()
     assert place.addin.read_bytes() == file.read_bytes()
     assert file.exists()
+
+
+def test_add_in_that_was_signed_where_it_stands_can_be_given(tmp_path, built):
+    place = place_on("Windows", tmp_path)
+    install(place)
+    place.addin.write_bytes(signed(built))
+    assert install(place, xlam=place.addin).notes == ()
+    assert place.addin.read_bytes() == signed(built)
 
 
 def test_unsigned_copy_is_installed_and_said_to_be_unsigned(tmp_path, built):
