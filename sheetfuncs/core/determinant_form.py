@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from functools import cache
 from math import pi, sin, sqrt
 
 import numpy as np
@@ -10,7 +11,7 @@ from scipy.fft import dct
 from sheetfuncs.core.lagged_products import LaggedProducts
 
 # Up to here sums over all frequencies are cheaper than the series in lagged cross products.
-FREQUENCIES_UP_TO = 1000
+FREQUENCIES_UP_TO = 400
 
 
 def frequencies(n: int) -> np.ndarray:
@@ -35,24 +36,36 @@ class DeterminantForm:
 
     def __init__(self, q: np.ndarray, intercept: bool, d: float):
         n = self.n = q.shape[0]
+        self.size = n - q.shape[1] - int(intercept)
         self.k, self.intercept, self.d = q.shape[1], intercept, d
         # Inside the range of the frequencies of A itself, which every node of the integral stays in.
         self.lowest = 0.5 / (frequency(n, int(intercept)) - d)
         self.highest = 0.5 / (frequency(n, n - 1) - d)
-        self.sums = LaggedProducts(q) if n > FREQUENCIES_UP_TO and self.k else FrequencySums(q, frequencies(n) - d)
+        self.sums = LaggedProducts(q) if n > FREQUENCIES_UP_TO and self.k else FrequencySums(q, d)
+        self.shift = 2.0 * (self.sums.trace + int(intercept) - 1)
 
-    def at(self, s: float) -> tuple[float, float, float]:
-        """K(s) and its derivatives, these from one step off the real line."""
+    def at(self, s: float) -> tuple[float, float]:
+        """From one step off the real line."""
         # Small beside the integrand's width, about 1/sqrt(8n), and the way to the ends.
         step = min(0.03 / sqrt(self.n), 0.05 * abs(s - self.lowest), 0.05 * abs(self.highest - s))
         logs = self._log_determinant(np.array([s, s + 1j * step]))
-        return (
-            -0.5 * float(logs[0].real), -0.5 * float(logs[1].imag) / step, float((logs[1] - logs[0]).real) / step**2,
-        )
+        return -0.5 * float(logs[1].imag) / step, float((logs[1] - logs[0]).real) / step**2
 
-    def across(self, place: float, t: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    def roughly_at(self, s: float) -> tuple[float, float]:
+        """The derivatives of K as if the frequencies had their limiting distribution, that of 2 - 2 cos of an angle,
+        the first shifted so that it is exact at 0."""
+        rate = 2.0 * self.d - 4.0
+        whole = 1.0 + rate * s
+        root = sqrt(max(whole * whole - 16.0 * s * s, 1e-6))  # it ends a little before the frequencies of A
+        steep = (rate * whole - 16.0 * s) / root
+        slope = (rate + steep) / (whole + root)
+        bend = (rate * rate - 16.0 - steep * steep) / (root * (whole + root)) - slope * slope
+        return self.shift - 0.5 * self.size * slope, -0.5 * self.size * bend
+
+    def across(self, place: float, t: np.ndarray) -> tuple[float, np.ndarray, np.ndarray]:
         logs = self._log_determinant(np.concatenate([[place], place + 1j * t]))
-        return np.exp(-0.5 * (logs.real[1:] - logs.real[0])), -0.5 * logs.imag[1:]
+        height = float(logs.real[0])
+        return -0.5 * height, np.exp(-0.5 * (logs.real[1:] - height)), -0.5 * logs.imag[1:]
 
     def bound(self, end: float) -> float:
         """An upper bound for the logarithm of the tail on end's side of 0, whatever Q is, from real s up to end.
@@ -90,23 +103,36 @@ class DeterminantForm:
 
 
 class FrequencySums:
-    """Q'C^-1 Q as a sum over the frequencies: of outer products of the spectrum's rows, over 1 - 2s shifted."""
+    """Q'C^-1 Q as a sum over the frequencies: of outer products of the spectrum's rows, over 1 - 2s(f - d).
 
-    def __init__(self, q: np.ndarray, shifted: np.ndarray):
-        self.shape, self.shifted = q.shape, shifted
-        spectrum = dct(q, type=2, axis=0, norm="ortho")
-        self.outer = (spectrum[:, :, None] * spectrum[:, None, :]).reshape(q.shape[0], -1)
+    trace: of the sum of those outer products, times the cosines of the frequencies' angles.
+    """
+
+    def __init__(self, q: np.ndarray, d: float):
+        n, k = q.shape
+        spectrum, values = dct(q, type=2, axis=0, norm="ortho"), frequencies(n)
+        self.shifted = values - d
+        first, second, self.places = _pairs(k)
+        self.outer = spectrum[:, first] * spectrum[:, second]
+        self.trace = k - 0.5 * float((values @ self.outer)[first == second].sum())
 
     def inverses(self, s: np.ndarray) -> np.ndarray:
         """(nodes, k, k) for complex s (nodes,)."""
-        n, k = self.shape
         # In real arithmetic, several times as fast: 1/(a - bi) = (a + bi)/(a^2 + b^2).
-        weights = np.empty((2, s.shape[0], n))
-        np.subtract(1.0, 2.0 * s.real[:, None] * self.shifted, out=weights[0])
-        np.multiply(2.0 * s.imag[:, None], self.shifted, out=weights[1])
-        weights /= np.square(weights).sum(axis=0)
-        real, imaginary = (weights.reshape(-1, n) @ self.outer).reshape(2, -1, k, k)
-        return real + 1j * imaginary
+        weights = np.multiply.outer(np.stack([-2.0 * s.real, 2.0 * s.imag]), self.shifted)
+        weights[0] += 1.0
+        weights /= weights[0] ** 2 + weights[1] ** 2
+        real, imaginary = (weights.reshape(-1, self.shifted.shape[0]) @ self.outer).reshape(2, s.shape[0], -1)
+        return (real + 1j * imaginary)[:, self.places]
+
+
+@cache
+def _pairs(k: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Both places of each pair of k columns, and the pair's place (k, k)."""
+    first, second = np.triu_indices(k)
+    places = np.empty((k, k), np.intp)
+    places[first, second] = places[second, first] = np.arange(first.shape[0])
+    return first, second, places
 
 
 def _log_pivots(matrices: np.ndarray) -> np.ndarray:

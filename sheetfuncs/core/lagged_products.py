@@ -5,11 +5,9 @@ from __future__ import annotations
 import numpy as np
 
 # Elements of a block of rows that stays in the processor's cache.
-_BLOCK = 160_000
-# Columns of a long row: wide enough for fast products, small enough for their result.
-_WIDEST = 128
+_BLOCK = 100_000
 # The logarithm of the relative precision of sums.
-_ROUNDING = -39.0
+_ROUNDING = -37.0
 
 
 class LaggedProducts:
@@ -24,6 +22,11 @@ class LaggedProducts:
         # As many as the integral at the centre of the distribution takes.
         guess = int(-_ROUNDING / np.log(max(np.sqrt(q.shape[0]) / 3.0, 1.5))) + 2
         self.moments = self._moments(min(guess, q.shape[0] - 1))
+
+    @property
+    def trace(self) -> float:
+        """Of the first moment."""
+        return float(self.moments[1].trace())
 
     def series(self, ratio: np.ndarray, loss: np.ndarray) -> np.ndarray:
         """M_0 + 2 sum over m of ratio^m M_m for every ratio (nodes,): (nodes, k, k).
@@ -42,37 +45,24 @@ class LaggedProducts:
     def _moments(self, count: int) -> np.ndarray:
         """(count, k, k): the first moments."""
         apart = _lagged(self.q, count)
-        found = np.empty_like(apart)
+        found = apart + apart.transpose(0, 2, 1)
         found[0] = apart[0]
-        start, end = np.ascontiguousarray(self.q[:count]), np.ascontiguousarray(self.q[-count:])
+        ends = np.stack([self.q[:count], self.q[-count:][::-1]], axis=1)  # from both ends inwards
+        k = ends.shape[2]
         for lag in range(1, count):
-            folded = start[:lag].T @ start[:lag][::-1] + end[-lag:].T @ end[-lag:][::-1]
-            found[lag] = (apart[lag] + apart[lag].T + folded) / 2.0
+            found[lag] += ends[:lag].reshape(-1, k).T @ ends[lag - 1 :: -1].reshape(-1, k)
+        found[1:] *= 0.5
         return found
 
 
 def _lagged(q: np.ndarray, count: int) -> np.ndarray:
-    """(count, k, k): sums of q[i] q[i + lag]' for lag = 0 to count - 1.
-
-    Several rows beside each other are one long row: its cross products with itself and with the next ones hold them
-    all, and are large products where many small ones would wait for memory.
-    """
+    """(count, k, k): sums of q[i] q[i + lag]' for lag = 0 to count - 1."""
     n, k = q.shape
-    side = max(1, min(count, _WIDEST // k))  # rows in a long row
-    ahead = -(-(count - 1) // side) + 1
-    rows = min(max(1, _BLOCK // (side * k)), -(-n // side))  # long rows in a block
-    cross = np.zeros((ahead, side * k, side * k))
-    for first in range(0, n, rows * side):
-        block = np.zeros(((rows + ahead) * side, k))
-        piece = q[first:first + block.shape[0]]
-        block[: piece.shape[0]] = piece
-        long = block.reshape(-1, side * k)
-        for j in range(ahead):
-            cross[j] += long[:rows].T @ long[j:rows + j]
-    parts = cross.reshape(ahead, side, k, side, k)
-    here = np.arange(side)
-    found = np.empty((count, k, k))
-    for lag in range(count):
-        there = here + lag
-        found[lag] = parts[there // side, here, :, there % side, :].sum(axis=0)
+    rows = max(count, _BLOCK // k)
+    found = np.zeros((count, k, k))
+    for first in range(0, n, rows):
+        block = np.ascontiguousarray(q[first : first + rows + count - 1])
+        for lag in range(min(count, block.shape[0])):
+            there = block[lag : lag + rows]
+            found[lag] += block[: there.shape[0]].T @ there
     return found

@@ -18,11 +18,13 @@ from sheetfuncs.core.inversion import BORDER, UNDERFLOW, EigenvalueForm, Tails, 
 from sheetfuncs.core.threads import few_threads
 
 # Up to here all eigenvalues are cheaper than one small determinant for every node of the integral.
-EIGENVALUES_UP_TO = 100
+EIGENVALUES_UP_TO = 50
 # With fewer rows for each coefficient too: every determinant is costly, and with few degrees of freedom loses digits.
 ROWS_PER_COEFFICIENT = 8
 # Up to here all eigenvalues are computed where the saddlepoint may lie beyond the frequencies of A.
 EIGENVALUES_IN_NEED_UP_TO = 3000
+# Up to this share of the way to an end, a rough saddlepoint will do.
+INNER = 0.5
 # Eigenvalues between 0 and 4 are computed to about this.
 NOISE = 1e-13
 
@@ -108,7 +110,9 @@ def _from_determinants(q: np.ndarray, intercept: bool, d: float) -> Tails:
     # By far the most correlated of long series need no more than a bound.
     if n * (d - 2.0) ** 2 > 2e3 and form.bound(0.999 * (form.lowest if d < 2.0 else form.highest)) < UNDERFLOW:
         return Tails(0.0, 1.0) if d < 2.0 else Tails(1.0, 0.0)
-    saddle = saddlepoint(form)
+    saddle = saddlepoint(form, form.roughly_at)
+    if saddle.share > INNER:
+        saddle = saddlepoint(form)
     if saddle.share > BORDER and n <= EIGENVALUES_IN_NEED_UP_TO:
         return _from_eigenvalues(q, intercept, d)
     return tails_at_zero(form, saddle)
