@@ -26,7 +26,7 @@ COMMANDS = {
     "why": "Why this value?",
     "health": "Health",
 }
-EVENTS = ("OnLoadFinished", "OnSaveDone", "OnSaveAsDone", "OnSaveToDone")
+EVENTS = ("OnLoadFinished", "OnSaveDone", "OnSaveAsDone", "OnUnload")
 SOURCES = Path(__file__).parent
 EARLIEST = (1980, 1, 1, 0, 0, 0)
 
@@ -105,7 +105,8 @@ def _functions() -> list[dict[str, object]]:
 
 def _bridge_modules() -> list[Path]:
     modules = [path for path in (SOURCES / "bridge").glob("*.py") if path.name != "component.py"]
-    return sorted([*modules, SOURCES / "protocol.py"], key=lambda path: path.name)
+    spellings = SOURCES.parents[1] / "functions" / "spellings.py"
+    return sorted([*modules, SOURCES / "protocol.py", spellings], key=lambda path: path.name)
 
 
 _XML = '<?xml version="1.0" encoding="UTF-8"?>\n'

@@ -1,0 +1,1 @@
+"""Makes the helpers in this folder importable for the tests below it."""
