@@ -2,19 +2,39 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable
 from dataclasses import replace
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
-from sheetfuncs.cells.address import format_area, parse_area, quote_sheet
+from sheetfuncs.cells.address import quote_sheet
+from sheetfuncs.checking import Check
 from sheetfuncs.errors import AddressError, SheetfuncsError
+from sheetfuncs.hosts.excel.explaining import explain_cell
+from sheetfuncs.hosts.excel.functions import failure_sentence
+from sheetfuncs.hosts.excel.health import health_text
+from sheetfuncs.hosts.excel.message import message_of_check
 from sheetfuncs.hosts.excel.quiet import Step, held_still
+from sheetfuncs.hosts.excel.ranges import read_block
+from sheetfuncs.hosts.excel.selection import Place, below_titles, place_of_record, place_of_selection
+from sheetfuncs.hosts.excel.sheets import (
+    OurSheet,
+    bring_in,
+    filled_cells,
+    our_sheets,
+    package_file,
+    require_open_structure,
+    settings_of,
+    sheet_called,
+    titles,
+)
+from sheetfuncs.hosts.live import check_block, draw_check, same_range, title_of_check
+from sheetfuncs.judgement.words import listed
+from sheetfuncs.report.entries import ENTRY_FIELDS, changed_entries, settings_from_entries
+from sheetfuncs.report.names import DECISION, ENTRY
+from sheetfuncs.report.record import DECISION_FIELDS
 
 if TYPE_CHECKING:
     import xlwings as xw
-
-    from sheetfuncs.checking import Check
-    from sheetfuncs.hosts.excel.sheets import OurSheet
 
 TITLE = "sheetfuncs"
 MACROS = ("check_selection", "check_again", "why_this_value", "show_health")
@@ -53,27 +73,19 @@ def _run(job: Job) -> None:
     except SheetfuncsError as refusal:
         said, mode = str(refusal), "critical"
     except Exception as failure:
-        from sheetfuncs.hosts.excel.functions import failure_sentence
-
         said, mode = failure_sentence(failure), "critical"
     book.app.alert(said, title=TITLE, mode=mode)
 
 
 def _check_selection(book: xw.Book, step: Step) -> str:
-    from sheetfuncs.hosts.excel.ranges import place_of_selection
-
     active = _active_sheet(book)
-    if active is not None:
-        ours = _ours(active)
-        if ours is not None:
-            return _again(book, ours, step)
-    place = place_of_selection(None if active is None else book.selection)
-    return _check(book, place.cells, place.remarks, step)
+    ours = None if active is None else _ours(active)
+    if ours is not None:
+        return _again(book, ours, step)
+    return _check(book, place_of_selection(None if active is None else book.selection), None, step)
 
 
 def _check_again(book: xw.Book, step: Step) -> str:
-    from sheetfuncs.hosts.excel.sheets import our_sheets
-
     active = _active_sheet(book)
     ours = None if active is None else _ours(active)
     if ours is not None:
@@ -82,99 +94,70 @@ def _check_again(book: xw.Book, step: Step) -> str:
     about = [one for one in every if active is not None and one.settings.get("sheet") == active.name]
     if len(about) == 1:
         return _again(book, about[0], step)
-    titles = ", ".join(f"“{one.sheet.name}”" for one in about or every)
+    names = ", ".join(f"“{one.sheet.name}”" for one in about or every)
     raise AddressError(
-        f"There are several checks ({titles}): go to the one that is to be made again, and press the button there."
-        if titles else f"{book.name} holds no check yet: select the data, and press the button that checks them."
+        f"There are several checks ({names}): go to the one that is to be made again, and press the button there."
+        if len(about or every) > 1 else f"There is one check, {names}: go to it, and press the button there." if names
+        else f"{book.name} holds no check yet: select the data, and press the button that checks them."
     )
 
 
 def _again(book: xw.Book, ours: OurSheet, step: Step) -> str:
     """The check behind one of our sheets once more; its cells say which settings are to change."""
-    from sheetfuncs.hosts.excel.ranges import within_used
-    from sheetfuncs.hosts.excel.sheets import filled_cells, sheet_called
-    from sheetfuncs.judgement.words import listed
-    from sheetfuncs.report.entries import ENTRY_FIELDS, changed_entries, settings_from_entries
-    from sheetfuncs.report.names import ENTRY
-
     recorded = ours.settings
     if not recorded.get("sheet") or not recorded.get("area"):
         raise AddressError(f"“{ours.sheet.name}” does not say which range it is about: select the data and check them.")
     settings = settings_from_entries(recorded, filled_cells(ours.sheet, ENTRY, ENTRY_FIELDS))
     changed = changed_entries(recorded, settings)
-    area = parse_area(recorded["area"])
-    data = sheet_called(book, recorded["sheet"]).range(format_area(replace(area, sheet=None)))
-    place = f"{quote_sheet(recorded['sheet'])}!{recorded['area']}"
-    remark = f"The check of {place} was made again with the settings of “{ours.sheet.name}”"
-    remark += f", of which {listed(changed)} changed there." if changed else "."
-    return _check(book, within_used(data), (remark,), step, settings=settings, earlier=ours)
+    remark = f"The check of {quote_sheet(recorded['sheet'])}!{recorded['area']} was made again with the settings of "
+    remark += f"“{ours.sheet.name}”" + (f", of which {listed(changed)} changed there." if changed else ".")
+    place = place_of_record(sheet_called(book, recorded["sheet"]), recorded["area"])
+    return _check(book, replace(place, remarks=(remark,), settings=settings), ours, step)
 
 
-def _check(
-    book: xw.Book, cells: xw.Range, remarks: Iterable[str], step: Step, *, settings: dict[str, Any] | None = None,
-    earlier: OurSheet | None = None,
-) -> str:
-    from sheetfuncs.hosts.excel.ranges import read_block
-    from sheetfuncs.hosts.excel.sheets import our_sheets, require_open_structure
-    from sheetfuncs.hosts.live import check_block, same_range
-
+def _check(book: xw.Book, place: Place, again: OurSheet | None, step: Step) -> str:
+    """Check what stands at a place. again: our sheet to replace; without one that of the same range, if there is."""
     require_open_structure(book)
     step("reading the cells ...")
-    block = read_block(cells)
+    block, remarks = read_block(place.cells), place.remarks
     if block.hidden is None:
-        remarks = (*remarks, "Excel did not say which rows are hidden, so hidden rows are not counted as such.")
+        remarks += ("Excel did not say which rows are hidden, so hidden rows are not counted as such.",)
+    if place.titled:
+        block, skipped = below_titles(block)
+        remarks += skipped
     step("checking ...")
-    check = check_block(block, book=book.name, settings=settings, remarks=remarks)
-    if earlier is None:
-        earlier = next((ours for ours in our_sheets(book) if same_range(ours.settings, check)), None)
-    return _put(book, cells.sheet, check, earlier, step)
+    check = check_block(block, book=book.name, settings=place.settings, remarks=remarks)
+    if place.area is not None:
+        check = replace(check, settings=replace(check.settings, area=place.area))
+    earlier = again or next((ours for ours in our_sheets(book) if same_range(ours.settings, check)), None)
+    title, lost = _put(book, place.cells.sheet, check, earlier, step)
+    return message_of_check(book, check, title, lost, None if again else earlier)
 
 
-def _put(book: xw.Book, data: xw.Sheet, check: Check, earlier: OurSheet | None, step: Step) -> str:
-    """Draw the sheet and bring it in; what was in front is in front again afterwards."""
-    from sheetfuncs.hosts.excel.sheets import bring_in, filled_cells, package_file, titles
-    from sheetfuncs.hosts.live import draw_check, title_of_check
-    from sheetfuncs.report.names import DECISION
-    from sheetfuncs.report.record import DECISION_FIELDS
+def _put(
+    book: xw.Book, data: xw.Sheet, check: Check, earlier: OurSheet | None, step: Step
+) -> tuple[str, tuple[str, ...]]:
+    """Draw the sheet and bring it in; its title, and where something pointed at the earlier one and is lost.
 
+    What was in front is in front again afterwards.
+    """
     step("drawing the sheet ...")
-    in_front = None if (active := _active_sheet(book)) is None else active.name
+    active = _active_sheet(book)
+    in_front = None if active is None else active.name
     decision = None if earlier is None else filled_cells(earlier.sheet, DECISION, DECISION_FIELDS)
     title = title_of_check(check, titles(book)) if earlier is None else earlier.sheet.name
+    replaced = None if earlier is None else earlier.sheet
     with package_file() as package:
         plan = draw_check(check, package, title=title, decision=decision)
         step("bringing the sheet in ...")
         try:
-            arrival = bring_in(
-                package, title=title, names=plan.names, after=data, replace=None if earlier is None else earlier.sheet
-            )
+            arrival = bring_in(package, title=title, names=plan.names, after=data, replace=replaced)
         finally:
             _bring_to_front(book, in_front)
-    return _said(book, check, title, data.name, arrival.lost)
-
-
-def _said(book: xw.Book, check: Check, title: str, data: str, lost: tuple[str, ...]) -> str:
-    from sheetfuncs.hosts.excel.native import ask
-    from sheetfuncs.judgement.uses import uses
-    from sheetfuncs.judgement.words import counted
-
-    ledger = check.observations.ledger
-    rows = f"{counted(len(ledger.used), 'row')} used" + (
-        f", {len(ledger.excluded):,} left out" if ledger.excluded else ""
-    )
-    parts = [f"The check of “{data}” is in the sheet “{title}” ({rows})."]
-    nothing_left = check.fit.nothing_left()
-    parts += [nothing_left] if nothing_left else [f"{use.title}: {use.sentence}" for use in uses(check.evidence)]
-    if lost:
-        parts.append(f"These pointed at the earlier sheet and have to be entered again: {', '.join(lost)}.")
-    if ask(book, "ReadOnly", "read_only"):
-        parts.append("This workbook is open for reading only: save it under another name to keep the sheet.")
-    return "\n\n".join(parts)
+    return title, arrival.lost
 
 
 def _why_this_value(book: xw.Book, step: Step) -> str:
-    from sheetfuncs.hosts.excel.explaining import explain_cell
-
     selection = None if _active_sheet(book) is None else book.selection
     if selection is None:
         raise AddressError("No cell is selected: select one with a FIT_ formula, and press the button again.")
@@ -183,8 +166,6 @@ def _why_this_value(book: xw.Book, step: Step) -> str:
 
 
 def _show_health(book: xw.Book, step: Step) -> str:
-    from sheetfuncs.hosts.excel.health import health_text
-
     step("looking at the installation ...")
     return health_text()
 
@@ -199,8 +180,6 @@ def _active_sheet(book: xw.Book) -> xw.Sheet | None:
 
 
 def _ours(sheet: xw.Sheet) -> OurSheet | None:
-    from sheetfuncs.hosts.excel.sheets import OurSheet, settings_of
-
     settings = settings_of(sheet)
     return None if settings is None else OurSheet(sheet, settings)
 

@@ -1,4 +1,4 @@
-"""Ranges of a running Excel: which cells are meant by a selection, and what they hold."""
+"""Ranges of a running Excel: how far they are used, and what their cells hold."""
 
 from __future__ import annotations
 
@@ -10,9 +10,7 @@ from typing import TYPE_CHECKING, Any, cast
 
 import numpy as np
 
-from sheetfuncs.cells.address import cell_name
 from sheetfuncs.cells.block import ERROR_TEXTS, Block, Kind
-from sheetfuncs.errors import AddressError
 from sheetfuncs.hosts.excel.native import ask, on_mac
 from sheetfuncs.hosts.excel.values import as_cell, exact, needs_exact, two_dimensional
 
@@ -22,51 +20,6 @@ if TYPE_CHECKING:
 # One reading holds at most so many cells: macOS' scripting gives up on much larger answers.
 CELLS_A_READING = 200_000
 MOST_QUESTIONS = 2_000  # about hidden rows, each of which takes some milliseconds
-
-
-@dataclass(frozen=True)
-class Place:
-    """The cells that are meant, and one sentence for each thing that was decided on the way."""
-
-    cells: xw.Range
-    remarks: tuple[str, ...] = ()
-
-
-def place_of_selection(selection: xw.Range | None) -> Place:
-    """The data meant by a selection: itself; for a single cell its table, or the filled block around it.
-
-    Raises AddressError for several areas, for a selected chart or picture, and for a cell that stands alone.
-    """
-    if selection is None:
-        raise AddressError(
-            "No cells are selected (a chart or a picture is, or this is no worksheet): select the columns of the data, "
-            "or one cell inside them, and press the button again."
-        )
-    if "," in selection.address:
-        raise AddressError(
-            f"Several areas are selected ({selection.address.replace('$', '')}): select one rectangle that holds the "
-            "response and the predictors side by side, and press the button again."
-        )
-    if selection.size == 1:
-        return _around(selection)
-    return Place(within_used(selection))
-
-
-def _around(cell: xw.Range) -> Place:
-    where = cell_name(cell.row, cell.column)
-    table = cell.table
-    if table is not None and table.data_body_range is not None:
-        header, body = table.header_row_range, table.data_body_range
-        cells = body if header is None else cell.sheet.range(header, body)
-        return Place(cells, (f"{where} lies in the table {table.name}, which is used.",))
-    region = cell.current_region
-    if region.size == 1:
-        raise AddressError(
-            f"{cell_name(cell.row, cell.column, cell.sheet.name)} stands alone: select the columns of the data, or one "
-            "cell inside them, and press the button again."
-        )
-    address = region.address.replace("$", "")
-    return Place(region, (f"{where} is one cell: the block around it, {address}, is used.",))
 
 
 def within_used(cells: xw.Range) -> xw.Range:

@@ -166,18 +166,52 @@ def test_one_cell_of_a_table_stands_for_its_data_without_the_totals(app):
     assert recorded(app)["area"] == "B3:D33"
 
 
-@pytest.mark.parametrize(("selected", "area"), [("B:D", "B1:D33"), ("3:33", "A3:D33"), ("B3:D60", "B3:D60")])
-def test_whole_columns_and_rows_are_cut_to_the_used_part(app, selected, area):
+@pytest.mark.parametrize(
+    ("selected", "area"),
+    [("B:D", "B:D"), ("3:33", "A3:D33"), ("B3:D60", "B3:D60"), ("1:1048576", "A1:D33"), ("$B:$B,$C:$D", "B:D")],
+)
+def test_whole_columns_and_rows_are_read_as_far_as_they_are_used(app, selected, area):
     sheet(app).selected = selected
     press(app)
     assert recorded(app)["area"] == area
-    assert recorded(app)["predictors"] == ["Weight", "Holes"]
+    assert recorded(app)["predictors"] in (["Weight", "Holes"], ["C", "D"])
+
+
+def test_more_rows_in_whole_columns_are_no_new_range_and_a_title_above_is_skipped(app):
+    sheet(app).put(1, 2, [["Invented jobs of one week"]])
+    sheet(app).selected = "B:D"
+    press(app)
+    entry(app, "_sheetfuncs_decision_1").value = "Use it"
+    sheet(app).put(34, 2, [[50.0, 11.0, 3.0]])
+    assert "(31 rows used)" in press(app)
+    assert titles(app) == ["Notes", "Jobs", "Check of Jobs", "Later"]
+    assert entry(app, "_sheetfuncs_decision_1").value == "Use it"
+    app.active.active = sheet(app, "Check of Jobs")
+    assert "(31 rows used)" in press(app)
+    assert recorded(app)["area"] == "B:D"
+
+
+def test_a_title_right_above_the_data_is_skipped_for_one_cell_in_them(app):
+    sheet(app).put(2, 2, [["Invented jobs of one week"]])
+    sheet(app).selected = "C10"
+    press(app)
+    assert recorded(app)["area"] == "B3:D33"
+
+
+def test_several_parts_mean_their_columns_the_response_first(app):
+    press(app)
+    sheet(app).selected = "$D$3:$D$33,$B$3:$B$33"
+    said = press(app)
+    assert (recorded(app)["response"], recorded(app)["predictors"]) == ("Holes", ["Cost"])
+    assert recorded(app)["area"] == "B3:D33"
+    assert titles(app) == ["Notes", "Jobs", "Check of Jobs", "Later"]
+    assert "The sheet before was made with another choice of response and predictors." in said
 
 
 @pytest.mark.parametrize(
     ("selected", "sentence"),
     [
-        ("B3:B33,D3:D33", "Several areas are selected (B3:B33,D3:D33)"),
+        ("$B$3:$B$33,$D$3:$D$20", "The selected parts (B3:B33, D3:D20) stand on different rows"),
         ("H40", "Jobs!H40 stands alone"),
         ("F3:G9", "is empty; give the range that holds the data"),
         ("B3:B33", "leaves no predictor"),
@@ -239,7 +273,7 @@ def test_what_nobody_foresaw_becomes_a_sentence(app, monkeypatch):
     def broken(*args, **options):
         raise ZeroDivisionError("division by zero")
 
-    monkeypatch.setattr("sheetfuncs.hosts.live.check_block", broken)
+    monkeypatch.setattr("sheetfuncs.hosts.excel.macros.check_block", broken)
     before = app.active.state()
     said = press(app)
     assert "ZeroDivisionError: division by zero, broken, line" in said

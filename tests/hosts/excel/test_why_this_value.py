@@ -8,7 +8,7 @@ from memory_engine import running_excel
 from memory_model import Cell
 
 from sheetfuncs.errors import InstallError
-from sheetfuncs.hosts.excel import functions, health
+from sheetfuncs.hosts.excel import functions, macros
 from sheetfuncs.hosts.excel.explaining import calls_in
 from sheetfuncs.hosts.excel.macros import show_health, why_this_value
 
@@ -100,7 +100,7 @@ def test_whole_columns_are_read_no_further_than_they_are_used(app):
 
 
 def test_health_is_told_in_a_message(app, monkeypatch):
-    monkeypatch.setattr(health, "health_text", lambda: "All parts are in place.")
+    monkeypatch.setattr(macros, "health_text", lambda: "All parts are in place.")
     assert press(app, show_health) == "All parts are in place."
     assert app.alerts[0][0] == "info"
 
@@ -109,6 +109,6 @@ def test_health_that_cannot_be_told_is_a_sentence_too(app, monkeypatch):
     def refused():
         raise InstallError("There is no Excel here.")
 
-    monkeypatch.setattr(health, "health_text", refused)
+    monkeypatch.setattr(macros, "health_text", refused)
     assert press(app, show_health) == "There is no Excel here."
     assert app.alerts[0][0] == "critical"
