@@ -18,6 +18,7 @@ from sheetfuncs.hosts.excel.marks import is_marked
 from sheetfuncs.hosts.excel.record import Record, read_record
 
 INSTALL = "close Excel and run `sheetfuncs excel install`"
+NOW = f"C{INSTALL[1:]}."
 BESIDE = {"Windows": ("pywin32",), "macOS": ("appscript", "psutil")}
 """What xlwings itself needs on each system (its metadata)."""
 
@@ -122,13 +123,13 @@ def _addin(place: Place) -> Finding:
         return Finding(
             "The add-in", False, f"{place.addin} is not ours.", f"Move it to another folder; then {INSTALL}."
         )
-    return Finding("The add-in", False, f"{place.addin} is not there.", f"To have it, {INSTALL}.")
+    return Finding("The add-in", False, f"{place.addin} is not there.", NOW)
 
 
 def _addin_version(place: Place, record: Record | None) -> Finding:
     what, here = "The add-in's version", versions_here()
     if not is_ours(place.addin):
-        return Finding(what, False, "There is no add-in.", f"To have it, {INSTALL}.")
+        return Finding(what, False, "There is no add-in.", NOW)
     built_for = {name: addin_versions(place.addin).get(name, "unknown") for name in here}
     given = is_signed(place.addin) or (record is not None and record.given)
     again = f"{INSTALL} with `--xlam` and a copy signed for this version" if given else INSTALL
@@ -150,7 +151,7 @@ def _listed(versions: dict[str, str]) -> str:
 def _configuration(place: Place) -> Finding:
     what, path, found = "The configuration", place.configuration, _configured(place)
     if not path.exists():
-        return Finding(what, False, f"{path} is not there.", f"To have it, {INSTALL}.")
+        return Finding(what, False, f"{path} is not there.", NOW)
     named = found.get(interpreter_key(place), "")
     if not named:
         return Finding(what, False, f"{path} does not say which Python.", f"Delete it; then {INSTALL}.")
@@ -194,7 +195,7 @@ def _libraries(place: Place) -> Finding:
 def _script(place: Place, script: Path) -> Finding:
     what = "The connection from Excel to Python"
     if not script.is_file():
-        return Finding(what, False, f"{script} is not there.", f"To have it, {INSTALL}.")
+        return Finding(what, False, f"{script} is not there.", NOW)
     if script.read_bytes() != script_text(place.interpreter, place.log).encode("ascii"):
         return Finding(
             what, False, f"{script} is not the script of this version and this Python.",

@@ -99,7 +99,8 @@ def test_before_an_installation_what_is_missing_is_said_and_install_cures_it(tmp
     found = troubles(place)
     missing = {"The add-in", "The add-in's version", "The configuration", "The list of installed files"}
     assert set(found) == missing | ({"The connection from Excel to Python"} if system == "macOS" else set())
-    assert all("`sheetfuncs excel install`" in finding.cure for finding in found.values())
+    assert all("lose Excel and run `sheetfuncs excel install`" in finding.cure for finding in found.values())
+    assert found["The add-in"].cure == "Close Excel and run `sheetfuncs excel install`."
     assert headline(list(found.values())).startswith(f"{len(found)} of {len(found)} parts need attention")
     install(place)
     assert troubles(place) == {}

@@ -136,6 +136,15 @@ def test_remove_takes_the_folders_that_were_made(tmp_path, system):
     assert tree(tmp_path) == before
 
 
+def test_remove_takes_the_log_that_the_script_left(tmp_path):
+    place = place_on("macOS", tmp_path)
+    before = tree(tmp_path)
+    install(place)
+    place.log.write_text("an error")
+    remove(place)
+    assert tree(tmp_path) == before
+
+
 def test_remove_leaves_a_folder_in_which_something_else_stands_by_now(tmp_path):
     place = place_on("Windows", tmp_path)
     install(place)
@@ -228,12 +237,14 @@ def test_foreign_file_in_the_way_is_never_written_over(tmp_path, system, part):
     install(place)  # the cure
 
 
-def test_folder_and_link_in_the_way_are_foreign(tmp_path):
+def test_folder_and_link_in_the_way_are_foreign(tmp_path, built):
     place = place_on("Windows", tmp_path)
-    place.addin.symlink_to(tmp_path / "elsewhere.xlam")
-    with pytest.raises(InstallError, match="not ours"):
-        install(place)
-    place.addin.unlink()
+    for target in ("nowhere.xlam", "elsewhere.xlam"):
+        (tmp_path / "elsewhere.xlam").write_bytes(built)
+        place.addin.symlink_to(tmp_path / target)
+        with pytest.raises(InstallError, match="not ours"):
+            install(place)
+        place.addin.unlink()
     place.addin.mkdir()
     with pytest.raises(InstallError, match="not ours"):
         install(place)
@@ -412,6 +423,20 @@ def test_commands_say_what_they_did(tmp_path, monkeypatch):
     assert str(find_place(environment).addin) in runs[2].stdout
     unwell = CliRunner().invoke(main, ["excel", "health"])
     assert (unwell.exit_code, unwell.stderr.count("\n")) == (1, 1)
+
+
+def test_commands_say_what_is_to_be_known(tmp_path, monkeypatch, built):
+    environment = windows(tmp_path, package_version={}.get)
+    monkeypatch.setattr("sheetfuncs.hosts.excel.folders.this_environment", lambda: environment)
+    file = tmp_path / "copy.xlam"
+    file.write_bytes(built)
+    said = CliRunner().invoke(main, ["excel", "install", "--xlam", str(file)]).stdout
+    assert "carries no signature" in said
+    assert "Not in order: Packages." in said
+    again = CliRunner().invoke(main, ["excel", "install"]).stdout
+    assert f"in place of that of version {__version__}" in again
+    find_place(environment).configuration.write_text("mine")
+    assert "was changed since it was installed" in CliRunner().invoke(main, ["excel", "remove"]).stdout
 
 
 # The configuration: what VBA can read of it.
