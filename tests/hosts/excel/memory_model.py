@@ -261,23 +261,25 @@ def runs(numbers: Iterator[int]) -> list[tuple[int, int]]:
 
 
 def _load(book: Book, path: Path) -> None:
-    formulas, values = openpyxl.load_workbook(path), openpyxl.load_workbook(path, data_only=True)
-    for sheet in formulas.worksheets:
+    """The sheets of a package; formulas without the values stored beside them."""
+    opened = openpyxl.load_workbook(path)
+    for sheet in opened.worksheets:
         made = book.add(sheet.title)
         for row in sheet.iter_rows():
             for cell in row:
-                if cell.value is None:
-                    continue
-                text = cell.value.text if isinstance(cell.value, ArrayFormula) else cell.value
-                formula = text if isinstance(text, str) and cell.data_type == "f" else None
-                made.cells[cell.row, cell.column] = Cell(
-                    values[sheet.title].cell(cell.row, cell.column).value, formula, cell.number_format,
-                    "array" if isinstance(cell.value, ArrayFormula) else "",
-                )
-        made.links = [cell.hyperlink.location for row in sheet.iter_rows() for cell in row if cell.hyperlink]
+                if cell.hyperlink:
+                    made.links.append(cell.hyperlink.location)
+                if cell.value is not None:
+                    made.cells[cell.row, cell.column] = _loaded(cell)
         made.charts = len(sheet._charts)
         made.names = [
             Name(name.name, f"={name.attr_text}", not name.hidden) for name in sheet.defined_names.values()
         ]
-    formulas.close()
-    values.close()
+    opened.close()
+
+
+def _loaded(cell: openpyxl.cell.Cell) -> Cell:
+    if isinstance(cell.value, ArrayFormula):
+        return Cell(None, cell.value.text, cell.number_format, "array")
+    formula = cell.value if cell.data_type == "f" else None
+    return Cell(None if formula else cell.value, formula, cell.number_format)
