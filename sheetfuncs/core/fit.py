@@ -6,7 +6,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property, wraps
 from math import isfinite, sqrt
-from typing import Any, TypeVar
+from typing import Any, Concatenate, ParamSpec, TypeVar
 
 import numpy as np
 from scipy.special import fdtrc, stdtr, stdtrit
@@ -28,6 +28,7 @@ from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import NoVariationError
 
 Of = TypeVar("Of")
+Options = ParamSpec("Options")
 
 
 @dataclass(frozen=True, eq=False)
@@ -74,15 +75,15 @@ class Fit:
         return self.design.response - self.residuals
 
     @cached_property
-    def rows_in_basis(self) -> np.ndarray:
-        """(n, p + 1): the constant direction where there is an intercept, the basis, and the residuals; columns of
-        length 1, from whose cross products over some of the rows many regressions follow."""
+    def orthonormal(self) -> np.ndarray:
+        """(p + 1, n), a line a column: the constant direction where there is an intercept, the basis, and the residuals
+        scaled to length 1, from whose cross products over some of the rows many regressions follow."""
         first = int(self.design.intercept)
-        rows = np.empty((self.n, self.p + 1))
-        rows[:, :first] = 1.0 / sqrt(self.n)
-        rows[:, first:-1] = self.basis.q
-        np.divide(self.residuals, self.length or 1.0, out=rows[:, -1])
-        return rows
+        lines = np.empty((self.p + 1, self.n))
+        lines[:first] = 1.0 / sqrt(self.n)
+        lines[first:-1] = self.basis.q.T
+        np.divide(self.residuals, self.length or 1.0, out=lines[-1])
+        return lines
 
     @cached_property
     def length(self) -> float:
@@ -226,14 +227,15 @@ class Fit:
         return "The fit is perfect: what is left is rounding noise, and nothing can be tested on it."
 
 
-def once_per_fit(compute: Callable[[Fit], Of]) -> Callable[[Fit], Of]:
-    """Keep what compute(fit) gives with the fit, for all methods that ask for it."""
+def once_per_fit(compute: Callable[Concatenate[Fit, Options], Of]) -> Callable[Concatenate[Fit, Options], Of]:
+    """Keep what compute(fit, ...) gives with the fit, for all methods that ask for it."""
 
     @wraps(compute)
-    def kept(fit: Fit) -> Of:
-        if compute not in fit.results:
-            fit.results[compute] = compute(fit)
-        found: Of = fit.results[compute]
+    def kept(fit: Fit, *options: Options.args, **named: Options.kwargs) -> Of:
+        key = (compute, options, *named.items())
+        if key not in fit.results:
+            fit.results[key] = compute(fit, *options, **named)
+        found: Of = fit.results[key]
         return found
 
     return kept

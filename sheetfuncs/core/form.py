@@ -5,21 +5,19 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
-from scipy.linalg import lapack
 from scipy.special import fdtrc
 
 from sheetfuncs.core.auxiliary import Addition, add_columns, refused
-from sheetfuncs.core.basis import EPS, ROUNDINGS
-from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.basis import EPS, ROUNDINGS, column_means
+from sheetfuncs.core.cross_products import FAR_APART, coordinates, leading
+from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import ArgumentError
 
 STRAIGHT = "no power of {} adds anything to the straight line"
-# From so many rows on, cross products in blocks are gathered faster than columns are projected.
-MANY_ROWS, BLOCK = 2_000, 4_096
-# A share that must be left of a power beside the predictors and the other powers: less could cost digits.
-CLOSE = 0.02
+# From so many rows on, cross products are gathered faster than columns are projected; rows at a time.
+MANY_ROWS, BLOCK = 12, 4_096
 _TYPES = {"fitted": "fitted", "predictors": "regressor"}
 
 
@@ -52,7 +50,7 @@ def reset(fit: Fit, powers: Sequence[int] = (2, 3), *, of: str = "fitted") -> Re
     base = _base(fit, of)
     if not base.shape[1]:
         return cannot(f"{what.capitalize()} do not vary, so they have no powers to add.")
-    added = _added_by_products(fit, base, powers) or add_columns(fit.basis, fit.residuals, _powers(base, powers))
+    added = _added_by_products(fit, of, powers) or _added_by_columns(fit, base, powers)
     left = fit.df - added.rank
     if added.rank == 0 or (of == "fitted" and added.rank < min(len(powers), fit.df)):
         return cannot(f"The powers of {what} are already determined by the predictors, so nothing can be added.")
@@ -67,62 +65,74 @@ def reset(fit: Fit, powers: Sequence[int] = (2, 3), *, of: str = "fitted") -> Re
     )
 
 
+@once_per_fit
 def _base(fit: Fit, of: str) -> np.ndarray:
     """The columns to take powers of, (n, m): largest value 1, about their means where there is an intercept. Those that
     do not vary beyond rounding are left out."""
     if of == "fitted":
-        base, whole = fit.fitted_about_mean[:, None], fit.design.response[:, None]
+        base, whole = fit.fitted_about_mean[:, None], np.abs(fit.design.response).max(keepdims=True)
     else:
-        whole = _numeric_columns(fit)
-        base = whole - whole.mean(axis=0) if fit.design.intercept else whole
-    if not base.shape[1]:
-        return base
-    size = np.abs(base).max(axis=0)
-    varies = size > ROUNDINGS * EPS * np.abs(whole).max(axis=0)
-    return base[:, varies] / size[varies]
+        base, whole = _numeric_columns(fit), np.zeros(1)
+        if not base.shape[1]:
+            return base
+        if fit.design.intercept:
+            mean = column_means(base)
+            base, whole = base - mean, np.abs(mean)
+    size = np.maximum(base.max(axis=0), -base.min(axis=0))
+    varies = size > ROUNDINGS * EPS * (whole + size)
+    return base / size if varies.all() else base[:, varies] / size[varies]
 
 
-def _added_by_products(fit: Fit, base: np.ndarray, powers: Sequence[int]) -> Addition | None:
-    """What the powers explain, by cross products with the basis gathered block by block, so that many rows need little
-    memory; None for few rows, and where the powers lie so close to the predictors or to each other that it could cost
-    digits."""
-    n, basis = fit.n, fit.basis
-    if n < MANY_ROWS:
+def _added_by_products(fit: Fit, of: str, powers: tuple[int, ...]) -> Addition | None:
+    """What the powers explain, by cross products; None for the fewest rows, and where the powers lie so close to the
+    predictors or to each other that it could cost digits."""
+    if fit.n < MANY_ROWS or fit.told_apart_to > FAR_APART:
         return None
-    width = base.shape[1] * len(powers)
-    with_basis, with_each_other = np.zeros((basis.q.shape[1], width)), np.zeros((width, width))
-    with_residuals, total = np.zeros(width), np.zeros(width)
-    with few_threads(BLOCK):
-        for start in range(0, n, BLOCK):
+    # The square's cross products are among those of square and cube.
+    gram = _power_products(fit, of, (2, 3) if powers == (2,) else powers)
+    width = gram.shape[0] - 1 - fit.p
+    if powers == (2,):
+        width //= 2
+    found = coordinates(leading(gram, fit.p + width))
+    if found is None:
+        return None
+    squares = fit.rss * found[fit.p :] ** 2
+    return Addition(float(squares[:-1].sum()), float(squares[-1]), width)
+
+
+def _added_by_columns(fit: Fit, base: np.ndarray, powers: tuple[int, ...]) -> Addition:
+    columns = np.empty((base.shape[1] * len(powers), fit.n))
+    return add_columns(fit.basis, fit.residuals, _raise(base.T, powers, columns).T)
+
+
+@once_per_fit
+def _power_products(fit: Fit, of: str, powers: tuple[int, ...]) -> np.ndarray:
+    """Cross products of the basis, all base columns to each power, and the residuals; gathered block by block, so that
+    many rows need little memory."""
+    base = _base(fit, of).T
+    p, size = fit.p, fit.p + base.shape[0] * len(powers) + 1
+    lines, gram = np.empty((size, min(fit.n, BLOCK))), np.zeros((size, size))
+    with few_threads(lines.size):
+        for start in range(0, fit.n, BLOCK):
             rows = slice(start, start + BLOCK)
-            block = _powers(base[rows], powers)
-            with_basis += basis.q[rows].T @ block
-            with_each_other += block.T @ block
-            with_residuals += fit.residuals[rows] @ block
-            if basis.intercept:
-                total += np.add.reduce(block, axis=0)
-    left = with_each_other - with_basis.T @ with_basis - np.outer(total, total) / n
-    before, after = np.diag(with_each_other), np.diag(left)
-    if (after < CLOSE * before).any():
-        return None
-    length = np.sqrt(after)
-    root, info = lapack.dpotrf(left / np.outer(length, length), lower=1)
-    if info != 0 or np.diag(root).min() < CLOSE:
-        return None
-    along, _ = lapack.dtrtrs(root, with_residuals / length, lower=1)
-    part = float(along @ along)
-    return Addition(part, fit.rss - part, width) if part < 0.99 * fit.rss else None
+            known = fit.orthonormal[:, rows]
+            block = lines[:, : known.shape[1]]
+            block[:p], block[-1] = known[:-1], known[-1]
+            _raise(base[:, rows], powers, block[p:-1])
+            gram += block @ block.T
+    return gram
 
 
-def _powers(base: np.ndarray, powers: Sequence[int]) -> np.ndarray:
-    """All columns to each power, side by side, by multiplication: numpy's own power is twenty times slower."""
-    pieces, raised, reached = [], base, 1
-    for power in powers:
+def _raise(base: np.ndarray, powers: Sequence[int], out: np.ndarray) -> np.ndarray:
+    """base (m, n) to each power, one after the other in out, by multiplication: numpy's own power takes twenty times as
+    long."""
+    raised, reached, m = base, 1, base.shape[0]
+    for place, power in enumerate(powers):
+        target = out[place * m : (place + 1) * m]
         for _ in range(power - reached):
-            raised = raised * base
+            raised = np.multiply(raised, base, out=target)
         reached = power
-        pieces.append(raised)
-    return np.hstack(pieces)
+    return out
 
 
 def _numeric_columns(fit: Fit) -> np.ndarray:

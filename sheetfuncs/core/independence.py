@@ -215,7 +215,7 @@ def _sums_by_products(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float
         return None
     gram, first = _lagged_products(fit)
     if not zeros:
-        whole, gram = gram, gram - first[:lags].T @ first[:lags]
+        whole, gram = gram, gram - first[:, :lags] @ first[:, :lags].T
         if (gram.diagonal() < FAR_APART * whole.diagonal()).any():
             return None
     found = coordinates(leading(gram, fit.p + lags))
@@ -231,14 +231,15 @@ def _sums_by_products(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float
 @once_per_fit
 def _lagged_products(fit: Fit) -> tuple[np.ndarray, np.ndarray]:
     """Cross products of basis, residuals of 1 to TOGETHER rows before (zeros before the first), and residuals; and the
-    first TOGETHER rows of these columns. Rows in time order, columns of about length 1."""
-    rows = fit.design.in_order(fit.rows_in_basis)
-    columns = np.zeros((fit.n, fit.p + TOGETHER + 1))
-    columns[:, : fit.p], columns[:, -1] = rows[:, :-1], rows[:, -1]
+    first TOGETHER rows of these columns, a line a column. Rows in time order, columns of about length 1."""
+    order = fit.design.order
+    known = fit.orthonormal if order is None else fit.orthonormal[:, order]
+    lines = np.zeros((fit.p + TOGETHER + 1, fit.n))
+    lines[: fit.p], lines[-1] = known[:-1], known[-1]
     for lag in range(1, TOGETHER + 1):
-        columns[lag:, fit.p + lag - 1] = rows[:-lag, -1]
-    with few_threads(columns.size):
-        return columns.T @ columns, columns[:TOGETHER].copy()
+        lines[fit.p + lag - 1, lag:] = known[-1, :-lag]
+    with few_threads(lines.size):
+        return lines @ lines.T, lines[:, :TOGETHER].copy()
 
 
 def _omitted_by_factors(fit: Fit, e: np.ndarray, lagged: np.ndarray, lags: int) -> tuple[float, Addition]:

@@ -50,9 +50,9 @@ def rest_of_rows(fit: Fit, rows: slice | np.ndarray) -> float | None:
     where fewer coefficients than the whole design's can be told apart there."""
     if fit.told_apart_to > FAR_APART:
         return None
-    part = fit.rows_in_basis[rows]
+    part = fit.orthonormal[:, rows]
     with few_threads(part.size):
-        found = coordinates(part.T @ part)
+        found = coordinates(part @ part.T)
     return None if found is None else fit.rss * float(found[-1]) ** 2
 
 
