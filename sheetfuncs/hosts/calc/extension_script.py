@@ -1,7 +1,8 @@
 """Run by a Python that knows UNO, never imported: `python extension_script.py ADDRESS add FILE | remove | list`.
 
-Prints one line of JSON: {"registered": version or null, "folder": path or null}, or {"trouble": sentence}. Standard
-library and uno only, and nothing newer than Python 3.8.
+Prints "connected" and goes on at the next line of its input, since the program that answers may be one that somebody
+works in: then the input ends. Then prints one line of JSON: {"registered": version or null, "folder": path or null}, or
+{"trouble": sentence}. Standard library and uno only, and nothing newer than Python 3.8.
 """
 
 import json
@@ -86,6 +87,9 @@ def innermost(trouble):
 def main(address, *arguments):
     """Connect, act, print, and ask the office to end."""
     context = connect(address)
+    print("connected", flush=True)
+    if sys.stdin.readline().strip() != "go":
+        return
     try:
         print(json.dumps(run(context, *arguments)))
     except Exception as trouble:

@@ -7,8 +7,10 @@ import json
 import subprocess
 import sys
 import tempfile
+import time
+from collections.abc import Callable
 from pathlib import Path
-from typing import Any
+from typing import Any, BinaryIO
 
 from sheetfuncs import __version__
 from sheetfuncs.errors import InstallError
@@ -17,6 +19,8 @@ from sheetfuncs.hosts.calc.build import build_extension
 
 SECONDS = 20  # the longest wait for one value in a cell
 LONGEST_SECONDS = 180
+HAND_OVER_SECONDS = 1.5
+NO_ANSWER = "LibreOffice did not answer within three minutes; try again."
 SCRIPT = Path(__file__).parent / "extension_script.py"
 
 
@@ -32,7 +36,6 @@ def install(profile: Path | None = None, *, seconds: float = SECONDS) -> str:
         found = ask_office(profile, "add", str(file))
     if not found.get("registered"):
         raise InstallError("LibreOffice took the extension but does not list it; try `sheetfuncs calc install` again.")
-    ask_office(profile, "list")  # the first start after an installation settles it
     return (
         f"The extension (version {found['registered']}) is in LibreOffice and runs {sys.executable}. Start Calc: the "
         "functions FIT_... are in the function wizard under Statistical, the check is in the menu Regression check."
@@ -63,39 +66,44 @@ def ask_office(profile: Path | None, *action: str) -> dict[str, Any]:
         raise InstallError(
             f"LibreOffice in {folder} has no Python that knows it: install its Python part (Debian: python3-uno)."
         )
-    with office.Office(profile, folder=folder) as program:
+    with office.Office(profile, folder=folder) as program, tempfile.TemporaryFile() as said:
         command = [str(python), str(SCRIPT), program.address, *action]
-        with tempfile.TemporaryFile("w+") as said, tempfile.TemporaryFile("w+") as errors:
-            asking = subprocess.Popen(command, env=office.clean_environment(), stdout=said, stderr=errors)
-            try:
-                _wait_for(asking, program)
-            finally:
-                asking.kill()
-                asking.wait()
-            said.seek(0)
-            errors.seek(0)
-            return _said(said.read(), errors.read())
+        asking = subprocess.Popen(
+            command, env=office.clean_environment(), stdin=subprocess.PIPE, stdout=said, stderr=subprocess.STDOUT
+        )
+        try:
+            _wait_for(lambda: _lines(said) or asking.poll() is not None)
+            # Where LibreOffice runs already, the new one hands everything over to that one and ends at once.
+            if program.wait(HAND_OVER_SECONDS):
+                raise InstallError("LibreOffice is running with this profile: close all its windows, then try again.")
+            with contextlib.suppress(OSError):
+                asking.communicate(b"go\n", timeout=LONGEST_SECONDS)
+        except subprocess.TimeoutExpired:
+            raise InstallError(NO_ANSWER) from None
+        finally:
+            asking.kill()
+            asking.communicate()
+        return _answer(_lines(said))
 
 
-def _wait_for(asking: subprocess.Popen[bytes], program: office.Office) -> None:
-    """Until the question is answered. A program that ended before it was asked handed over to one that runs."""
-    for _ in range(LONGEST_SECONDS * 5):
-        with contextlib.suppress(subprocess.TimeoutExpired):
-            asking.wait(0.2)
-            return
-        if program.wait(0):
-            with contextlib.suppress(subprocess.TimeoutExpired):
-                asking.wait(5)
-                return
-            raise InstallError("LibreOffice is running with this profile: close all its windows, then try again.")
-    raise InstallError("LibreOffice did not answer within three minutes; try again.")
+def _wait_for(condition: Callable[[], object]) -> None:
+    until = time.monotonic() + LONGEST_SECONDS
+    while not condition():
+        if time.monotonic() > until:
+            raise InstallError(NO_ANSWER)
+        time.sleep(0.1)
 
 
-def _said(said: str, errors: str) -> dict[str, Any]:
+def _lines(said: BinaryIO) -> list[str]:
+    said.seek(0)
+    return said.read().decode("utf-8", "replace").split("\n")[:-1]
+
+
+def _answer(lines: list[str]) -> dict[str, Any]:
     try:
-        answer: dict[str, Any] = json.loads(said.strip().splitlines()[-1])
+        answer: dict[str, Any] = json.loads(lines[-1])
     except (ValueError, IndexError):
-        last = (errors.strip().splitlines() or ["no message"])[-1]
+        last = lines[-1] if lines else "no message"
         raise InstallError(f"LibreOffice could not be asked ({last[:200]}); start it once by hand, close it, and try "
                             "again.") from None
     if "trouble" in answer:

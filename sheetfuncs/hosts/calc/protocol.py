@@ -12,7 +12,7 @@ import json
 import struct
 import sys
 from array import array
-from hashlib import blake2b
+from hashlib import sha256
 from itertools import chain
 from math import isfinite, nan
 
@@ -26,7 +26,11 @@ LONGEST_PART = 2_000_000_000
 BLANK, NUMBER, BOOLEAN, TEXT, ERROR, DATE = range(6)  # as in sheetfuncs.cells.block.Kind
 ERROR_TEXTS = frozenset({"#NULL!", "#DIV/0!", "#VALUE!", "#REF!", "#NAME?", "#NUM!", "#N/A"})
 
-_START = "import sys; sys.path.append(sys.argv[1]); from sheetfuncs.hosts.calc.worker import main; main()"
+_START = (  # one thread for linear algebra: more of them wait for each other, and LibreOffice wants a core too
+    "import os, sys; os.environ.update(dict.fromkeys(('OPENBLAS_NUM_THREADS', 'OMP_NUM_THREADS', 'MKL_NUM_THREADS',"
+    " 'VECLIB_MAXIMUM_THREADS'), '1')); sys.path.append(sys.argv[1]);"
+    " from sheetfuncs.hosts.calc.worker import main; main()"
+)
 _HEAD = struct.Struct("<4sBBHI")
 _LENGTH = struct.Struct("<Q")
 _PLACE = struct.Struct("<IIIIBHI")  # rows, columns, first row, first column, flags, length of the title, of the texts
@@ -149,7 +153,7 @@ def unpack(data) -> Block:
 
 def digest(data) -> str:
     """A short name for these bytes, by which both sides call a block that was sent before."""
-    return blake2b(data, digest_size=16).hexdigest()
+    return sha256(data).hexdigest()[:32]  # which most processors have a circuit for
 
 
 def _texts(data) -> list:
@@ -162,11 +166,11 @@ def _texts(data) -> list:
     return texts
 
 
-def _little_endian(numbers) -> bytes:
+def _little_endian(numbers):
     if sys.byteorder == "big":
         numbers = numbers[:]
         numbers.byteswap()
-    return numbers.tobytes()
+    return memoryview(numbers).cast("B")
 
 
 def _doubles(data) -> array:

@@ -48,7 +48,7 @@ def value_of(answer):
 
 def pack_afresh(ranges) -> list:
     """A Packed block for each range, read now."""
-    last_row = common_last_row(ranges)
+    last_row = common_last_row(ranges, [cells.getRangeAddress() for cells in ranges])
     parts = [cells if last_row is None else cut_to_row(cells, last_row) for cells in ranges]
     return [Packed(protocol.pack(read_block(part))) for part in parts]
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 from array import array
 from itertools import chain
 from math import nan
@@ -11,15 +12,17 @@ from sheetfuncs_bridge import protocol
 ERROR_CODES = {  # com.sun.star.table.XCell.getError
     503: "#NUM!", 519: "#VALUE!", 521: "#NULL!", 524: "#REF!", 525: "#NAME?", 532: "#DIV/0!", 32767: "#N/A",
 }
+LEAST_LAST_ROW = 65_535  # the last row (from 0) of a sheet is here or further down, depending on the version
 OTHER_ERROR = "#VALUE!"
 MOST_ERRORS = 5_000  # asked for one by one; beyond that a cell is an error without saying which
 DATE_OR_TIME, LOGICAL = 2 | 4, 1024  # com.sun.star.util.NumberFormat
 
 
-def common_last_row(ranges):
+def common_last_row(ranges, addresses):
     """The row (from 0) at which the whole columns among the ranges of one call end: the lowest used one of their
     sheets, so that they stay equally high. None where no range is open-ended."""
-    return max((last_used_row(cells.getSpreadsheet()) for cells in ranges if is_open_ended(cells)), default=None)
+    open_ended = (cells for cells, address in zip(ranges, addresses) if is_open_ended(cells, address))  # noqa: B905
+    return max((last_used_row(cells.getSpreadsheet()) for cells in open_ended), default=None)
 
 
 def last_used_row(sheet) -> int:
@@ -29,9 +32,11 @@ def last_used_row(sheet) -> int:
     return cursor.getRangeAddress().EndRow
 
 
-def is_open_ended(cells) -> bool:
-    """Whether the range reaches the last row of its sheet, as whole columns do."""
-    return cells.getRangeAddress().EndRow >= cells.getSpreadsheet().getRangeAddress().EndRow
+def is_open_ended(cells, address) -> bool:
+    """Whether the range, which stands at this address, reaches the last row of its sheet, as whole columns do."""
+    if address.EndRow < LEAST_LAST_ROW:  # which saves asking each time
+        return False
+    return address.EndRow >= cells.getSpreadsheet().getRangeAddress().EndRow
 
 
 def cut_to_row(cells, last_row: int):
@@ -49,7 +54,7 @@ def read_block(cells, document=None) -> protocol.Block:
     """
     address = cells.getRangeAddress()
     rows, columns = address.EndRow - address.StartRow + 1, address.EndColumn - address.StartColumn + 1
-    values = list(chain.from_iterable(cells.getDataArray()))
+    values = _values(cells)
     try:
         numbers, kinds, texts = array("d", values), None, ()
     except TypeError:
@@ -62,6 +67,17 @@ def read_block(cells, document=None) -> protocol.Block:
         _mark_formats(block, cells, document)
         _mark_hidden_rows(block, cells)
     return block
+
+
+def _values(cells) -> list:
+    """All values, row after row; meanwhile Python does not search its many new tuples for circles."""
+    was_enabled = gc.isenabled()
+    gc.disable()
+    try:
+        return list(chain.from_iterable(cells.getDataArray()))
+    finally:
+        if was_enabled:
+            gc.enable()
 
 
 def _with_odd_cells(values: list, columns: int, cells):

@@ -53,9 +53,12 @@ class Recalculation(unohelper.Base, XCallback):
 
     def packed(self, document, ranges) -> list:
         """A Packed block for each range of one call. Whole columns are cut to the used part, all at the same row."""
-        last_row = common_last_row(ranges)
+        addresses = [cells.getRangeAddress() for cells in ranges]
+        last_row = common_last_row(ranges, addresses)
         owner = document.getPropertyValue("RuntimeUID")
-        return [self._one(owner, cells, last_row) for cells in ranges]
+        return [
+            self._one(owner, cells, address, last_row) for cells, address in zip(ranges, addresses)  # noqa: B905
+        ]
 
     def notify(self, data) -> None:
         """Called from the main loop: the recalculation that posted this is over."""
@@ -74,8 +77,7 @@ class Recalculation(unohelper.Base, XCallback):
         for cells, listener in listeners:
             cells.removeModifyListener(listener)
 
-    def _one(self, owner: str, cells, last_row) -> Packed:
-        address = cells.getRangeAddress()
+    def _one(self, owner: str, cells, address, last_row) -> Packed:
         key = (
             owner, address.Sheet, address.StartColumn, address.StartRow, address.EndColumn, address.EndRow, last_row
         )
