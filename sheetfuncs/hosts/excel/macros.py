@@ -15,7 +15,7 @@ from sheetfuncs.hosts.excel.health import health_text
 from sheetfuncs.hosts.excel.message import message_of_check
 from sheetfuncs.hosts.excel.quiet import Step, held_still
 from sheetfuncs.hosts.excel.ranges import read_block
-from sheetfuncs.hosts.excel.selection import Place, below_titles, place_of_record, place_of_selection
+from sheetfuncs.hosts.excel.selection import Place, below_titles, place_of_record, place_of_selection, selected_cells
 from sheetfuncs.hosts.excel.sheets import (
     OurSheet,
     bring_in,
@@ -82,7 +82,7 @@ def _check_selection(book: xw.Book, step: Step) -> str:
     ours = None if active is None else _ours(active)
     if ours is not None:
         return _again(book, ours, step)
-    return _check(book, place_of_selection(None if active is None else book.selection), None, step)
+    return _check(book, place_of_selection(None if active is None else selected_cells(book)), None, step)
 
 
 def _check_again(book: xw.Book, step: Step) -> str:
@@ -158,7 +158,7 @@ def _put(
 
 
 def _why_this_value(book: xw.Book, step: Step) -> str:
-    selection = None if _active_sheet(book) is None else book.selection
+    selection = None if _active_sheet(book) is None else selected_cells(book)
     if selection is None:
         raise AddressError("No cell is selected: select one with a FIT_ formula, and press the button again.")
     step("calculating ...")

@@ -46,8 +46,17 @@ def _where(check: Check, title: str) -> str:
 
 
 def _findings(check: Check) -> list[str]:
+    """A sentence for each use; uses of which the same is true share it."""
     nothing_left = check.fit.nothing_left()
-    return [nothing_left] if nothing_left else [f"{use.title}: {use.sentence}" for use in uses(check.evidence)]
+    if nothing_left:
+        return [nothing_left]
+    titles: dict[str, list[str]] = {}
+    for use in uses(check.evidence):
+        titles.setdefault(use.sentence, []).append(use.title)
+    return [
+        f"{listed([first, *(title[:1].lower() + title[1:] for title in others)])}: {sentence}"
+        for sentence, (first, *others) in titles.items()
+    ]
 
 
 def _other_choices(check: Check, earlier: OurSheet) -> list[str]:

@@ -32,6 +32,17 @@ class Place:
     titled: bool = False
 
 
+def selected_cells(book: xw.Book) -> xw.Range | None:
+    """The selected cells; None where something else is selected.
+
+    Not xlwings' own Book.selection, which counts the cells, and of those of a whole sheet there are too many for Excel.
+    """
+    import xlwings as xw
+
+    found = book.app.impl.selection
+    return None if found is None else xw.Range(impl=found)
+
+
 def place_of_selection(selection: xw.Range | None) -> Place:
     """The data meant by a selection: itself; for a single cell its table, or the filled block around it.
 

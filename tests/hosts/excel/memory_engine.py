@@ -257,7 +257,11 @@ class Range(base_classes.Range):
         return bottom - top + 1, right - left + 1
 
     def __len__(self):
-        return self.shape[0] * self.shape[1]
+        """A Long in Excel, which a whole sheet is too large for."""
+        count = self.shape[0] * self.shape[1]
+        if count > 2**31 - 1:
+            raise model.ExcelError("Overflow")
+        return count
 
     def __call__(self, row, column):
         place = self.row + row - 1, self.column + column - 1

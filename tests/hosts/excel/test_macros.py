@@ -26,7 +26,7 @@ def test_the_sheet_stands_right_after_the_data_and_nothing_else_changed(app):
     before = [one.state() for one in book.sheets]
     said = press(app)
     assert said.startswith(FOUND + " (30 rows used).")
-    assert "Predict" in said
+    assert "Read a coefficient, predict an average value and predict one new value: No test found evidence" in said
     assert titles(app) == ["Notes", "Jobs", "Check of Jobs", "Later"]
     assert [one.state() for one in book.sheets if one.name != "Check of Jobs"] == before
     assert (app.active, book.active.name, book.active.selected) == (book, "Jobs", "B3:D33")

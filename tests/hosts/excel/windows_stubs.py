@@ -78,16 +78,23 @@ def _stubs() -> dict[str, types.ModuleType]:
     com.IID_IDispatch, com.TypeIIDs, com.__file__ = "IDispatch", {"IDispatch": ComObject}, "pythoncom.dll"
     types_of_windows = made["pywintypes"]
     types_of_windows.TimeType, types_of_windows.IID = datetime.datetime, str
-    types_of_windows.com_error = type("com_error", (Exception,), {})
+    types_of_windows.com_error = type("com_error", (Exception,), {"hresult": -2147352567, "excepinfo": None})
     types_of_windows.error = type("error", (Exception,), {})
     client = made["win32com.client"]
     client.Dispatch = client.DispatchEx = dispatch
     client.CDispatch = client.CoClassBaseClass = client.DispatchBaseClass = type("CDispatch", (), {})
+    for name in ("MB_OK", "MB_ICONINFORMATION", "MB_ICONWARNING"):
+        setattr(made["win32con"], name, 0)
     made["win32process"].GetWindowThreadProcessId = lambda window: (1, 4711)
     made["win32com.server.util"].wrap = lambda found, *args, **more: found
     made["win32com.server.util"].unwrap = _unwrap
     made["win32timezone"].TimeZoneInfo = types.SimpleNamespace(utc=lambda: datetime.UTC)
     return made
+
+
+def stub(name: str) -> Any:
+    """A module of pywin32, to give it what a test needs."""
+    return sys.modules[name]
 
 
 def load_xlwings() -> Any:
