@@ -6,9 +6,11 @@ Each takes done(succeeded, text), for a caller that wants the outcome for itself
 from __future__ import annotations
 
 import threading
+from contextlib import suppress
 
 import unohelper
 from com.sun.star.awt import XCallback
+from com.sun.star.uno import Exception as UnoException
 from com.sun.star.util import XModifyListener
 from sheetfuncs_bridge import protocol
 from sheetfuncs_bridge.chosen import Refusal, from_own_sheets, from_selection
@@ -161,8 +163,8 @@ class _Check(unohelper.Base, XCallback):
             else:
                 self._take(self._answer)
         except Exception as trouble:
-            # The document may be closed by now; there is nobody to tell then.
-            self._teller.refuse(f"The sheet could not be brought in ({_short(trouble)}). Nothing was changed.")
+            with suppress(UnoException):  # the document may be closed by now; there is nobody to tell then
+                self._teller.refuse(f"The sheet could not be brought in ({_short(trouble)}). Nothing was changed.")
 
     def _take(self, answer) -> None:
         refusal = answer.head.get("sentence") if answer.status != "ok" else self._changed_sheets(answer.head)
