@@ -47,8 +47,7 @@ def test_only_the_version_of_xlwings_that_was_asked_for_is_called(parts):
     assert changed == {"xl/vbaProject.bin", "docProps/custom.xml"}
 
 
-def test_the_audit_finds_nothing(addin, tmp_path):
-    """The same parts, audited as a macro-enabled workbook where the audit has no rule for the add-in's content type."""
+def test_the_audit_finds_nothing(addin):
     findings = OpenXmlValidator(FileFormat.OFFICE_2019).validate(addin)
     assert findings.is_valid, findings.errors
 
