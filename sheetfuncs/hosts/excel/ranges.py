@@ -19,6 +19,7 @@ if TYPE_CHECKING:
 
 # One reading holds at most so many cells: macOS' scripting gives up on much larger answers.
 CELLS_A_READING = 200_000
+OTHER_ERROR = "#UNKNOWN!"
 MOST_QUESTIONS = 2_000  # about hidden rows, each of which takes some milliseconds
 
 
@@ -93,10 +94,18 @@ def _read_on_mac(cells: xw.Range) -> list[list[Any]]:
     seen = cells.options(ndim=2).value
     texts = two_dimensional(cells.api.string_value.get())
     return [
-        [text if text in ERROR_TEXTS else _Date(value) if isinstance(value, datetime) else value
-         for value, text in zip(left, right, strict=True)]
+        [_told_apart(value, str(text)) for value, text in zip(left, right, strict=True)]
         for left, right in zip(seen, texts, strict=True)
     ]
+
+
+def _told_apart(value: Any, text: str) -> Any:
+    """A value on macOS. text: what the cell shows; an error value shows a word of Excel's language and has no value."""
+    if text in ERROR_TEXTS:
+        return text
+    if value is None and text.startswith("#"):
+        return OTHER_ERROR
+    return _Date(value) if isinstance(value, datetime) else value
 
 
 def hidden_rows(cells: xw.Range) -> np.ndarray | None:

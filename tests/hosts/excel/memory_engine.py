@@ -314,7 +314,9 @@ class Range(base_classes.Range):
 
     @property
     def api(self):
-        shown = self._shaped([["" if c.value is None else str(c.value) for c in row] for row in self._cells()])
+        words = self.app.model.error_words
+        shown = self._shaped([["" if c.value is None else words.get(c.value, str(c.value)) for c in row]
+                              for row in self._cells()])
         first = self.model.cell(self.row, self.column)
         hidden = self._rows_hidden()
         return _Native(

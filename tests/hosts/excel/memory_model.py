@@ -124,7 +124,8 @@ class Book:
 @dataclass(eq=False)
 class App:
     """fail: for the name of an action, what Excel throws there, once. carries_names: whether a copied sheet
-    keeps its hidden names. mac: values as macOS' scripting gives them. seen: what a user would have noticed."""
+    keeps its hidden names. mac: values as macOS' scripting gives them. error_words: what errors are called
+    here. seen: what a user would have noticed."""
 
     books: list[Book] = field(default_factory=list)
     active: Book | None = None
@@ -140,6 +141,7 @@ class App:
     carries_names: bool = True
     has_formula2: bool = True
     tells_hidden_rows: bool = True
+    error_words: dict[object, str] = field(default_factory=dict)
     mac: bool = False
     opened: list[Path] = field(default_factory=list)
 

@@ -378,6 +378,15 @@ def test_the_same_workbook_gives_the_same_data_as_its_file(app, mac, tmp_path, m
     assert "3 used rows are hidden or filtered out, and counted like the others." in texts
 
 
+def test_an_error_is_one_on_a_mac_that_speaks_another_language(app, tmp_path, monkeypatch):
+    monkeypatch.setattr("sheetfuncs.hosts.excel.ranges.on_mac", lambda: True)
+    app.mac, app.error_words = True, {"#N/A": "#NV", "#DIV/0!": "#DIV/0!"}
+    sheet(app).cells[8, 3].value, sheet(app).cells[9, 3].value, sheet(app).cells[10, 3].value = "#N/A", "#DIV/0!", None
+    assert "27 rows used, 3 left out" in press(app)
+    texts = " ".join(str(cell.value) for cell in sheet(app, "Check of Jobs").cells.values())
+    assert all(word in texts for word in ("#UNKNOWN! in", "#DIV/0! in", "Blank in"))
+
+
 def file_with(rows, path):
     book = openpyxl.Workbook()
     cells = book.active
