@@ -12,13 +12,13 @@ from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.threads import few_threads
 
 BLOCK = 64
-FEW_BLOCKS = 4  # up to which taking many at a time does not pay
 # Rows in a block once many are taken at a time: the work of a row grows with the square of this.
 SMALL_BLOCK = 16
 # Blocks that are taken at a time, so that memory stays small.
 TOGETHER = 128
-# Cross products of the rows so far cost no digit that matters once every column has this share left after the others.
-WELL_APART = 1e-2
+# Cross products of the rows so far cost no digit that matters once every column has this share left after the others,
+# and once this much of it, squared, that no row to come, of length 1 at most, lies far beyond them.
+WELL_APART, REACHED = 0.1, 1e-3
 
 
 @dataclass(frozen=True, eq=False)
@@ -60,14 +60,19 @@ class _Rows:
 
     def in_basis(self, start: int, stop: int) -> np.ndarray:
         """Predictors as coordinates in the fit's orthonormal basis: well apart once there are many rows."""
-        return self._rows(start, stop, 1.0 / np.sqrt(self.fit.n), self.fit.basis.q)
+        place = slice(start, stop) if self.order is None else self.order[start:stop]
+        return self.fit.orthonormal[:, place].T
 
     def near_first(self, start: int, stop: int) -> np.ndarray:
         """Predictors as they are, counted from the first row where there is an intercept: that keeps every digit of
         small steps, as those of a time column, which in the basis are small differences."""
-        rows = self._rows(start, stop, 1.0, self.fit.design.columns)
-        rows[:, self.constant : -1] -= self.first
+        place = slice(start, stop) if self.order is None else self.order[start:stop]
+        e = self.fit.residuals[place]
+        rows = np.empty((e.shape[0], self.fit.p + 1))
+        rows[:, : self.constant] = 1.0
+        np.subtract(self.fit.design.columns[place], self.first, out=rows[:, self.constant : -1])
         rows[:, self.constant : -1] /= self.fit.basis.scale
+        np.divide(e, self.length, out=rows[:, -1])
         return rows
 
     def roundings(self, count: int) -> float:
@@ -76,15 +81,6 @@ class _Rows:
         with np.errstate(divide="ignore", invalid="ignore"):
             size = np.abs(near + self.first / self.fit.basis.scale).max(axis=0) / np.abs(near).max(axis=0)
         return ROUNDINGS * EPS * float(size.max(initial=0.0))
-
-    def _rows(self, start: int, stop: int, constant: float, columns: np.ndarray) -> np.ndarray:
-        place = slice(start, stop) if self.order is None else self.order[start:stop]
-        e = self.fit.residuals[place]
-        rows = np.empty((e.shape[0], self.fit.p + 1))
-        rows[:, : self.constant] = constant
-        rows[:, self.constant : -1] = columns[place]
-        rows[:, -1] = e / self.length
-        return rows
 
 
 def _first_with_full_rank(rows: _Rows) -> int:
@@ -114,18 +110,16 @@ def _values(rows: _Rows, start: int) -> np.ndarray:
     found: list[np.ndarray] = []
     root = _triangle(rows.near_first(0, start))
     done = start
-    many = n - start > FEW_BLOCKS * BLOCK
-    gram = _gram(rows.in_basis(0, start)) if many else None
-    while done < n and not (gram is not None and _well_apart(gram)):
+    gram = _gram(rows.in_basis(0, start))
+    while done < n and not _well_apart(gram):
         # Small first blocks: rows far beyond those before them would be predicted with large P.
         stop = min(done + min(2 * done, BLOCK), n)
         block = rows.near_first(done, stop)
         found.append(_block_values(root, block))
-        root = _triangle(np.vstack([root, block]))
-        if gram is not None:
-            gram += _gram(rows.in_basis(done, stop))
+        root = _triangle(np.concatenate([root, block]))
+        gram += _gram(rows.in_basis(done, stop))
         done = stop
-    while gram is not None and done < n:
+    while done < n:
         values, gram = _many_blocks(gram, rows.in_basis(done, done + TOGETHER * SMALL_BLOCK))
         found.append(values)
         done += values.shape[0]
@@ -148,11 +142,8 @@ def _triangle(rows: np.ndarray) -> np.ndarray:
 
 def _well_apart(gram: np.ndarray) -> bool:
     inner = gram[:-1, :-1]
-    length = np.sqrt(np.diag(inner))
-    if not length.all():
-        return False
-    root, info = lapack.dpotrf(inner / np.outer(length, length), lower=1)
-    return bool(info == 0 and np.diag(root).min() >= WELL_APART)
+    root, info = lapack.dpotrf(inner, lower=1)
+    return bool(info == 0 and (root.diagonal() ** 2 >= np.maximum(WELL_APART**2 * inner.diagonal(), REACHED)).all())
 
 
 def _block_values(root: np.ndarray, block: np.ndarray) -> np.ndarray:
@@ -188,12 +179,16 @@ def _many_blocks(gram: np.ndarray, chunk: np.ndarray) -> tuple[np.ndarray, np.nd
     x = filled.reshape(blocks, SMALL_BLOCK, width)
     sums = np.cumsum(np.concatenate([gram[None], x.transpose(0, 2, 1) @ x]), axis=0)[1:]
     size = p + SMALL_BLOCK + 1
-    bordered = np.zeros((blocks, size, size))
+    bordered = np.zeros((blocks, size, size))  # lower triangles
     bordered[:, :p, :p] = sums[:, :p, :p]
     bordered[:, p:-1, :p] = x[:, ::-1, :p]
-    bordered[:, range(p, size - 1), range(p, size - 1)] = 1.0
+    bordered.reshape(blocks, -1)[:, p * (size + 1) : -1 : size + 1] = 1.0
     bordered[:, -1, :p] = sums[:, p, :p]
     bordered[:, -1, p:-1] = x[:, ::-1, p]
     bordered[:, -1, -1] = 4.0  # more than the rest of the line can take away: all squares add up to 1
-    values = np.linalg.cholesky(bordered)[:, -1, p:-1][:, ::-1]
-    return values.reshape(-1)[:count], sums[-1]
+    for one in bordered:
+        # Its upper triangle is the transposed one's lower; numpy's own factorization of many takes twice as long.
+        _, info = lapack.dpotrf(one.T, lower=0, clean=0, overwrite_a=1)
+        if info != 0:
+            raise np.linalg.LinAlgError("rows that were told apart well are not any more")
+    return bordered[:, -1, size - 2 : p - 1 : -1].reshape(-1)[:count], sums[-1]
