@@ -26,6 +26,7 @@ COMMANDS = {
     "why": "Why this value?",
     "health": "Health",
 }
+TITLE = "Regression check"
 EVENTS = ("OnLoadFinished", "OnSaveDone", "OnSaveAsDone", "OnUnload")
 SOURCES = Path(__file__).parent
 EARLIEST = (1980, 1, 1, 0, 0, 0)
@@ -39,6 +40,7 @@ def build_extension(settings: Mapping[str, object] | None = None) -> bytes:
         "functions.idl": type_library(),
         "CalcAddIns.xcu": _function_texts(),
         "Addons.xcu": _menu_and_toolbar(),
+        "CalcWindowState.xcu": _toolbar_place(),
         "Jobs.xcu": _jobs(),
         "ProtocolHandler.xcu": _protocol_handler(),
         "functions.json": json.dumps(_functions(), indent=1),
@@ -118,7 +120,7 @@ def _manifest() -> str:
         "functions.idl": "application/vnd.sun.star.uno-typelibrary;type=RDB",
         "component.py": "application/vnd.sun.star.uno-component;type=Python",
         **dict.fromkeys(
-            ("CalcAddIns.xcu", "Addons.xcu", "Jobs.xcu", "ProtocolHandler.xcu"),
+            ("CalcAddIns.xcu", "Addons.xcu", "CalcWindowState.xcu", "Jobs.xcu", "ProtocolHandler.xcu"),
             "application/vnd.sun.star.configuration-data",
         ),
     }
@@ -193,12 +195,22 @@ def _menu_and_toolbar() -> str:
     )
     menu = _node(
         f"{IDENTIFIER}.menu",
-        _property("Title", "Regression check", language=True) + _property("Context", SHEETS)
+        _property("Title", TITLE, language=True) + _property("Context", SHEETS)
         + _group("Submenu", entries),
     )
     toolbar = _node(f"{IDENTIFIER}.toolbar", entries)
     surface = _group("OfficeMenuBar", menu) + _group("OfficeToolBar", toolbar)
     return _data("Addons", "org.openoffice.Office", _group("AddonUI", surface))
+
+
+def _toolbar_place() -> str:
+    """Below the other toolbars and with a name; without this it floats over the menus as "Add-On 1"."""
+    state = _node(
+        f"private:resource/toolbar/addon_{IDENTIFIER}.toolbar",
+        _property("UIName", TITLE, language=True) + _property("Docked", "true") + _property("DockingArea", "0")
+        + _property("DockPos", "0,4") + _property("Visible", "true"),
+    )
+    return _data("CalcWindowState", "org.openoffice.Office.UI", _group("UIElements", _group("States", state)))
 
 
 def _jobs() -> str:
