@@ -10,6 +10,7 @@ from __future__ import annotations
 import zipfile
 from dataclasses import dataclass
 from pathlib import Path
+from xml.etree import ElementTree
 from xml.sax.saxutils import escape
 
 import sheetfuncs
@@ -81,25 +82,41 @@ def expected() -> dict[str, object]:
     return values
 
 
-def write_book(path: Path, spelling: str, *, link: str = ADDIN, protected: bool = False) -> Path:
-    """A workbook whose formulas spell our functions in one way; `spelling` is a key of SPELLINGS."""
+def write_book(
+    path: Path, spelling: str, *, link: str = ADDIN, protected: bool = False, filtered: bool = False,
+    without: tuple[Formula, ...] = (),
+) -> Path:
+    """A workbook whose formulas spell our functions in one way; `spelling` is a key of SPELLINGS.
+
+    filtered: a filter hides all rows but the first ones.
+    """
     pattern = SPELLINGS[spelling]
+    formulas = [formula for formula in FORMULAS if formula not in without]
+    parts = {**_parts(pattern, link), "xl/worksheets/sheet1.xml": _sheet(formulas, pattern, protected, filtered)}
     with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as package:
-        for name, text in _parts(pattern, link, protected).items():
+        for name, text in parts.items():
             package.writestr(name, DECLARATION + text)
     return path
 
 
-def formulas_in(path: Path, part: str = "xl/worksheets/sheet1.xml") -> list[str]:
-    """The texts of all formulas in cells, as they stand in the file."""
-    from xml.etree import ElementTree
-
+def cells_in(path: Path, part: str = "xl/worksheets/sheet1.xml") -> dict[str, tuple[str | None, str | None]]:
+    """Formula and stored value of each cell, as they stand in the file."""
     with zipfile.ZipFile(path) as package:
         root = ElementTree.fromstring(package.read(part))
-    return [element.text or "" for element in root.iter(f"{{{MAIN}}}f") if element.text]
+    found = {}
+    for cell in root.iter(f"{{{MAIN}}}c"):
+        found[cell.get("r", "")] = cell.findtext(f"{{{MAIN}}}f"), cell.findtext(f"{{{MAIN}}}v")
+    return found
 
 
-def _parts(pattern: str, link: str, protected: bool) -> dict[str, str]:
+def names_in(path: Path) -> dict[str, str]:
+    """Defined names and what they stand for, as they stand in the file."""
+    with zipfile.ZipFile(path) as package:
+        root = ElementTree.fromstring(package.read("xl/workbook.xml"))
+    return {name.get("name", ""): name.text or "" for name in root.iter(f"{{{MAIN}}}definedName")}
+
+
+def _parts(pattern: str, link: str) -> dict[str, str]:
     types = {
         "xl/workbook.xml": "sheet.main", "xl/worksheets/sheet1.xml": "worksheet", "xl/metadata.xml": "sheetMetadata",
         "xl/externalLinks/externalLink1.xml": "externalLink",
@@ -115,13 +132,13 @@ def _parts(pattern: str, link: str, protected: bool) -> dict[str, str]:
         "_rels/.rels": _relationships(("officeDocument", "xl/workbook.xml")),
         "xl/workbook.xml": f'<workbook xmlns="{MAIN}" xmlns:r="{OFFICE}"><sheets><sheet name="Orders" sheetId="1" '
         'r:id="rId1"/></sheets><externalReferences><externalReference r:id="rId2"/></externalReferences><definedNames>'
+        f'<definedName name="_xlnm._FilterDatabase" localSheetId="0" hidden="1">Orders!$A$1:$C${LAST}</definedName>'
         f'<definedName name="Spread">{escape(NAME.spelled(pattern))}</definedName></definedNames>'
         '<calcPr calcId="191029"/></workbook>',
         "xl/_rels/workbook.xml.rels": _relationships(
             ("worksheet", "worksheets/sheet1.xml"), ("externalLink", "externalLinks/externalLink1.xml"),
             ("sheetMetadata", "metadata.xml"),
         ),
-        "xl/worksheets/sheet1.xml": _sheet(pattern, protected),
         "xl/metadata.xml": METADATA,
         "xl/externalLinks/externalLink1.xml": f'<externalLink xmlns="{MAIN}"><externalBook xmlns:r="{OFFICE}" '
         f'r:id="rId1"><definedNames>{names}</definedNames></externalBook></externalLink>',
@@ -139,21 +156,25 @@ def _relationships(*arrows: tuple[str, str]) -> str:
     return f'<Relationships xmlns="{PACKAGE}/relationships">{lines}</Relationships>'
 
 
-def _sheet(pattern: str, protected: bool) -> str:
+def _sheet(formulas: list[Formula], pattern: str, protected: bool, filtered: bool) -> str:
     cells = {f"{column}1": _text_cell(f"{column}1", text) for column, text in zip("ABC", HEADERS, strict=True)}
     for row, (hours, panels) in enumerate(zip(HOURS, PANELS, strict=True), 2):
         for column, value in zip("ABC", hours + panels, strict=True):
             cells[f"{column}{row}"] = f'<c r="{column}{row}"><v>{value!r}</v></c>'
-    for formula in FORMULAS:
+    for formula in formulas:
         cells |= _formula_cells(formula, escape(formula.spelled(pattern)))
     rows = ""
     for row in range(1, LAST + 1):
         inside = "".join(cells.get(f"{column}{row}", "") for column in "ABCDEFGH")
-        rows += f'<row r="{row}">{inside}</row>'
-    protection = '<sheetProtection sheet="1" objects="1" scenarios="1"/>' if protected else ""
+        hidden = ' hidden="1"' if filtered and row > 3 else ""
+        rows += f'<row r="{row}"{hidden}>{inside}</row>'
+    after = '<sheetProtection sheet="1" objects="1" scenarios="1"/>' if protected else ""
+    if filtered:
+        shown = '<customFilters><customFilter operator="lessThan" val="6"/></customFilters>'
+        after += f'<autoFilter ref="A1:C{LAST}"><filterColumn colId="0">{shown}</filterColumn></autoFilter>'
     rule = f'<cfRule type="expression" priority="1"><formula>{escape(RULE.spelled(pattern))}</formula></cfRule>'
     rules = f'<conditionalFormatting sqref="{RULE.area}">{rule}</conditionalFormatting>'
-    return f'<worksheet xmlns="{MAIN}"><sheetData>{rows}</sheetData>{protection}{rules}</worksheet>'
+    return f'<worksheet xmlns="{MAIN}"><sheetData>{rows}</sheetData>{after}{rules}</worksheet>'
 
 
 HEADERS = ("Work time (h)", "Panel area (m²)", "Glaze colours")

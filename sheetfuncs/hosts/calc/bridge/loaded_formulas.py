@@ -7,6 +7,7 @@ What is set again means the same as before; so the document counts as unchanged 
 
 from __future__ import annotations
 
+import re
 from contextlib import contextmanager, suppress
 
 from com.sun.star.uno import Exception as UnoException
@@ -16,8 +17,9 @@ from sheetfuncs_bridge.external_links import linked_files
 from sheetfuncs_bridge.spellings import Spellings, calls, leads_to_our_addin
 
 FORMULA = 16  # com.sun.star.sheet.CellFlags
-SIGN = "FIT_"
-_UNKNOWN_CALL = r"[a-z][A-Za-z0-9_.]*\("  # Calc writes the functions that it knows in capitals
+_SIGN = re.compile("fit_", re.IGNORECASE)
+_MAYBE_UNKNOWN = re.compile(r"[a-z][\w.]*\(|\]!")
+MOST_CELLS = 20_000  # read at once
 _CONDITION = 0  # com.sun.star.sheet.ConditionEntryType
 
 
@@ -54,9 +56,9 @@ class _Formulas:
     def cells(self):
         """Of cells; an array formula once, for all its cells."""
         for sheet in self._sheets:
-            for cells in _ranges_with(sheet, SIGN):
-                seen = set()
-                for row, texts in enumerate(cells.getFormulaArray()):
+            seen = set()
+            for cells, rows in _formulas_with(_SIGN, sheet):
+                for row, texts in enumerate(rows):
                     for column, text in enumerate(texts):
                         plain = self._plain(text)
                         if plain is None:
@@ -88,8 +90,12 @@ class _Formulas:
                 yield from self._changes(owner.NamedRanges.getByName(name), "Content")
 
     def any_unknown(self) -> bool:
-        """Whether some cell calls what Calc does not know; a text that looks like such a call counts too."""
-        return any(True for sheet in self._sheets for _ in _ranges_with(sheet, _UNKNOWN_CALL, pattern=True))
+        """Whether some cell calls what Calc does not know."""
+        return any(
+            _has_unknown(text)
+            for sheet in self._sheets for _, rows in _formulas_with(_MAYBE_UNKNOWN, sheet)
+            for texts in rows for text in texts if _MAYBE_UNKNOWN.search(text)
+        )
 
     def _changes(self, owner, *properties):
         for name in properties:
@@ -99,12 +105,10 @@ class _Formulas:
 
     def _plain(self, text: str):
         """The formula with plain names, or None where it stays: all is understood, or something else is not."""
-        if SIGN not in text.upper():
+        if not _SIGN.search(text):
             return None
         plain = self._spellings.plain(text, self._is_ours)
-        if plain == text or any(call.link is not None or call.name != call.name.upper() for call in calls(plain)):
-            return None
-        return plain
+        return None if plain == text or _has_unknown(plain) else plain
 
     def _is_ours(self, link: int) -> bool:
         if self._links is None:
@@ -120,40 +124,51 @@ class _Change:
         self.owner, self.name, self.formula = owner, name, formula
 
 
+def _has_unknown(formula: str) -> bool:
+    """Whether it calls what Calc does not know: such names it writes in small letters."""
+    return any(call.link is not None or call.name != call.name.upper() for call in calls(formula))
+
+
 def _done(change: _Change) -> bool:
     """Set the formula; whether that worked. Array formulas on protected sheets are refused, without a word."""
     try:
         setattr(change.owner, change.name, change.formula)
     except UnoException:
         return False
-    return change.name != "ArrayFormula" or SIGN.lower() not in change.owner.getArrayFormula()
+    return change.name != "ArrayFormula" or not _has_unknown(change.owner.getArrayFormula())
 
 
-def _ranges_with(sheet, wanted: str, *, pattern: bool = False):
-    """The ranges of formula cells whose formulas hold a text, or something of a pattern."""
-    cells = sheet.queryContentCells(FORMULA)
-    if not cells.getCount():
-        return
-    search = sheet.createSearchDescriptor()
-    search.SearchString = wanted
-    search.SearchType = 0  # in formulas
-    search.SearchRegularExpression = search.SearchCaseSensitive = pattern
-    found = cells.findAll(search)
-    for place in range(found.getCount() if found is not None else 0):
-        yield found.getByIndex(place)
+def _formulas_with(pattern, sheet):
+    """(cells, rows of their formulas) for every block of formula cells that has something of a pattern in it.
+
+    A search would be a little faster, but passes over rows that a filter hides.
+    """
+    found = sheet.queryContentCells(FORMULA)
+    for place in range(found.getCount()):
+        block = found.getByIndex(place)
+        address = block.getRangeAddress()
+        width, height = address.EndColumn - address.StartColumn + 1, address.EndRow - address.StartRow + 1
+        step = max(1, MOST_CELLS // width)
+        for top in range(0, height, step):
+            piece = block.getCellRangeByPosition(0, top, width - 1, min(top + step, height) - 1)
+            rows = piece.getFormulaArray()
+            if pattern.search("\n".join(map("\n".join, rows))):
+                yield piece, rows
 
 
 @contextmanager
 def _unnoticed(model):
-    """Changes that leave no trace: nothing to undo, no question whether to save, one repaint at the end."""
-    modified = model.isModified()
+    """Changes that leave no trace: nothing to undo, no question whether to save, one calculation at the end."""
+    modified, calculates = model.isModified(), model.isAutomaticCalculationEnabled()
     undo = model.getUndoManager()
     undo.lock()
+    model.enableAutomaticCalculation(False)  # one at a time, each formula would read its ranges anew
     model.addActionLock()
     model.lockControllers()
     try:
         yield
     finally:
+        model.enableAutomaticCalculation(calculates)
         model.unlockControllers()
         model.removeActionLock()
         undo.unlock()
