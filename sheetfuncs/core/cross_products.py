@@ -11,22 +11,19 @@ WELL_APART = 1e-3
 FAR_APART = 1e-2
 
 
-def coordinates(gram: np.ndarray, enough: np.ndarray | None = None) -> np.ndarray | None:
+def coordinates(gram: np.ndarray, whole: np.ndarray | float | None = None) -> np.ndarray | None:
     """Coordinates of the last of some columns along the others, made orthonormal one after the other; (m,).
 
     gram: (m, m) cross products, of which the lower triangle is read. The last coordinate is the length of what is left,
     so that all squares add up to the column's own. Squares of the first few are what these first few columns explain.
-    enough: (m - 1,) squares of what must be left of the other columns, by default a hundredth of what they are.
-    None where less is left, or less than a hundredth of the last column, since both would cost digits.
+    None where less than a hundredth is left of a column's square, which would cost digits; whole: these squares, where
+    something was taken off the columns before.
     """
     root, info = lapack.dpotrf(gram, lower=1)
     if info != 0:
         return None
-    left, before = root.diagonal() ** 2, gram.diagonal()
-    least = FAR_APART * before
-    if enough is not None:
-        least[:-1] = enough
-    return root[-1] if (left >= least).all() else None
+    left = root.diagonal() ** 2
+    return root[-1] if (left >= FAR_APART * (gram.diagonal() if whole is None else whole)).all() else None
 
 
 def leading(gram: np.ndarray, count: int) -> np.ndarray:

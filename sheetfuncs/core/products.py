@@ -13,6 +13,7 @@ from scipy.linalg import lapack, solve_triangular
 
 from sheetfuncs.core.auxiliary import Addition
 from sheetfuncs.core.basis import DETERMINED, EPS, ROUNDINGS, Basis
+from sheetfuncs.core.cross_products import coordinates
 from sheetfuncs.core.threads import few_threads
 
 PRODUCTS_AT_MOST = 2_000
@@ -34,16 +35,36 @@ def explain_by_products(basis: Basis, target: np.ndarray) -> Addition:
     Memory: a block of rows and a few square matrices as wide as there are products, whatever n is.
     """
     with few_threads(0):
-        return _explain(basis, target)
+        gram, length = _scaled_products(basis, target)
+        return _if_apart(gram, target) or _in_passes(basis, target, gram, length)
 
 
-def _explain(basis: Basis, target: np.ndarray) -> Addition:
-    total = float(target @ target)
-    share = max(DETERMINED, ROUNDINGS * EPS * basis.amplification)
+def explain_if_apart(basis: Basis, target: np.ndarray) -> Addition | None:
+    """The same where all columns can be told apart well, as a rule; else None."""
+    with few_threads(0):
+        return _if_apart(_scaled_products(basis, target)[0], target)
+
+
+def _scaled_products(basis: Basis, target: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Cross products over the columns' lengths, and these lengths."""
     gram = _cross_products(basis, target, None)
     length = _lengths(gram, basis)
+    gram /= np.multiply.outer(length, length)
+    return gram, length
+
+
+def _if_apart(gram: np.ndarray, target: np.ndarray) -> Addition | None:
+    found = coordinates(gram, 1.0)
+    if found is None:
+        return None
+    squares = float(target @ target) * found**2
+    return Addition(float(squares[:-1].sum()), float(squares[-1]), found.shape[0] - 1)
+
+
+def _in_passes(basis: Basis, target: np.ndarray, gram: np.ndarray, length: np.ndarray) -> Addition:
+    total = float(target @ target)
+    share = max(DETERMINED, ROUNDINGS * EPS * basis.amplification)
     transform = np.diag(1.0 / length)
-    gram /= np.outer(length, length)
     kept, in_doubt = 1, IN_DOUBT  # the constant; limit of a squared share
     for _ in range(_MOST_PASSES):
         root = np.linalg.cholesky(gram[:kept, :kept])

@@ -10,11 +10,12 @@ from scipy.special import chdtrc, fdtrc
 from sheetfuncs.core.auxiliary import Addition, add_columns, refused
 from sheetfuncs.core.basis import DETERMINED, ROUNDINGS
 from sheetfuncs.core.fit import Fit
-from sheetfuncs.core.products import PRODUCTS_AT_MOST, explain_by_products, number_of_products
+from sheetfuncs.core.products import PRODUCTS_AT_MOST, explain_by_products, explain_if_apart, number_of_products
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 from sheetfuncs.core.variance import CONSTANT
 
-# Up to this many elements the orthogonal decomposition is the faster one; above, cross products by blocks of rows.
+# Up to this many elements the orthogonal decomposition is the faster one for columns that are close to each other;
+# above, further passes of cross products by blocks of rows.
 DECOMPOSED_UP_TO = 6_000
 _NO_CONSTANT = "The auxiliary regression has a constant although the fit has none."
 
@@ -47,7 +48,7 @@ def white(fit: Fit) -> Result:
     if total <= 0.0:
         return _all_alike(named)
     if fit.n * number_of_products(k) <= DECOMPOSED_UP_TO or fit.n < 3 * number_of_products(k):
-        added = _decomposed(fit, ratio)
+        added = explain_if_apart(fit.basis, ratio) or _decomposed(fit, ratio)
     else:
         added = explain_by_products(fit.basis, ratio)
     return _result(fit, named, added, total, "" if fit.design.intercept else _NO_CONSTANT)
