@@ -4,7 +4,7 @@
 
 A private profile gets the extension, whose unpacked copy is made to log how long each call took. "marshalling" is
 LibreOffice handing the cells over to Python (getDataArray) and nothing else; "built-in" is LINEST, and SUMSQ, on the
-same cells, timed around a recalculation. Medians of several recalculations.
+same cells, timed around a recalculation. The least of several rounds, since others may use the machine too.
 """
 
 from __future__ import annotations
@@ -84,26 +84,27 @@ def measure(calc: Calc, rows: int, columns: int, log: Path, switch: Path) -> Non
                 (f"=LINEST({response};{predictors};TRUE();TRUE())", f"=SUMSQ(A1:{chr(64 + columns)}{rows})")]
     for place in range(FORMULAS):
         type_formula(sheet, f"H{place + 1}", f"=FIT_DURBIN_WATSON({response};{predictors})")
-    firsts, further = [], []
+    firsts, further, marshalling = [], [], []
     for round_ in range(ROUNDS):
-        sheet.getCellByPosition(0, 7).Value = float(round_)  # other content each time
-        log.unlink(missing_ok=True)
-        document.calculateAll()
-        times = logged(log, "call")
+        times = recalculated(document, sheet, log, "call", 1.0 + round_)
         firsts.append(times[0])
-        further += times[1:FORMULAS]
-    switch.touch()
-    marshalling = []
-    for round_ in range(ROUNDS):
-        sheet.getCellByPosition(0, 7).Value = float(round_)
-        log.unlink(missing_ok=True)
-        document.calculateAll()
-        marshalling.append(sum(logged(log, "marshalling")[:2]))  # response and predictors
-    switch.unlink()
+        further.append(statistics.median(times[1:FORMULAS]))
+        switch.touch()
+        marshalling.append(sum(recalculated(document, sheet, log, "marshalling", 100.0 + round_)[:2]))
+        switch.unlink()
     document.close(True)
-    first, more, cells = (1e3 * statistics.median(times) for times in (firsts, further, marshalling))
+    first, more, cells = (1e3 * min(times) for times in (firsts, further, marshalling))
     print(f"{rows:>9,} x {columns:<3} {first:8.2f} {more:8.2f} {cells:12.2f} {first / cells:20.2f}"
           f" {built_in[0]:8.2f} {built_in[1]:8.2f}", flush=True)
+
+
+def recalculated(document, sheet, log: Path, kind: str, value: float) -> list[float]:
+    """Seconds of each logged line of this kind after one data cell got another value."""
+    sheet.getCellByPosition(0, 7).Value = value
+    log.unlink(missing_ok=True)
+    document.calculateAll()
+    lines = [line.split() for line in log.read_text().splitlines()]
+    return [float(seconds) for name, seconds in lines if name == kind]
 
 
 def fill_with_numbers(sheet: object, rows: int, columns: int) -> None:
@@ -124,18 +125,12 @@ def timed_alone(document, sheet, formula: str) -> float:
         document.calculateAll()
         return 1e3 * (time.perf_counter() - start)
 
-    empty = statistics.median(once() for _ in range(ROUNDS))
+    empty = min(once() for _ in range(ROUNDS))
     cell = type_formula(sheet, "H1", formula)
     assert cell.getError() == 0, formula
-    taken = statistics.median(once() for _ in range(ROUNDS)) - empty
+    taken = min(once() for _ in range(ROUNDS)) - empty
     cell.setFormula("")
     return taken
-
-
-def logged(log: Path, kind: str) -> list[float]:
-    """Seconds of each line of this kind."""
-    lines = [line.split() for line in log.read_text().splitlines()]
-    return [float(seconds) for name, seconds in lines if name == kind]
 
 
 if __name__ == "__main__":
