@@ -101,6 +101,12 @@ class Basis:
         root[0, 1:] = -self.centre @ slopes
         return root
 
+    @cached_property
+    def root_lengths(self) -> np.ndarray:
+        """(p,): roots of the diagonal of (X'X)^-1."""
+        root = self.coefficient_root
+        return np.sqrt(np.einsum("ij,ij->i", root, root))
+
     def project_out(self, values: np.ndarray) -> np.ndarray:
         """What is left of values (n,) or (n, m) after regression on this basis; twice, so that it is orthogonal."""
         left = np.array(values, dtype=np.float64)

@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
-from scipy.special import stdtr, stdtrit
+from scipy.special import stdtr
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import EPS, ROUNDINGS
@@ -85,12 +85,11 @@ def heteroscedasticity_consistent(fit: Fit, kind: str = "HC3", *, level: float =
     refusal = refused(fit, "hc_se", args, kind, "")
     if refusal:
         return refusal
-    if kind in ("HC2", "HC3", "HC4") and fit.fits_itself.any():
+    if kind in ("HC2", "HC3", "HC4") and fit.some_fit_themselves:
         return DoesNotApply(method="hc_se", args=args, variant=kind, reason=_leverage_one(fit, kind))
-    weighted = fit.residuals / _size(fit) * _root_of_weights(fit, kind)
     with few_threads(fit.basis.q.size):
-        rows = fit.basis.q * weighted[:, None]
-        middle = _with_constant(fit, rows.T @ rows, rows.T @ weighted, float(weighted @ weighted))
+        scores = fit.orthonormal[:-1] * (fit.orthonormal[-1] * _root_of_weights(fit, kind))
+        middle = scores @ scores.T
     return _covariance(fit, kind, "hc_se", args, _sandwich(fit, middle), level, _WIDER[kind])
 
 
@@ -163,21 +162,18 @@ def _bartlett_sum(fit: Fit, lag: int) -> np.ndarray:
     Moving sums S_t of lag + 1 scores (zeros beyond both ends) have sum of S_t S_t' = (lag + 1) times that: no loop over
     lags, and never an indefinite matrix.
     """
-    n, first = fit.n, int(fit.design.intercept)
-    e = fit.design.in_order(fit.residuals) / _size(fit)
-    q = fit.basis.q if fit.design.order is None else fit.basis.q[fit.design.order]
-    sums = np.empty((n + lag, fit.p), order="F")
-    running = np.zeros(n + 2 * lag + 1)
-    for j in range(fit.p):
-        score = e / np.sqrt(n) if j < first else q[:, j - first] * e
+    n, order = fit.n, fit.design.order
+    lines = fit.orthonormal if order is None else fit.orthonormal[:, order]
+    running = np.zeros((fit.p, n + 2 * lag + 1))
+    scores = running[:, lag + 1 : lag + 1 + n]
+    np.multiply(lines[:-1], lines[-1], out=scores)
+    with few_threads(running.size):
         if lag == 0:
-            sums[:, j] = score
-            continue
-        np.cumsum(score, out=running[lag + 1:lag + 1 + n])
-        running[lag + 1 + n:] = running[lag + n]
-        np.subtract(running[lag + 1:], running[:-lag - 1], out=sums[:, j])
-    with few_threads(sums.size):
-        return sums.T @ sums / (lag + 1.0)
+            return scores @ scores.T
+        np.cumsum(scores, axis=1, out=scores)
+        running[:, lag + 1 + n :] = scores[:, -1:]
+        sums = running[:, lag + 1 :] - running[:, : -lag - 1]
+        return sums @ sums.T / (lag + 1.0)
 
 
 def _bandwidth(fit: Fit) -> float | None:
@@ -213,23 +209,8 @@ def _root_of_weights(fit: Fit, kind: str) -> np.ndarray | float:
     return 1.0 / left if kind == "HC3" else left ** (-0.5 * np.minimum(4.0, fit.n * fit.leverage / fit.p))
 
 
-def _size(fit: Fit) -> float:
-    """A typical residual: squares of residuals over it neither overflow nor vanish."""
-    return float(np.sqrt(fit.rss / fit.n))
-
-
-def _with_constant(fit: Fit, inner: np.ndarray, edge: np.ndarray, corner: float) -> np.ndarray:
-    if not fit.design.intercept:
-        return inner
-    middle = np.empty((fit.p, fit.p))
-    middle[1:, 1:] = inner
-    middle[0, 1:] = middle[1:, 0] = edge / np.sqrt(fit.n)
-    middle[0, 0] = corner / fit.n
-    return middle
-
-
 def _sandwich(fit: Fit, middle: np.ndarray) -> np.ndarray:
-    outer = fit.basis.coefficient_root * _size(fit)
+    outer = fit.basis.coefficient_root * fit.length
     matrix = outer @ middle @ outer.T
     return 0.5 * (matrix + matrix.T)
 
@@ -238,14 +219,14 @@ def _covariance(
     fit: Fit, kind: str, method: str, args: Mapping[str, Any], matrix: np.ndarray, level: float, note: str,
     details: Mapping[str, Any] | None = None,
 ) -> Covariance:
-    errors = np.sqrt(np.maximum(np.diag(matrix), 0.0))
+    errors = np.sqrt(np.maximum(matrix.diagonal(), 0.0))
     # Rounding alone makes this much.
-    least = ROUNDINGS * EPS * np.linalg.norm(fit.basis.coefficient_root, axis=1) * float(np.sqrt(fit.rss))
+    least = (ROUNDINGS * EPS * fit.length) * fit.basis.root_lengths
     if not (errors > least).all():
         errors = np.where(errors > least, errors, np.nan)
         note += "; no error where only rows of leverage 1 determine a coefficient"
     t = fit.coefficients / errors
-    half = float(stdtrit(fit.df, 0.5 + level / 2)) * errors
+    half = fit.quantile(level) * errors
     return Covariance(
         kind=kind, method=method, args=args, matrix=matrix, standard_errors=errors, t=t,
         p=2.0 * stdtr(fit.df, -np.abs(t)), low=fit.coefficients - half, high=fit.coefficients + half, note=note,

@@ -121,6 +121,10 @@ class Fit:
         return self.leverage >= 1.0 - 100.0 * self.p * EPS
 
     @cached_property
+    def some_fit_themselves(self) -> bool:
+        return bool(self.fits_itself.any())
+
+    @cached_property
     def unscaled_covariance(self) -> np.ndarray:
         """(X'X)^-1, (p, p), the constant first: coefficients' covariance divided by sigma squared."""
         return self.basis.coefficient_root @ self.basis.coefficient_root.T
@@ -129,7 +133,7 @@ class Fit:
     def standard_errors(self) -> np.ndarray:
         """(p,): sigma times the root of the diagonal of (X'X)^-1."""
         sigma = 0.0 if self.perfect and self.df > 0 else self.sigma
-        return sigma * np.linalg.norm(self.basis.coefficient_root, axis=1)
+        return sigma * self.basis.root_lengths
 
     @cached_property
     def t(self) -> np.ndarray:
@@ -150,8 +154,19 @@ class Fit:
         if not self.has_error_bars:
             nothing = np.full(self.p, np.nan)
             return nothing, nothing
-        half = stdtrit(self.df, 0.5 + level / 2) * self.standard_errors
+        half = self.quantile(level) * self.standard_errors
         return self.coefficients - half, self.coefficients + half
+
+    def quantile(self, level: float) -> float:
+        """Of t with n - p degrees of freedom: this share lies between its negative and it."""
+        if level not in self.quantiles:
+            self.quantiles[level] = float(stdtrit(self.df, 0.5 + level / 2))
+        return self.quantiles[level]
+
+    @cached_property
+    def quantiles(self) -> dict[float, float]:
+        """Those asked for so far."""
+        return {}
 
     @cached_property
     def fitted_about_mean(self) -> np.ndarray:

@@ -9,7 +9,7 @@ from scipy.special import stdtr
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import ROUNDINGS, listed
-from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 
 # Where a row holds this share of the residual variance, that of the others is computed anew instead of subtracted.
@@ -45,17 +45,21 @@ class RowMeasures:
         return float(self.leave_one_out @ self.leave_one_out)
 
 
+@once_per_fit
 def row_measures(fit: Fit) -> RowMeasures:
     """Measures of every row (Belsley, Kuh and Welsch 1980, Regression Diagnostics, chapter 2; Cook 1977)."""
     h = fit.leverage
     if not fit.has_error_bars:
         nothing = np.full(fit.n, np.nan)
         return RowMeasures(h, nothing, nothing, nothing, nothing, nothing, nothing, nothing, np.zeros(fit.n, bool))
-    gap = np.where(fit.fits_itself, np.nan, 1.0 - h)
+    gap = 1.0 - h
+    if fit.some_fit_themselves:
+        gap[fit.fits_itself] = np.nan
+    root = np.sqrt(gap)
     leave_one_out = fit.residuals / gap
-    internal = fit.residuals / (fit.sigma * np.sqrt(gap))
+    internal = fit.residuals / (fit.sigma * root)
     without = _sigma_without(fit, internal, leave_one_out)
-    external = fit.residuals / (np.where(without > 0.0, without, np.nan) * np.sqrt(gap))
+    external = fit.residuals / (np.where(without > 0.0, without, np.nan) * root)
     ratio = h / gap
     return RowMeasures(
         h, internal, external, leave_one_out, internal**2 * ratio / fit.p, external * np.sqrt(ratio),
@@ -148,7 +152,7 @@ def press(fit: Fit) -> Result:
     refusal = refused(fit, "press", {}, variant, "")
     if refusal:
         return refusal
-    if fit.fits_itself.any():
+    if fit.some_fit_themselves:
         rows = [str(int(row)) for row in fit.design.rows[fit.fits_itself]]
         return DoesNotApply(
             method="press", args={}, variant=variant, cell_error="#NUM!",

@@ -34,14 +34,11 @@ def dfbetas(fit: Fit, measures: RowMeasures) -> np.ndarray:
 
 def _standardized_changes(fit: Fit) -> np.ndarray:
     """(n, p): (b_j - b_j without row i) / sqrt((X'X)^-1_jj)."""
-    basis = fit.basis
     with np.errstate(divide="ignore", invalid="ignore"):
-        alone = np.where(fit.fits_itself, np.nan, fit.residuals / (1.0 - fit.leverage))
-    root = basis.coefficient_root
-    directions = root / np.linalg.norm(root, axis=1)[:, None]
-    if basis.intercept:
-        along = basis.q @ directions[:, 1:].T + directions[:, 0] / np.sqrt(fit.n)
-    else:
-        along = basis.q @ directions.T
+        alone = fit.residuals / (1.0 - fit.leverage)
+    if fit.some_fit_themselves:
+        alone[fit.fits_itself] = np.nan
+    directions = fit.basis.coefficient_root / fit.basis.root_lengths[:, None]
+    along = fit.orthonormal[:-1].T @ directions.T
     along *= alone[:, None]
     return along
