@@ -29,7 +29,9 @@ def orders(calc, tmp_path_factory):
 
 def ask(calc, document, formula):
     """What is said of a formula in Rates.Z1."""
-    type_formula(select(document, "Rates", "Z1"), "Z1", formula)
+    sheet = select(document, "Rates", "Z1")
+    type_formula(sheet, "Z5", "=NA()")
+    type_formula(sheet, "Z1", formula)
     return press(calc, document, "why")
 
 
@@ -45,6 +47,8 @@ def ask(calc, document, formula):
         ('=FIT_DURBIN_WATSON_P(Orders.D5:D30;Orders.E5:E30;"sideways")', ["gives #VALUE!.", "sideways"]),
         ("=FIT_VIF(OFFSET(Orders.E5;0;0;10;2))", ["the argument OFFSET(", "is itself computed"]),
         ("=FIT_VIF(#REF!.A1:A9)", ["Z1"]),
+        ("=FIT_VIF({1;2;4|2;3;9})", ["Err:504", "not lists in braces"]),
+        ("=FIT_DURBIN_WATSON(Orders.D5:D9;Orders.E5:E9;;Z3:Z7)", ["Err:504", "must hold no error value"]),
     ],
 )
 def test_what_is_said_of_a_formula(calc, orders, formula, sentences):

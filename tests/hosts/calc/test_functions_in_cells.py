@@ -193,6 +193,18 @@ def test_an_option_may_stand_in_a_cell(jobs):
     assert cell.Value == pytest.approx(expected, rel=1e-12)
 
 
+@pytest.mark.xfail(strict=True, reason="an error value in an optional range: LibreOffice refuses the call, Err:504")
+def test_an_error_in_the_order_leaves_its_row_out(jobs):
+    fill(jobs, "F1:F41", [["order"], ["=NA()"], *[[float(-row)] for row in range(39)]])
+    try:
+        cell = type_formula(jobs, "H1", "=FIT_DURBIN_WATSON(A1:A41;B1:C41;;F1:F41)")
+        order = Block.from_rows([["order"], ["#N/A"], *[[float(-row)] for row in range(39)]])
+        expected = sheetfuncs.evaluate("FIT_DURBIN_WATSON", block("A1:A41"), block("B1:C41"), None, order)
+        assert cell.Value == pytest.approx(expected, rel=1e-12)
+    finally:
+        jobs.getCellRangeByName("F1:H41").clearContents(1023)
+
+
 def test_text_stays_text(jobs):
     """A result is never read as a formula."""
     type_formula(jobs, "F1", '="=1+1"')

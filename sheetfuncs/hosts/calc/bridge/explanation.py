@@ -14,6 +14,12 @@ from sheetfuncs_bridge.client import CELLS, EXTENSION
 
 SERVICE = "org.sheetfuncs.calc.functions."
 ONE_CELL = "Select the one cell whose value you ask about: a cell with a formula such as =FIT_DURBIN_WATSON(...)."
+REFUSED_BY_LIBREOFFICE = (
+    "Err:504 is LibreOffice's own: it did not hand the arguments over. The column of the order must hold no error "
+    "value; and data must be ranges of cells, not lists in braces or ranges joined by ~. With the arguments as they "
+    "stand in the cells:"
+)
+_PARAMETER_ERROR = 504
 _SPECIAL = 0  # com.sun.star.sheet.FormulaMapGroup, and the places of what follows in FormulaMapGroupSpecialOffset
 _PUSH, _NAME, _MISSING, _SPACES = 0, 4, 6, 8
 _COLUMN_RELATIVE, _ROW_RELATIVE, _SHEET_RELATIVE, _DELETED = 1, 4, 16, 2 | 8 | 32  # com.sun.star.sheet.ReferenceFlags
@@ -34,6 +40,8 @@ def explain(document, controller) -> str:
     texts = []
     for name, arguments in calls:
         texts.append(_reason(formula, name, arguments))
+    if cell.getError() == _PARAMETER_ERROR:
+        texts.insert(0, REFUSED_BY_LIBREOFFICE)
     return f"{where}: " + "\n\n".join(dict.fromkeys(texts))
 
 
