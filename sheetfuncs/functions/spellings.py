@@ -3,6 +3,7 @@
     FIT_VIF(                                  plain: what is typed, and what we write
     _xlfn.FIT_VIF(  _xludf.  _xll.            a program that did not know the function when it saved (MS-XLSX 2.2.2)
     [1]!FIT_VIF(                              a function of an add-in; 1 counts the workbook's external links
+    #REF!1!FIT_VIF(                           the same after Calc, without our extension, saved it as .ods
     ORG.SHEETFUNCS.CALC.FUNCTIONS.FITVIF(     LibreOffice Calc
 
 Only the standard library, and nothing newer than Python 3.8: the extension for Calc carries a copy of this file.
@@ -22,6 +23,7 @@ _TOKEN = re.compile(
       "[^"]*"                                                               # a text; a quote in it is written twice
     | '[^']*' (?: !{_IDENTIFIER} )?                                         # a quoted sheet, and what it qualifies
     | \[(?P<link>\d{{1,5}})\]! (?P<linked>{_IDENTIFIER}) (?=[\s\0]*\()      # a call into another file
+    | \#REF!(?:\d{{0,5}}!|\s)? (?P<lost>{_IDENTIFIER}) (?=[\s\0]*\()         # the same, its link lost
     | \[ (?: '. | [^\[\]'] | \[ (?: '. | [^\[\]'] )* \] )* \]               # columns of a table, or another file
       (?: {_IDENTIFIER} )? (?: !{_IDENTIFIER} )?
     | (?P<call>{_IDENTIFIER}) (?=[\s\0]*\()
@@ -78,7 +80,7 @@ class Spellings:
 def calls(formula: str) -> Iterator[Call]:
     """Every call of a function by its name, in order."""
     for match in _TOKEN.finditer(formula):
-        name = match["call"] or match["linked"]
+        name = match["call"] or match["linked"] or match["lost"]
         if name:
             yield Call(match.start(), match.end(), name, int(match["link"]) if match["link"] else None)
 

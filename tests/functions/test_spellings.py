@@ -33,6 +33,8 @@ def test_every_function_comes_back_from_every_spelling(name):
         ("_xlfn.FIT_VIF('It''s fit_vif(x) here'!A1)", "FIT_VIF('It''s fit_vif(x) here'!A1)"),
         ("_xlfn.FIT_VIF([1]Jobs!A1,'[1]Job list'!A1,Jobs[[#All],[fit_vif(x)]])",
          "FIT_VIF([1]Jobs!A1,'[1]Job list'!A1,Jobs[[#All],[fit_vif(x)]])"),
+        ("1+#REF!1!fit_vif(A1)+#REF!!ORG.SHEETFUNCS.CALC.FUNCTIONS.FITVIF(A1)+#REF! fit_vif(A1)+#REF!1!other(A1)",
+         "1+FIT_VIF(A1)+FIT_VIF(A1)+FIT_VIF(A1)+#REF!1!other(A1)"),
         ("fit_vif(A1)&\"fit_vif(\"\"A1\"\")\"&fit_vif(A2)", "FIT_VIF(A1)&\"fit_vif(\"\"A1\"\")\"&FIT_VIF(A2)"),
     ],
 )  # fmt: skip

@@ -9,6 +9,7 @@ from pathlib import Path
 
 import formula_books as books
 import pytest
+from office import Calc, load_uno
 
 import sheetfuncs
 from sheetfuncs.hosts.files import Request, check_book, evaluate_cell
@@ -234,6 +235,40 @@ def test_by_way_of_ods_and_back(calc, tmp_path):
         assert not document.isModified()
         save_as(calc, document, last, XLSX)
     assert_plain(last, without=(books.OTHER.first,))
+
+
+@pytest.fixture(scope="module")
+def bare_calc(tmp_path_factory):
+    """A LibreOffice without our extension, for what a colleague who has none sees and saves."""
+    load_uno()
+    program = Calc(tmp_path_factory.mktemp("bare") / "profile")
+    try:
+        yield program
+    finally:
+        program.stop()
+
+
+@pytest.mark.parametrize("form", [XLSX, ODS])
+def test_by_way_of_a_colleague_without_the_extension(calc, bare_calc, tmp_path, form):
+    calculated = ("G2", "H2", "E6", "E7", "E8")  # array and shared formulas, which Calc calculates at once
+    saved = {}
+    for spelling in books.SPELLINGS:
+        path = books.write_book(tmp_path / f"{spelling}.xlsx", spelling, without=(books.OTHER,))
+        saved[spelling] = path.with_suffix(".ods") if form == ODS else path.with_suffix(".again.xlsx")
+        with loaded(bare_calc, path) as document:
+            assert [cell(document, address).Value for address in ("E2", "E3", "E4", "E10")] == [books.STORED] * 4
+            assert [cell(document, address).String for address in calculated] == ["#NAME?"] * 5
+            save_as(bare_calc, document, saved[spelling], form)
+            document.calculateAll()
+            assert cell(document, "E2").String == "#NAME?"
+    for spelling, path in saved.items():
+        with loaded(calc, path) as document:
+            assert_right(document)
+            if (spelling, form) != ("linked", XLSX):  # there Calc drops a defined name whose link it lost
+                right = sheetfuncs.evaluate("FIT_VIF", books.PANELS, 1)
+                assert cell(document, "E10").Value == pytest.approx(2 * right, rel=1e-12)
+                save_as(calc, document, tmp_path / "last.xlsx", XLSX)
+                assert_plain(tmp_path / "last.xlsx", without=(books.OTHER.first,))
 
 
 def test_from_excel_by_the_files_host_to_calc_and_back(calc, tmp_path):
