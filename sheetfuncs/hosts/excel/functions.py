@@ -7,7 +7,9 @@ the functions can be called all the same.
 
 from __future__ import annotations
 
+import atexit
 import inspect
+import sys
 from collections import OrderedDict
 from collections.abc import Callable
 from typing import Any
@@ -92,4 +94,15 @@ def _marked(function: WorksheetFunction) -> Callable[..., object]:
     return xw.func(category=CATEGORY)(called)  # last, since arg sets the category back to its default
 
 
+def _leave_other_excels_alone() -> None:
+    """Take back what xlwings does on Windows when Python ends: it ends every Excel without a window.
+
+    Such an Excel may be at work for another program of the user's. We start none, so there is none of ours to end.
+    """
+    windows_side = sys.modules.get("xlwings._xlwindows")
+    if windows_side is not None:
+        atexit.unregister(windows_side.cleanup)
+
+
 globals().update({name: _marked(function) for name, function in REGISTRY.items()})
+_leave_other_excels_alone()

@@ -141,6 +141,8 @@ def macro_runs(xlwings) -> str:
 
 def main() -> None:
     xlwings = windows_stubs.load_xlwings()
+    # At its end Python would end every Excel without a window, also those of other programs. This would be seen.
+    xlwings._xlwindows.Apps.cleanup = staticmethod(lambda: print("Other Excels were looked for."))
     server = xlwings.com_server.XLPython()
     answers = {
         name: {title: server.CallUDF(MODULE, name, tuple(map(sent, given))) for title, given in cases(name)}

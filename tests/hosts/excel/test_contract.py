@@ -31,6 +31,7 @@ def inside():
         env=environment,
     )
     assert run.returncode == 0, run.stderr
+    assert "Other Excels" not in run.stdout
     return json.loads(run.stdout)
 
 
