@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from math import exp, log, sqrt
+
 import numpy as np
 from scipy.special import chdtrc, ndtr, ndtri
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import ROUNDINGS
-from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 
 NORMAL = "the errors are normal"
@@ -39,7 +41,7 @@ def shapiro_wilk(fit: Fit) -> Result:
         return DoesNotApply(
             method="shapiro_wilk", args={}, variant="Royston 1995", null=NORMAL, reason=EQUAL, cell_error="#NUM!"
         )
-    w, p = shapiro_wilk_of(fit.residuals)
+    w, p = shapiro_wilk_of(fit.sorted_residuals)
     return Statistic(
         method="shapiro_wilk", args={}, variant="Royston 1995", statistic=w, p=p, null=NORMAL, note=RESIDUALS_NOTE
     )
@@ -51,9 +53,9 @@ def shapiro_wilk_of(values: np.ndarray) -> tuple[float, float]:
     n = x.shape[0]
     x = (x - x[n // 2]) / (x[-1] - x[0])
     weights = _shapiro_weights(n)
-    left = x - x.mean()
+    left = x - np.add.reduce(x) / n
     along, total = float(weights @ left), float(left @ left)
-    size = float(np.sqrt(weights @ weights * total))
+    size = sqrt(float(weights @ weights) * total)
     missing = (size - along) * (size + along) / size**2  # 1 - W without cancellation
     return 1.0 - missing, _shapiro_p(max(missing, 1e-19), n)
 
@@ -63,34 +65,36 @@ def _shapiro_weights(n: int) -> np.ndarray:
         return np.array([-np.sqrt(0.5), 0.0, np.sqrt(0.5)])
     half = n // 2
     m = ndtri((np.arange(1, half + 1) - 0.375) / (n + 0.25))
-    length = 2.0 * float(m @ m)
-    step = 1.0 / np.sqrt(n)
-    first = _polynomial(_C1, step) - m[0] / np.sqrt(length)
-    weights = -m
+    length, lowest = 2.0 * float(m @ m), float(m[0])
+    step = 1.0 / sqrt(n)
+    first = _polynomial(_C1, step) - lowest / sqrt(length)
+    weights = np.zeros(n)
     if n > 5:
-        second = _polynomial(_C2, step) - m[1] / np.sqrt(length)
-        scale = (length - 2 * m[0] ** 2 - 2 * m[1] ** 2) / (1 - 2 * first**2 - 2 * second**2)
-        weights = weights / np.sqrt(scale)
-        weights[:2] = first, second
+        next_lowest = float(m[1])
+        second = _polynomial(_C2, step) - next_lowest / sqrt(length)
+        scale = (length - 2 * lowest**2 - 2 * next_lowest**2) / (1 - 2 * first**2 - 2 * second**2)
+        weights[:half] = m / sqrt(scale)
+        weights[:2] = -first, -second
     else:
-        weights = weights / np.sqrt((length - 2 * m[0] ** 2) / (1 - 2 * first**2))
-        weights[0] = first
-    return np.concatenate([-weights, np.zeros(n % 2), weights[::-1]])
+        weights[:half] = m / sqrt((length - 2 * lowest**2) / (1 - 2 * first**2))
+        weights[0] = -first
+    weights[n - half :] = -weights[half - 1 :: -1]
+    return weights
 
 
 def _shapiro_p(missing: float, n: int) -> float:
     if n == 3:  # exact
         return float(max(0.0, 6.0 / np.pi * (np.arcsin(np.sqrt(1.0 - missing)) - np.arcsin(np.sqrt(0.75)))))
-    y = np.log(missing)
+    y = log(missing)
     if n <= 11:
         limit = _polynomial(_G, float(n))
         if y >= limit:
             return 0.0
-        y = -np.log(limit - y)
-        mean, spread = _polynomial(_C3, float(n)), np.exp(_polynomial(_C4, float(n)))
+        y = -log(limit - y)
+        mean, spread = _polynomial(_C3, float(n)), exp(_polynomial(_C4, float(n)))
     else:
-        size = float(np.log(n))
-        mean, spread = _polynomial(_C5, size), np.exp(_polynomial(_C6, size))
+        size = log(n)
+        mean, spread = _polynomial(_C5, size), exp(_polynomial(_C6, size))
     return float(ndtr((mean - y) / spread))
 
 
@@ -112,8 +116,7 @@ def jarque_bera(fit: Fit) -> Result:
         return DoesNotApply(
             method="jarque_bera", args={}, variant=variant, null=NORMAL, reason=EQUAL, cell_error="#NUM!"
         )
-    skewness, kurtosis = shape(fit.residuals)
-    statistic = fit.n / 6.0 * (skewness**2 + (kurtosis - 3.0) ** 2 / 4.0)
+    skewness, kurtosis, statistic = residual_shape(fit)
     return Statistic(
         method="jarque_bera", args={}, variant=variant, statistic=statistic, df=2, p=float(chdtrc(2, statistic)),
         null=NORMAL, note="The chi-square distribution is approached slowly; with few rows read p as rough.",
@@ -123,15 +126,24 @@ def jarque_bera(fit: Fit) -> Result:
 
 def all_equal(fit: Fit) -> bool:
     """Whether the residuals differ by rounding only: possible without an intercept."""
-    return float(np.ptp(fit.residuals)) <= ROUNDINGS * fit.noise
+    lowest_first = fit.sorted_residuals
+    return float(lowest_first[-1] - lowest_first[0]) <= ROUNDINGS * fit.noise
+
+
+@once_per_fit
+def residual_shape(fit: Fit) -> tuple[float, float, float]:
+    """Skewness and kurtosis of the residuals, as `shape`, and Jarque and Bera's statistic of them."""
+    skewness, kurtosis = shape(fit.residuals)
+    return skewness, kurtosis, fit.n / 6.0 * (skewness**2 + (kurtosis - 3.0) ** 2 / 4.0)
 
 
 def shape(values: np.ndarray) -> tuple[float, float]:
     """Skewness and kurtosis (3 is normal) of values that are not all equal, moments about the mean with divisor n."""
-    left = values - values.mean()
-    left = left / np.abs(left).max()
+    n = values.shape[0]
+    left = values - np.add.reduce(values) / n
+    left /= max(float(left.max()), -float(left.min()))
     square = left * left
-    n, second = left.shape[0], float(square.mean())
+    second = float(np.add.reduce(square)) / n
     return float(square @ left) / n / second**1.5, float(square @ square) / n / second**2
 
 

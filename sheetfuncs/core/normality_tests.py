@@ -2,15 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
 from math import asinh, cbrt, copysign, exp, log, sqrt
 
 import numpy as np
 from scipy.special import chdtrc, log_ndtr, ndtr
 
 from sheetfuncs.core.auxiliary import refused
-from sheetfuncs.core.fit import Fit
-from sheetfuncs.core.normality import EQUAL, NORMAL, RESIDUALS_NOTE, all_equal, shape
+from sheetfuncs.core.fit import Fit, once_per_fit
+from sheetfuncs.core.normality import EQUAL, NORMAL, RESIDUALS_NOTE, all_equal, residual_shape
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 from sheetfuncs.core.simulated_tables import BELOW, LOWEST_P, SimulatedTable, simulated_table
 
@@ -52,15 +51,17 @@ def anderson_darling(fit: Fit) -> Result:
 def _anderson_darling_of(z: np.ndarray) -> float:
     """A squared of sorted standardized values."""
     n = z.shape[0]
-    tail = ndtr(-np.abs(z))
+    away = -np.abs(z)
+    tail = ndtr(away)
     smallest = min(float(tail[0]), float(tail[-1]))
-    outer = np.log(tail) if smallest > 1e-300 else log_ndtr(-np.abs(z))
+    outer = np.log(tail) if smallest > 1e-300 else log_ndtr(away)
     inner = np.log1p(-tail)
-    middle = int(np.searchsorted(z, 0.0))
-    below = np.concatenate([outer[:middle], inner[middle:]])
-    above = np.concatenate([inner[:middle], outer[middle:]])
+    middle = int(z.searchsorted(0.0))
+    both = np.empty((2, n))  # logarithms of F(z_i), and of 1 - F(z_i)
+    both[0, :middle], both[0, middle:] = outer[:middle], inner[middle:]
+    both[1, :middle], both[1, middle:] = inner[:middle], outer[middle:]
     weight = np.arange(1.0, 2.0 * n, 2.0)
-    return -n - float(np.sum(weight * (below + above[::-1]))) / n
+    return -n - float(np.sum(weight * (both[0] + both[1, ::-1]))) / n  # not by a product: it adds up less exactly
 
 
 def _anderson_darling_p(a: float) -> float:
@@ -86,9 +87,11 @@ def lilliefors(fit: Fit) -> Result:
         return refusal
     d = _distance(_standardized(fit))
     root = sqrt(fit.n)
-    return _from_table(fit, table, d * (root - 0.01 + 0.85 / root), Statistic(
-        method="lilliefors", args={}, variant=variant, statistic=d, null=NORMAL, note=RESIDUALS_NOTE,
-    ))
+    p, error, note = _from_table(fit, table, d * (root - 0.01 + 0.85 / root))
+    return Statistic(
+        method="lilliefors", args={}, variant=variant, statistic=d, p=p, null=NORMAL, note=note,
+        details={"simulation_error": error},
+    )
 
 
 def _distance(z: np.ndarray) -> float:
@@ -107,12 +110,12 @@ def jarque_bera_small_sample(fit: Fit) -> Result:
     refusal = _refused(fit, "jarque_bera", variant, table.fewest, "its table holds", SMALL_SAMPLE)
     if refusal:
         return refusal
-    skewness, kurtosis = shape(fit.residuals)
-    statistic = fit.n / 6.0 * (skewness**2 + (kurtosis - 3.0) ** 2 / 4.0)
-    return _from_table(fit, table, statistic, Statistic(
-        method="jarque_bera", args=SMALL_SAMPLE, variant=variant, statistic=statistic, null=NORMAL,
-        note=RESIDUALS_NOTE, details={"skewness": skewness, "kurtosis": kurtosis},
-    ))
+    skewness, kurtosis, statistic = residual_shape(fit)
+    p, error, note = _from_table(fit, table, statistic)
+    return Statistic(
+        method="jarque_bera", args=SMALL_SAMPLE, variant=variant, statistic=statistic, p=p, null=NORMAL, note=note,
+        details={"skewness": skewness, "kurtosis": kurtosis, "simulation_error": error},
+    )
 
 
 def dagostino_k2(fit: Fit) -> Result:
@@ -127,7 +130,7 @@ def dagostino_k2(fit: Fit) -> Result:
     refusal = _refused(fit, "dagostino_k2", variant, DAGOSTINO_FEWEST, "its transformation of the kurtosis is valid")
     if refusal:
         return refusal
-    skewness, kurtosis = shape(fit.residuals)
+    skewness, kurtosis, _ = residual_shape(fit)
     along, across = _z_skewness(skewness, fit.n), _z_kurtosis(kurtosis, fit.n)
     statistic = along**2 + across**2
     few = f" Below {KURTOSIS_FEWEST} rows its kurtosis part is unreliable." if fit.n < KURTOSIS_FEWEST else ""
@@ -181,17 +184,17 @@ def _refused(
     )
 
 
+@once_per_fit
 def _standardized(fit: Fit) -> np.ndarray:
     """(n,): sorted residuals less their mean, over their standard deviation with divisor n - 1."""
     e = fit.sorted_residuals
-    left = e - e.mean()
-    size = max(float(left[-1]), -float(left[0]))
-    left /= size
-    return left / sqrt(float(left @ left) / (fit.n - 1))
+    left = e - np.add.reduce(e) / fit.n
+    left /= max(float(left[-1]), -float(left[0]))
+    left /= sqrt(float(left @ left) / (fit.n - 1))
+    return left
 
 
-def _from_table(fit: Fit, table: SimulatedTable, value: float, found: Statistic) -> Statistic:
-    """The statistic with p and its simulation error from the table."""
+def _from_table(fit: Fit, table: SimulatedTable, value: float) -> tuple[float, float, str]:
+    """p, its simulation error, and the note that belongs to it."""
     p, error = table.p(value, fit.n)
-    lowest = f" p {BELOW}, where the table ends." if p <= LOWEST_P else ""
-    return replace(found, p=p, note=found.note + lowest, details={**found.details, "simulation_error": error})
+    return p, error, RESIDUALS_NOTE + (f" p {BELOW}, where the table ends." if p <= LOWEST_P else "")

@@ -62,7 +62,7 @@ def portmanteau_tests(fit: Fit, lags: Sequence[int]) -> tuple[Result, ...]:
     """`ljung_box`, then `box_pierce`, each at all these numbers of lags, from one set of autocorrelations."""
     whole = tuple(_whole(count) for count in lags)
     possible = max((count for count in whole if count < fit.n), default=0)
-    r = _autocorrelations(fit, possible) if possible and not fit.nothing_left() else None
+    r = _autocorrelations(fit, possible) if possible and fit.has_error_bars else None
     return (*_portmanteau(fit, "ljung_box", whole, r), *_portmanteau(fit, "box_pierce", whole, r))
 
 
@@ -86,10 +86,19 @@ def autocorrelation_table(fit: Fit, lags: int) -> Autocorrelations:
 
 
 def _portmanteau(fit: Fit, method: str, lags: Sequence[int], known: np.ndarray | None = None) -> tuple[Result, ...]:
-    return tuple(_portmanteau_test(fit, method, _whole(count), known) for count in lags)
+    counts = [_whole(count) for count in lags]
+    possible = max((count for count in counts if count < fit.n), default=0)
+    r = known if known is not None else _autocorrelations(fit, possible) if possible and fit.has_error_bars else None
+    sums = None if r is None else fit.n * np.add.accumulate(r**2 * _weights(fit.n, r.shape[0], method))
+    return tuple(_portmanteau_test(fit, method, count, sums) for count in counts)
 
 
-def _portmanteau_test(fit: Fit, method: str, lags: int, known: np.ndarray | None) -> Result:
+def _weights(n: int, lags: int, method: str) -> np.ndarray | float:
+    return (n + 2.0) / (n - np.arange(1.0, lags + 1.0)) if method == "ljung_box" else 1.0
+
+
+def _portmanteau_test(fit: Fit, method: str, lags: int, sums: np.ndarray | None) -> Result:
+    """sums: the statistic up to each lag; None where the residuals are alike."""
     named: dict[str, Any] = {
         "method": method, "args": {"lag": lags, "fitdf": 0}, "variant": f"{lags} lag{'s' if lags > 1 else ''}",
         "null": NO_CORRELATION,
@@ -97,21 +106,18 @@ def _portmanteau_test(fit: Fit, method: str, lags: int, known: np.ndarray | None
     refusal = refused(fit, **named)
     if refusal:
         return refusal
-    n = fit.n
-    if lags >= n:
-        return DoesNotApply(**named, reason=_too_few(n, lags), cell_error="#NUM!")
-    r = _autocorrelations(fit, lags) if known is None else known[:lags]
-    if r is None:
+    if lags >= fit.n:
+        return DoesNotApply(**named, reason=_too_few(fit.n, lags), cell_error="#NUM!")
+    if sums is None:
         return DoesNotApply(**named, reason=_ALIKE, cell_error="#NUM!")
-    weights = (n + 2.0) / (n - np.arange(1.0, lags + 1.0)) if method == "ljung_box" else np.ones(lags)
-    statistic = n * float(weights @ r**2)
+    statistic = float(sums[lags - 1])
     return Statistic(**named, statistic=statistic, df=lags, p=float(chdtrc(lags, statistic)), note=_NOTE)
 
 
 def _autocorrelations(fit: Fit, lags: int) -> np.ndarray | None:
     """r_1 .. r_lags, (lags,); None where the residuals do not vary."""
     e = fit.design.in_order(fit.residuals)
-    mean = float(e.mean())
+    mean = float(np.add.reduce(e)) / fit.n
     if not fit.design.intercept:
         e = e - mean
     total = float(e @ e)
