@@ -128,6 +128,38 @@ def test_cells_of_every_kind_among_the_data(document):
     assert "#DIV/0!" in why
 
 
+def test_data_that_are_themselves_our_results(document):
+    """Reading a range then calls a function within the call of another."""
+    sheet, rows = document.Sheets.getByIndex(0), invented(20, 7)
+    fill(sheet, "A1:C20", rows)
+    cell = type_formula(sheet, "H1", "=FIT_DURBIN_WATSON(G1:G20;B1:B20)")
+    type_formula(sheet, "G1:G20", "=FIT_FITTED(F1:F20;C1:C20)")
+    type_formula(sheet, "F1:F20", "=FIT_RESIDUALS(A1:A20;B1:B20)")
+    for value in (8.0, 2.0):
+        rows[3][0] = value
+        sheet.getCellByPosition(0, 3).Value = value
+        third = [row[2:] for row in rows]
+        first = sheetfuncs.evaluate("FIT_RESIDUALS", [row[:1] for row in rows], [row[1:2] for row in rows])
+        second = sheetfuncs.evaluate("FIT_FITTED", first, third)
+        expected = sheetfuncs.evaluate("FIT_DURBIN_WATSON", second, [row[1:2] for row in rows])
+        assert cell.Value == pytest.approx(expected, rel=1e-9)  # the data themselves agree to 1e-12
+        found = [one[0] for one in sheet.getCellRangeByName("G1:G20").getDataArray()]
+        assert found == pytest.approx([one[0] for one in second], rel=1e-12)
+
+
+def test_a_formula_filled_down_many_rows(document):
+    """As many equal formulas below each other as LibreOffice would share among threads."""
+    sheet, rows = document.Sheets.getByIndex(0), invented(320, 8)
+    fill(sheet, "A1:C320", rows)
+    type_formula(sheet, "E1", "=FIT_DURBIN_WATSON(A1:A20;B1:C20)")
+    from com.sun.star.sheet.FillDirection import TO_BOTTOM
+
+    sheet.getCellRangeByName("E1:E300").fillAuto(TO_BOTTOM, 1)
+    document.calculateAll()
+    found = [one[0] for one in sheet.getCellRangeByName("E1:E300").getDataArray()]
+    assert found == pytest.approx([durbin_watson(rows[row:row + 20]) for row in range(300)], rel=1e-12)
+
+
 def test_two_documents_keep_apart(calc, document):
     other = calc.new_document()
     try:
