@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     import xlwings as xw
 
-_HELD = {"screen_updating": False, "display_alerts": False, "enable_events": False}
+_TURNED_OFF = ("screen_updating", "display_alerts", "enable_events")
 
 Step = Callable[[str], None]
 
@@ -18,14 +18,15 @@ Step = Callable[[str], None]
 def held_still(app: xw.App) -> Iterator[Step]:
     """Gives a function that shows a step in the status bar. Every setting is restored, whatever happens."""
     with ExitStack() as restoring:
-        for name in ("status_bar", *_HELD):
-            restoring.callback(_restore, app, name, getattr(app, name))
-        for name, value in _HELD.items():
-            setattr(app, name, value)
-        yield lambda text: _restore(app, "status_bar", f"sheetfuncs: {text}")
+        for name in ("status_bar", *_TURNED_OFF):
+            with suppress(Exception):  # a setting that Excel does not tell is none that we change and restore
+                restoring.callback(_set, app, name, getattr(app, name))
+                if name in _TURNED_OFF:
+                    setattr(app, name, False)
+        yield lambda text: _set(app, "status_bar", f"sheetfuncs: {text}")
 
 
-def _restore(app: xw.App, name: str, value: Any) -> None:
+def _set(app: xw.App, name: str, value: Any) -> None:
     # A setting that Excel does not take now must not hide the failure that led here, nor keep the others from it.
     with suppress(Exception):
         setattr(app, name, value)

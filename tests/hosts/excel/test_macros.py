@@ -281,9 +281,12 @@ def test_what_nobody_foresaw_becomes_a_sentence(app, monkeypatch):
     assert app.active.state() == before
 
 
-def test_a_setting_that_cannot_be_restored_does_not_keep_the_others_from_it(app):
-    app.fail["status_bar"] = ExcelError("busy")
-    assert press(app).startswith(FOUND)
+@pytest.mark.parametrize("setting", ["status_bar", "screen_updating", "display_alerts", "enable_events"])
+def test_a_setting_that_excel_does_not_take_keeps_nothing_else_from_its_place(app, setting):
+    app.fail[setting] = ExcelError("busy")
+    macros.check_selection()
+    assert app.alerts[0][1].startswith(FOUND)
+    assert (app.screen_updating, app.display_alerts, app.enable_events, app.status_bar) == (True, True, True, False)
 
 
 def test_a_protected_structure_is_said_before_anything_is_done(app):
