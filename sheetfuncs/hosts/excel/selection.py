@@ -36,11 +36,18 @@ def selected_cells(book: xw.Book) -> xw.Range | None:
     """The selected cells; None where something else is selected.
 
     Not xlwings' own Book.selection, which counts the cells, and of those of a whole sheet there are too many for Excel.
+    Raises AddressError where another workbook has come to the front since the button was pressed, as it may on macOS.
     """
     import xlwings as xw
 
     found = book.app.impl.selection
-    return None if found is None else xw.Range(impl=found)
+    if found is None:
+        return None
+    cells = xw.Range(impl=found)
+    in_front = cells.sheet.book.name
+    if in_front != book.name:
+        raise AddressError(f"{in_front} came to the front meanwhile: go to {book.name}, and press the button again.")
+    return cells
 
 
 def place_of_selection(selection: xw.Range | None) -> Place:

@@ -297,6 +297,15 @@ def test_a_protected_structure_is_said_before_anything_is_done(app):
     assert app.opened == []
 
 
+def test_a_workbook_that_came_to_the_front_meanwhile_is_left_alone(app):
+    other = app.add("Other.xlsx")
+    other.add("Sheet1").put(1, 1, invented_jobs())
+    other.active.selected = "A1"
+    before = [book.state() for book in app.books]
+    assert press(app) == "Other.xlsx came to the front meanwhile: go to Invented jobs.xlsx, and press the button again."
+    assert [book.state() for book in app.books] == before
+
+
 def test_a_new_workbook_and_one_open_for_reading_both_work(app):
     app.active.name, app.active.read_only = "Book1", True
     assert press(app).endswith("save it under another name to keep the sheet.")
