@@ -43,6 +43,11 @@ def set_again(model) -> int:
     return len(found) + len(names) - left
 
 
+def names_ours(model) -> bool:
+    """Whether some cell's formula names a function of ours."""
+    return any(True for sheet in _sheets_of(model) for _ in _formulas_with(_SIGN, sheet))
+
+
 class _Formulas:
     """The formulas of a document that are to be set again, each as a Change."""
 
@@ -50,8 +55,7 @@ class _Formulas:
         self._model = model
         self._spellings = Spellings(known_names())
         self._links = None
-        sheets = model.getSheets()
-        self._sheets = [sheets.getByIndex(place) for place in range(sheets.getCount())]
+        self._sheets = _sheets_of(model)
 
     def cells(self):
         """Of cells; an array formula once, for all its cells."""
@@ -122,6 +126,11 @@ class _Change:
 
     def __init__(self, owner, name: str, formula: str):
         self.owner, self.name, self.formula = owner, name, formula
+
+
+def _sheets_of(model) -> list:
+    sheets = model.getSheets()
+    return [sheets.getByIndex(place) for place in range(sheets.getCount())]
 
 
 def _has_unknown(formula: str) -> bool:

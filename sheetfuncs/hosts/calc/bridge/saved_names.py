@@ -13,6 +13,7 @@ from pathlib import Path
 
 from sheetfuncs_bridge import client, messages
 from sheetfuncs_bridge.documents import frame_of, local_path
+from sheetfuncs_bridge.loaded_formulas import names_ours
 
 EXTENSIONS = (".xlsx", ".xlsm", ".xltx", ".xltm")
 SECONDS = 60.0
@@ -26,9 +27,12 @@ _waiting: set = set()  # files that another handle held when they were to be rew
 def write_plain_names(model) -> None:
     """Give the file that was saved plain names, where it holds others; says so where that cannot be done."""
     path = local_path(model)
-    if path is None or path.suffix.lower() not in EXTENSIONS or not _holds_other_names(path):
+    if path is None or path.suffix.lower() not in EXTENSIONS:
         return
-    trouble = _ask(path)
+    if not zipfile.is_zipfile(path):  # what a password makes of it
+        trouble = "names cannot be changed under a password." if names_ours(model) else None
+    else:
+        trouble = _ask(path) if _holds_other_names(path) else None
     if trouble:
         messages.show_status(
             frame_of(model), f"Saved, but other programs will not find the FIT_ functions in this file yet: {trouble}"
@@ -57,6 +61,7 @@ def _ask(path: Path):
     except client.WorkerTrouble as trouble:
         return str(trouble)
     if answer.status != "ok":
+        _waiting.discard(path)
         return answer.head.get("sentence", "")
     if not answer.head["busy"]:
         _waiting.discard(path)
@@ -71,7 +76,7 @@ def _holds_other_names(path: Path) -> bool:
         with zipfile.ZipFile(path) as package:
             return any(_holds(package, part) for part in package.namelist() if _may_hold_formulas(part))
     except (OSError, ValueError, NotImplementedError, RuntimeError, zipfile.BadZipFile):
-        return False  # saved under a password, for instance
+        return False
 
 
 def _may_hold_formulas(part: str) -> bool:
