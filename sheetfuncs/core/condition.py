@@ -99,6 +99,8 @@ def _near_dependencies(
     """Groups of columns. Near-dependencies of about equal strength share their columns' variance between them in any
     mixture, so that shares are summed over them (section 3.3), and groups told apart by the space that they span."""
     strong = indices >= STRONG
+    if not strong.any():
+        return ()
     held = proportions[strong].sum(axis=0)
     members = np.flatnonzero(held > HALF)
     directions = right[:, strong]

@@ -173,13 +173,18 @@ class Fit:
         """(n,): fitted values minus the response's mean, every digit kept where the response has a large offset;
         without an intercept the fitted values themselves."""
         y = self.design.response
-        return (centred(y)[0] if self.design.intercept else y) - self.residuals
+        return (self.response_about_mean if self.design.intercept else y) - self.residuals
+
+    @cached_property
+    def response_about_mean(self) -> np.ndarray:
+        """(n,): every digit kept where the response has a large offset."""
+        return centred(self.design.response)[0]
 
     @cached_property
     def tss(self) -> float:
         """Total sum of squares: about the mean with an intercept, about zero without; 0 where it is rounding only."""
         y = self.design.response
-        left = centred(y)[0] if self.design.intercept else y
+        left = self.response_about_mean if self.design.intercept else y
         total = float(left @ left)
         return total if total > (ROUNDINGS * EPS) ** 2 * float(y @ y) else 0.0
 

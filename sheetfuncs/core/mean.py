@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-import numpy as np
+from math import sqrt
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import ROUNDINGS
@@ -26,8 +26,9 @@ def residual_mean(fit: Fit) -> Result:
     refusal = refused(fit, "residual_mean", {}, variant, null)
     if refusal:
         return refusal
-    mean = float(fit.residuals.mean())
-    spread = float(np.std(fit.residuals, ddof=1))
+    mean = float(fit.residuals.sum()) / fit.n
+    left = fit.residuals - mean
+    spread = sqrt(float(left @ left) / (fit.n - 1))
     share = mean / spread if spread > ROUNDINGS * fit.noise else None
     return Statistic(
         method="residual_mean", args={}, variant=variant, statistic=mean, null=null, note=_note(fit, share),

@@ -6,7 +6,7 @@ from scipy.special import chdtrc
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import EPS, ROUNDINGS
-from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 
 CONSTANT = "the errors have the same variance whatever the predictors are"
@@ -32,21 +32,26 @@ def breusch_pagan(fit: Fit, *, studentize: bool = True) -> Result:
             reason="The test needs at least one predictor beside the intercept"
                    + ("." if fit.design.intercept else ", or two predictors without one."),
         )
-    ratio = fit.residuals**2 / (fit.rss / fit.n) - 1.0
-    total = float(ratio @ ratio)
+    part, total = _explained_squares(fit)
     if total <= fit.n * (ROUNDINGS * fit.relative_noise) ** 2:
         return DoesNotApply(
             method="breusch_pagan", args=args, variant=variant, null=CONSTANT, cell_error="#NUM!",
             reason="All residuals have the same size, so their squares show no variation to explain.",
         )
-    along = fit.basis.q.T @ ratio
-    part = float(along @ along)
     statistic = fit.n * part / total if studentize else part / 2.0
     note = "" if fit.design.intercept else "Auxiliary regression without a constant, as the fit has none."
     return Statistic(
         method="breusch_pagan", args=args, variant=variant, statistic=statistic, df=df,
         p=float(chdtrc(df, statistic)), null=CONSTANT, note=note,
     )
+
+
+@once_per_fit
+def _explained_squares(fit: Fit) -> tuple[float, float]:
+    """Sums of squares of squared residuals over their mean, less 1: what the predictors explain, and all of it."""
+    ratio = fit.residuals**2 / (fit.rss / fit.n) - 1.0
+    along = fit.basis.q.T @ ratio
+    return float(along @ along), float(ratio @ ratio)
 
 
 def breusch_pagan_fitted(fit: Fit) -> Result:

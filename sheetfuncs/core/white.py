@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from math import sqrt
 from typing import Any
 
 import numpy as np
@@ -9,7 +10,7 @@ from scipy.special import chdtrc, fdtrc
 
 from sheetfuncs.core.auxiliary import Addition, add_columns, refused
 from sheetfuncs.core.basis import DETERMINED, ROUNDINGS
-from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.products import PRODUCTS_AT_MOST, explain_by_products, explain_if_apart, number_of_products
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 from sheetfuncs.core.variance import CONSTANT
@@ -67,19 +68,19 @@ def white_fitted(fit: Fit) -> Result:
     ratio, total = _squared_residuals(fit)
     if total <= 0.0:
         return _all_alike(named)
-    level = fit.fitted_about_mean - fit.fitted_about_mean.mean()
-    length = float(np.linalg.norm(level))
+    level = fit.fitted_about_mean - np.add.reduce(fit.fitted_about_mean) / fit.n
+    length = sqrt(level @ level)
     noise = ROUNDINGS * fit.noise
     if length <= noise:
         return DoesNotApply(**named, reason="All fitted values are alike, so that the errors' spread has nothing to "
                                             "change with.")
     level /= length
     square = level**2
-    before = float(np.linalg.norm(square))
+    before = sqrt(square @ square)
     for _ in range(2):
-        square -= square.mean()
+        square -= np.add.reduce(square) / fit.n
         square -= level * float(level @ square)
-    left = float(np.linalg.norm(square))
+    left = sqrt(square @ square)
     along, part, rank = float(level @ ratio), 0.0, 2
     if left > max(DETERMINED, noise / length) * before:
         part, rank = float(square @ ratio / left) ** 2, 3
@@ -87,10 +88,11 @@ def white_fitted(fit: Fit) -> Result:
     return _result(fit, named, Addition(part, total - part, rank), total, "")
 
 
+@once_per_fit
 def _squared_residuals(fit: Fit) -> tuple[np.ndarray, float]:
     """Squared residuals over their mean, less 1, (n,), and their sum of squares; 0 where that is rounding."""
     ratio = fit.residuals**2 / (fit.rss / fit.n) - 1.0
-    ratio -= ratio.mean()
+    ratio -= np.add.reduce(ratio) / fit.n
     total = float(ratio @ ratio)
     return ratio, 0.0 if total <= fit.n * (ROUNDINGS * fit.relative_noise) ** 2 else total
 
