@@ -13,6 +13,7 @@ import zipfile
 from typing import Any
 
 import pytest
+from office import wait_for
 
 import sheetfuncs
 from sheetfuncs.hosts.calc import protocol
@@ -211,6 +212,13 @@ def test_client_does_not_wait_for_a_full_pipe(client, one):
         one.request("evaluate", CALL, [much, much], seconds=0.5)
 
 
+def test_client_ends_a_worker_that_nobody_asks(client, one, monkeypatch):
+    monkeypatch.setattr(client, "IDLE_SECONDS", 0.05)
+    expected = value(client, one)
+    wait_for(lambda: one.pid is None, "the idle worker is ended")
+    assert value(client, one) == expected
+
+
 def test_client_gives_progress_and_a_heartbeat(client, one):
     value(client, one)
     os.kill(one.pid, signal.SIGSTOP)
@@ -262,3 +270,11 @@ def test_client_takes_no_module_from_the_current_folder(client, one, tmp_path, m
     monkeypatch.setenv("PYTHONPATH", str(tmp_path))
     assert one.request("hello", {}).status == "ok"
     assert value(client, one) > 0
+
+
+def test_functions_are_answered_while_a_job_runs(client, one):
+    """Jobs have a worker of their own."""
+    value(client, client.JOBS)
+    os.kill(client.JOBS.pid, signal.SIGSTOP)
+    assert value(client, client.CELLS) == value(client, one)
+    assert len({client.JOBS.pid, client.CELLS.pid, one.pid}) == 3

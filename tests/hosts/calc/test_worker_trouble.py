@@ -23,7 +23,11 @@ FORMULA = "=FIT_DURBIN_WATSON(A1:A6;B1:B6)"
 
 
 @pytest.fixture
-def sheet(document):
+def sheet(calc, document):
+    """The functions' worker alone runs, whatever other tests left."""
+    for worker in calc.workers():
+        os.kill(worker, signal.SIGKILL)
+    wait_for(lambda: not calc.workers(), "no worker runs")
     sheet = document.Sheets.getByIndex(0)
     fill(sheet, "A1:B6", ROWS)
     assert type_formula(sheet, "D1", FORMULA).Value == pytest.approx(EXPECTED, rel=1e-12)

@@ -23,6 +23,7 @@ from sheetfuncs_bridge import protocol
 EXTENSION = Path(__file__).resolve().parents[2]
 START_SECONDS = 30.0  # for loading the worker's libraries, on top of a request's own limit
 HEARTBEAT_SECONDS = 0.2
+IDLE_SECONDS = 900.0  # after which a worker that nobody asks is ended; the next request starts another
 
 
 class WorkerTrouble(Exception):
@@ -142,13 +143,15 @@ class _Process:
         self.pid = self._child.pid
         self._sent: set = set()
         self._fresh = True
+        self._retired = False
+        self._handing_over = threading.Lock()
         self._requests: queue.Queue = queue.Queue()
         self._outcomes: queue.Queue = queue.Queue()
         threading.Thread(target=self._exchange, daemon=True).start()
 
     @property
     def alive(self) -> bool:
-        return self._child.poll() is None
+        return not self._retired and self._child.poll() is None
 
     def ask(self, kind, head, blocks, seconds, progress) -> Answer:
         """The answer; raises TimeoutError, OSError, EOFError or ProtocolError."""
@@ -181,7 +184,10 @@ class _Process:
         parts = [one.data for one, send in zip(blocks, whole) if send]  # noqa: B905 (Python 3.8)
         places = iter(range(len(parts)))
         names = [next(places) if send else one.digest for one, send in zip(blocks, whole)]  # noqa: B905
-        self._requests.put(({"kind": kind, "head": head, "blocks": names}, parts))
+        with self._handing_over:
+            if self._retired:
+                raise EOFError("it ended meanwhile")
+            self._requests.put(({"kind": kind, "head": head, "blocks": names}, parts))
         answer = self._outcome(until, progress)
         self._sent.update(one.digest for one in blocks)
         return answer
@@ -205,11 +211,22 @@ class _Process:
             if progress is not None:
                 progress(str(head.get("text", "")))
 
+    def _next_request(self):
+        """The next request, or None where the process is to end: told so, or not asked for a long time."""
+        while True:
+            try:
+                return self._requests.get(timeout=IDLE_SECONDS)
+            except queue.Empty:
+                with self._handing_over:
+                    self._retired = self._requests.empty()
+                    if self._retired:
+                        return None
+
     def _exchange(self) -> None:
         """Write each request and hand over what comes back, until the process is gone."""
         try:
             while True:
-                request = self._requests.get()
+                request = self._next_request()
                 if request is None:
                     break
                 protocol.write_message(self._child.stdin, protocol.REQUEST, *request)
