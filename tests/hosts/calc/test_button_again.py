@@ -153,6 +153,43 @@ def test_rows_added_below_are_said(calc, checked):
     assert any("Row 75, right below the range" in text for text in texts)
 
 
+def test_nothing_is_left_open_when_the_document_is_closed(calc, tmp_path):
+    def open_documents():
+        found = calc.desktop.Components.createEnumeration()
+        return sum(1 for _ in iter(lambda: found.hasMoreElements() and found.nextElement(), False))
+
+    before = open_documents()
+    shutil.copy(BOOK, tmp_path / "closed.xlsx")
+    document = calc.open(tmp_path / "closed.xlsx", Hidden=False)
+    with workers_ended(calc):
+        select(document, "Orders", "D10")
+        assert press(calc, document).succeeded
+        assert press(calc, document).succeeded
+    assert open_documents() == before + 2  # the replaced sheet is kept for undo
+    document.close(True)
+    assert open_documents() == before
+
+
+def test_long_ranges_are_read_in_slices(calc, document):
+    rows = [(float(i % 7 + i % 3), float(i % 3)) for i in range(20_100)]
+    rows[20_050] = ("", 1.0)
+    rows[20_060] = (2.0, "=NA()")
+    sheet = document.Sheets.getByIndex(0)
+    sheet.getCellRangeByName("A1:B1").setDataArray((("Load", "Speed"),))
+    sheet.getCellRangeByPosition(0, 1, 1, len(rows)).setDataArray(tuple(rows))
+    sheet.getCellRangeByName("B20062").Formula = "=NA()"
+    sheet.Rows.getByIndex(20_080).IsVisible = False
+    with workers_ended(calc):
+        select(document, sheet.Name, "A5")
+        assert press(calc, document).succeeded
+    texts = document.Sheets.getByIndex(1).getCellRangeByName("B1:O400").getDataArray()
+    said = "\n".join(str(text) for row in texts for text in row if text)
+    assert "20,098 rows used, 2 left out" in said
+    assert "Blank in column A (Load)" in said
+    assert "#N/A in column B (Speed)" in said
+    assert "1 of the used" in said  # hidden
+
+
 def test_ods_keeps_what_the_button_needs(calc, checked, tmp_path):
     named_cell(checked.Sheets.getByName(TITLE), "decision_5").String = "Otto Invented"
     checked.storeToURL((tmp_path / "orders.ods").as_uri(), calc.properties(FilterName="calc8"))

@@ -16,10 +16,10 @@ from sheetfuncs_bridge import protocol
 from sheetfuncs_bridge.chosen import Refusal, from_own_sheets, from_selection
 from sheetfuncs_bridge.client import JOBS, Answer, Packed, WorkerTrouble
 from sheetfuncs_bridge.explanation import explain
-from sheetfuncs_bridge.messages import Status, Teller
+from sheetfuncs_bridge.messages import Status, Teller, hide_bar
 from sheetfuncs_bridge.own_sheets import own_sheets
 from sheetfuncs_bridge.ranges import read_block
-from sheetfuncs_bridge.sheet_import import XLSX, Package, put_sheet
+from sheetfuncs_bridge.sheet_import import Package, put_sheet
 
 SHEETS = "com.sun.star.sheet.SpreadsheetDocument"
 CHECK_SECONDS = 600.0
@@ -61,6 +61,8 @@ def why_this_value(context, frame, done=None) -> None:
         teller.answer(explain(document, frame.getController()))
     except (Refusal, WorkerTrouble) as refusal:
         teller.refuse(str(refusal))
+    except UnoException as trouble:
+        teller.refuse(f"The formula could not be read ({_short(trouble)}).")
 
 
 def show_health(context, frame, done=None) -> None:
@@ -76,6 +78,7 @@ def show_sheet(context, frame, done=None) -> None:
     title = None if document is None else _latest.get(document.getPropertyValue("RuntimeUID"))
     if title is not None and document.getSheets().hasByName(title):
         frame.getController().setActiveSheet(document.getSheets().getByName(title))
+        hide_bar(frame.getController())
 
 
 def _document(frame):
@@ -90,10 +93,11 @@ def _begin(context, frame, done, choose) -> None:
         document = _document(frame)
         _refuse_where_no_sheet_can_be_added(document)
         job = _Check(context, document, teller, choose(document, frame.getController()))
+        job.start()
     except Refusal as refusal:
         teller.refuse(str(refusal))
-        return
-    job.start()
+    except UnoException as trouble:
+        teller.refuse(f"The check could not be started ({_short(trouble)}). Nothing was changed.")
 
 
 def _refuse_where_no_sheet_can_be_added(document) -> None:
@@ -186,7 +190,7 @@ class _Check(unohelper.Base, XCallback):
         sheets = self._document.getSheets()
         title, replaces = head["title"], head["replaces"] is not None
         position = sheets.getByName(title if replaces else self._data_sheet).getRangeAddress().Sheet + (not replaces)
-        package = Package(data, XLSX, head["layout"], head["layout"]["frozen_rows"])
+        package = Package(data, head["layout"])
         put_sheet(self._context, self._document, title, position, package, replaces=replaces)
         _latest[self._owner] = title
         where = "was written anew" if replaces else f"stands right after “{self._data_sheet}”"

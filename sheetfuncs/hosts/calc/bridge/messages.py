@@ -110,12 +110,16 @@ def _show_bar(frame, text: str, detail: str) -> None:
     if frame is None or not on_screen(frame.getContainerWindow()):
         return
     controller = frame.getController()
-    try:
+    hide_bar(controller)
+    with suppress(UnoException, AttributeError):  # the status bar says it too
+        controller.appendInfobar(BAR, text, detail, 0, (StringPair("Show the sheet", SHOW_COMMAND),), True)
+
+
+def hide_bar(controller) -> None:
+    """Take the bar away, if it is there: what it says was seen, or is not true any more."""
+    with suppress(UnoException, AttributeError):
         if controller.hasInfobar(BAR):
             controller.removeInfobar(BAR)
-        controller.appendInfobar(BAR, text, detail, 0, (StringPair("Show the sheet", SHOW_COMMAND),), True)
-    except (UnoException, AttributeError):
-        pass  # the status bar says it too
 
 
 def _quietly(call, *arguments) -> None:

@@ -2,32 +2,78 @@
 
 LibreOffice copies a sheet from another document with its cells, charts, links and names, and loses its page, its
 frozen rows and gridlines and, where fonts differ, the widths of its columns. All that is set again here. The copying
-is not undoable by itself: an undo action of our own keeps both sheets as packages and puts the right one in place.
+is not undoable by itself: an undo action of our own keeps the new sheet as a package and the one that it replaced in a
+hidden document, and puts the right one in place.
 """
 
 from __future__ import annotations
 
-from contextlib import suppress
+from contextlib import contextmanager, suppress
 
 import uno
 import unohelper
 from com.sun.star.awt import Point, Size
 from com.sun.star.beans import PropertyValue
 from com.sun.star.document import XUndoAction
+from com.sun.star.lang import XComponent
 from com.sun.star.uno import Exception as UnoException
+from sheetfuncs_bridge.messages import hide_bar
 from sheetfuncs_bridge.recording import keep_unrecorded, unrecorded
 from sheetfuncs_bridge.references import kept_references
-from sheetfuncs_bridge.windows import same_view, set_up_view
+from sheetfuncs_bridge.windows import controllers_of, same_view, set_up_view
 
-XLSX, ODS = "Calc MS Excel 2007 XML", "calc8"
+XLSX = "Calc MS Excel 2007 XML"
 _READ_ONLY = 16  # com.sun.star.beans.PropertyAttribute
 
 
 class Package:
-    """One sheet as a file in memory. layout: sizes to set again (see the worker's check job), None if it has them."""
+    """One sheet as a file in memory. layout: sizes to set again and frozen rows (see the worker's check job)."""
 
-    def __init__(self, data: bytes, filter_name: str, layout, frozen_rows: int):
-        self.data, self.filter_name, self.layout, self.frozen_rows = data, filter_name, layout, frozen_rows
+    def __init__(self, data: bytes, layout: dict):
+        self.layout, self.frozen_rows = layout, layout["frozen_rows"]
+        self._data = data
+
+    @contextmanager
+    def opened(self, context):
+        """The sheet in a hidden document, which runs no macros and follows no links."""
+        stream = context.getServiceManager().createInstanceWithArgumentsAndContext(
+            "com.sun.star.io.SequenceInputStream", (uno.ByteSequence(self._data),), context
+        )
+        source = _desktop(context).loadComponentFromURL("private:stream", "_blank", 0, _properties(
+            Hidden=True, InputStream=stream, FilterName=XLSX, MacroExecutionMode=0, UpdateDocMode=0,
+        ))
+        if source is None:
+            raise RuntimeError("LibreOffice could not open the sheet that was drawn.")
+        try:
+            yield source, source.getSheets().getByIndex(0)
+        finally:
+            source.close(True)
+
+
+class SetAside:
+    """A sheet of a document as it is now, copied into a hidden document until it is discarded."""
+
+    layout = None  # sizes come along
+
+    def __init__(self, context, document, title: str, frozen_rows: int):
+        self.frozen_rows = frozen_rows
+        self._holder = _desktop(context).loadComponentFromURL(
+            "private:factory/scalc", "_blank", 0, _properties(Hidden=True)
+        )
+        sheets = self._holder.getSheets()
+        sheets.importSheet(document, title, 0)
+        _carry_page(document, document.getSheets().getByName(title), self._holder, sheets.getByIndex(0))
+        self._holder.setModified(False)  # nobody is to be asked about it
+
+    @contextmanager
+    def opened(self, context):
+        """The hidden document and the sheet in it."""
+        yield self._holder, self._holder.getSheets().getByIndex(0)
+
+    def discard(self) -> None:
+        """Close the hidden document."""
+        with suppress(UnoException):
+            self._holder.close(True)
 
 
 def put_sheet(context, document, title: str, position: int, package: Package, *, replaces: bool) -> None:
@@ -36,14 +82,18 @@ def put_sheet(context, document, title: str, position: int, package: Package, *,
     replaces: the sheet of this title is at that place and goes. Windows, selections and formulas elsewhere that read
     from the replaced sheet stay as they were.
     """
-    before = _packed(context, document, title, package.frozen_rows) if replaces else None
+    before = SetAside(context, document, title, package.frozen_rows) if replaces else None
     swap = _Swap(context, document, title, position, before, package)
-    swap.redo()
+    try:
+        swap.redo()
+    except Exception:
+        swap.dispose()
+        raise
     document.getUndoManager().addUndoAction(swap)
 
 
-class _Swap(unohelper.Base, XUndoAction):
-    """The undoable exchange of what stands under a title: a Package, or nothing."""
+class _Swap(unohelper.Base, XUndoAction, XComponent):
+    """The undoable exchange of what stands under a title: before, a SetAside or nothing; after, a Package."""
 
     def __init__(self, context, document, title: str, position: int, before, after):
         self.Title = f"Check: {title}"
@@ -54,10 +104,23 @@ class _Swap(unohelper.Base, XUndoAction):
         return self.Title
 
     def undo(self):
+        for controller in controllers_of(self._document):
+            hide_bar(controller)
         self._exchange(self._after, self._before)
 
     def redo(self):
         self._exchange(self._before, self._after)
+
+    def dispose(self):
+        """Called when the step is no longer among those that can be undone or done again."""
+        if self._before is not None:
+            self._before.discard()
+
+    def addEventListener(self, listener):
+        pass
+
+    def removeEventListener(self, listener):
+        pass
 
     def _exchange(self, old, new) -> None:
         document, sheets = self._document, self._document.getSheets()
@@ -76,51 +139,17 @@ class _Swap(unohelper.Base, XUndoAction):
                 raise
 
 
-def _bring_in(context, document, title: str, position: int, package: Package) -> None:
-    source = _load(context, package)
-    try:
-        theirs = source.getSheets().getByIndex(0)
+def _bring_in(context, document, title: str, position: int, sheet_to_bring) -> None:
+    with sheet_to_bring.opened(context) as (source, theirs):
         document.getSheets().importSheet(source, theirs.getName(), position)
         keep_unrecorded(document)
         sheet = document.getSheets().getByIndex(position)
         if sheet.getName() != title:
             sheet.setName(title)
-        if package.layout is not None:
-            _set_sizes(sheet, package.layout)
+        if sheet_to_bring.layout is not None:
+            _set_sizes(sheet, sheet_to_bring.layout)
         _carry_page(source, theirs, document, sheet)
-    finally:
-        source.close(True)
-    set_up_view(context, document, sheet, package.frozen_rows)
-
-
-def _packed(context, document, title: str, frozen_rows: int) -> Package:
-    """A sheet of the document as a package of its own."""
-    scratch = _desktop(context).loadComponentFromURL("private:factory/scalc", "_blank", 0, _properties(Hidden=True))
-    try:
-        sheets = scratch.getSheets()
-        sheets.importSheet(document, title, 0)
-        for name in sheets.getElementNames()[1:]:
-            sheets.removeByName(name)
-        _carry_page(document, document.getSheets().getByName(title), scratch, sheets.getByIndex(0))
-        stream = _service(context, "com.sun.star.io.SequenceOutputStream")
-        scratch.storeToURL("private:stream", _properties(FilterName=ODS, OutputStream=stream))
-        return Package(stream.getWrittenBytes().value, ODS, None, frozen_rows)
-    finally:
-        scratch.close(True)
-
-
-def _load(context, package: Package):
-    """The package as a hidden document, which may run no macros and follow no links."""
-    arguments = (uno.ByteSequence(package.data),)
-    stream = context.getServiceManager().createInstanceWithArgumentsAndContext(
-        "com.sun.star.io.SequenceInputStream", arguments, context
-    )
-    source = _desktop(context).loadComponentFromURL("private:stream", "_blank", 0, _properties(
-        Hidden=True, InputStream=stream, FilterName=package.filter_name, MacroExecutionMode=0, UpdateDocMode=0,
-    ))
-    if source is None:
-        raise RuntimeError("LibreOffice could not open the sheet that was drawn.")
-    return source
+    set_up_view(context, document, sheet, sheet_to_bring.frozen_rows)
 
 
 def _set_sizes(sheet, layout: dict) -> None:

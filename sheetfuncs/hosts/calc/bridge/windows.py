@@ -16,7 +16,7 @@ _AT_ONCE = (PropertyValue(Name="SynchronMode", Value=True),)
 @contextmanager
 def same_view(document):
     """Whatever happens inside, every window of the document ends where it was; without repainting on the way."""
-    windows = [_Window(controller) for controller in _controllers(document)]
+    windows = [_Window(controller) for controller in controllers_of(document)]
     document.addActionLock()
     try:
         yield
@@ -29,7 +29,7 @@ def same_view(document):
 def set_up_view(context, document, sheet, frozen_rows: int) -> None:
     """Freeze the top rows of a new sheet and hide its gridlines in every window; it is in front afterwards."""
     dispatcher = context.getServiceManager().createInstanceWithContext("com.sun.star.frame.DispatchHelper", context)
-    for controller in _controllers(document):
+    for controller in controllers_of(document):
         controller.setActiveSheet(sheet)
         if frozen_rows:
             controller.freezeAtPosition(0, frozen_rows)
@@ -37,7 +37,8 @@ def set_up_view(context, document, sheet, frozen_rows: int) -> None:
         dispatcher.executeDispatch(controller.getFrame(), ".uno:ToggleSheetGrid", "", 0, _AT_ONCE)
 
 
-def _controllers(document) -> list:
+def controllers_of(document) -> list:
+    """The controllers of all windows that show the document's sheets."""
     found = document.getControllers()
     controllers = []
     while found.hasMoreElements():
