@@ -22,6 +22,7 @@ from sheetfuncs.workbook.settings import settings_from_names
 if TYPE_CHECKING:
     import xlwings as xw
 
+
 @dataclass(frozen=True)
 class OurSheet:
     """One of our sheets in an open workbook, and the settings that it was made with."""
@@ -156,7 +157,8 @@ def _copied(package: Path, place: xw.Sheet) -> xw.Sheet:
         try:
             return guest.sheets[0].copy(after=place)
         finally:
-            guest.close()
+            with suppress(Exception):  # a guest that stays is better than a sheet that is in and reported as not
+                guest.close()
     except Exception as failure:
         raise _not_taken(book, failure) from failure
 

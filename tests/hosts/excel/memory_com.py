@@ -6,6 +6,7 @@ from pathlib import Path
 
 import memory_engine as engine
 import memory_model as model
+from memory_native import areas_of
 from pywintypes import com_error  # a stub
 
 VISIBLE, FORMULAS = 12, -4123  # XlCellType
@@ -35,7 +36,7 @@ class Application:
         book = self.model.active
         if not self.model.selection_is_cells:
             raise com_error("Selection has no Address")
-        return Range(book.active, engine._areas(book.active, book.active.selected))
+        return Range(book.active, areas_of(book.active.selected))
 
     @property
     def Workbooks(self):
@@ -112,14 +113,14 @@ class Worksheet:
         model.rename(self.model, title)
 
     Parent = property(lambda self: Workbook(self.model.book))
-    Names = property(lambda self: Names(self.model.names, engine.model._quoted(self.model.name) + "!"))
+    Names = property(lambda self: Names(self.model.names, model._quoted(self.model.name) + "!"))
     Index = property(lambda self: self.model.book.sheets.index(self.model) + 1)
     UsedRange = property(lambda self: Range(self.model, [self.model.used]))
     Cells = property(lambda self: Range(self.model, [(1, 1, model.MAX_ROWS, model.MAX_COLUMNS)]))
 
     def Range(self, first, last=None):
         if isinstance(first, str):
-            return Range(self.model, engine._areas(self.model, first))
+            return Range(self.model, areas_of(first))
         a, b = first.areas[0], (last or first).areas[0]
         return Range(self.model, [(min(a[0], b[0]), min(a[1], b[1]), max(a[2], b[2]), max(a[3], b[3]))])
 

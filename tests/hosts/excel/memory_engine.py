@@ -2,16 +2,15 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Iterator
 from contextlib import contextmanager
 from datetime import datetime, timedelta
 from decimal import Decimal
 from pathlib import Path
-from types import SimpleNamespace
 
 import memory_model as model
 import xlwings as xw
+from memory_native import Get, Missing, Native, NativeName, areas_of
 from xlwings import base_classes
 
 ERROR_NUMBERS = {
@@ -19,7 +18,6 @@ ERROR_NUMBERS = {
     "#NUM!": -2146826252, "#N/A": -2146826246,
 }
 _ERROR_TEXTS = {number: text for text, number in ERROR_NUMBERS.items()}
-_CORNER = re.compile(r"\$?([A-Z]{0,3})\$?([0-9]{0,7})", re.IGNORECASE)
 
 
 class Engine:
@@ -89,7 +87,7 @@ class App(base_classes.App):
         book = self.model.active
         if not self.model.selection_is_cells or book.active.is_chart or book.active.selected is None:
             return None
-        return Range(self, book.active, _areas(book.active, book.active.selected))
+        return Range(self, book.active, areas_of(book.active.selected))
 
     @property
     def books(self):
@@ -143,12 +141,12 @@ class Book(base_classes.Book):
 
     @property
     def api(self):
-        native = _Native(
+        native = Native(
             Date1904=self.model.date1904, ProtectStructure=self.model.structure_protected,
-            ReadOnly=self.model.read_only, Sheets=[_Native(Name=sheet.name) for sheet in self.model.sheets],
-            date_1904=_Get(self.model.date1904), protect_structure=_Get(self.model.structure_protected),
-            read_only=_Get(self.model.read_only),
-            sheets=_Native(name=_Get([sheet.name for sheet in self.model.sheets])),
+            ReadOnly=self.model.read_only, Sheets=[Native(Name=sheet.name) for sheet in self.model.sheets],
+            date_1904=Get(self.model.date1904), protect_structure=Get(self.model.structure_protected),
+            read_only=Get(self.model.read_only),
+            sheets=Native(name=Get([sheet.name for sheet in self.model.sheets])),
         )
         return native
 
@@ -218,7 +216,7 @@ class Sheet(base_classes.Sheet):
                 return self._range(row, column, row + height - 1, column + width - 1)
             last = arg1 if arg2 is None else arg2
             return self._range(*arg1, *last)
-        return Range(self.book.app, self.model, _areas(self.model, arg1))
+        return Range(self.book.app, self.model, areas_of(arg1))
 
     def _range(self, *area):
         return Range(self.book.app, self.model, [area])
@@ -319,17 +317,17 @@ class Range(base_classes.Range):
                               for row in self._cells()])
         first = self.model.cell(self.row, self.column)
         hidden = self._rows_hidden()
-        return _Native(
-            EntireRow=_Native(Hidden=hidden), entire_row=_Native(hidden=_Get(hidden)),
-            Value2=self.held, Areas=SimpleNamespace(Count=len(self.areas)), string_value=_Get(shown),
-            HasSpill=first.shape == "spill", has_spill=_Get(first.shape == "spill"),
-            SpillParent=self._spill_parent() if first.shape == "spilled" else _Missing(),
+        return Native(
+            EntireRow=Native(Hidden=hidden), entire_row=Native(hidden=Get(hidden)),
+            Value2=self.held, Areas=Native(Count=len(self.areas)), string_value=Get(shown),
+            HasSpill=first.shape == "spill", has_spill=Get(first.shape == "spill"),
+            SpillParent=self._spill_parent() if first.shape == "spilled" else Missing(),
         )
 
     def _rows_hidden(self):
         """True or False for all rows, None for some of them, as Excel's Null; an error where it does not say."""
         if not self.app.model.tells_hidden_rows:
-            return _Missing()
+            return Missing()
         top, _, bottom, _ = self.areas[0]
         found = {row in self.model.hidden_rows for row in range(top, bottom + 1)}
         return found.pop() if len(found) == 1 else None
@@ -338,7 +336,7 @@ class Range(base_classes.Range):
         for row in range(self.row, 0, -1):
             cell = self.model.cell(row, self.column)
             if cell.shape == "spill":
-                return _Native(Formula=cell.formula)
+                return Native(Formula=cell.formula)
         raise model.ExcelError("no spill")
 
     def _texts(self):
@@ -444,7 +442,7 @@ class Name(base_classes.Name):
 
     @property
     def api(self):
-        return _NativeName(self.model)
+        return NativeName(self.model)
 
     @property
     def name(self):
@@ -458,64 +456,6 @@ class Name(base_classes.Name):
     @refers_to.setter
     def refers_to(self, value):
         self.model.refers_to = value
-
-
-class _Missing:
-    """A property that fails when it is asked for."""
-
-
-class _Native(SimpleNamespace):
-    """An object as pywin32 or appscript would give it."""
-
-    def __getattribute__(self, name):
-        value = super().__getattribute__(name)
-        if isinstance(value, _Missing):
-            raise model.ExcelError(f"{name} is not to be had here")
-        return value
-
-
-class _Get:
-    def __init__(self, value):
-        self.value = value
-
-    def get(self):
-        return self.value
-
-
-class _NativeName:
-    def __init__(self, name: model.Name):
-        object.__setattr__(self, "name", name)
-
-    def __setattr__(self, key, value):
-        assert key == "Visible"
-        self.name.visible = value
-
-    @property
-    def visible(self):
-        return SimpleNamespace(set=lambda value: setattr(self.name, "visible", value))
-
-
-def _areas(sheet: model.Sheet, text: str) -> list[tuple[int, int, int, int]]:
-    return [_area(part) for part in text.split(",")]
-
-
-def _area(text: str) -> tuple[int, int, int, int]:
-    corners = [_CORNER.fullmatch(part) for part in text.split(":")]
-    if not all(corners) or not text:
-        raise model.ExcelError(f"no range {text}")
-    letters, rows = [c[1].upper() for c in corners], [c[2] for c in corners]
-    columns = [_column(letter) if letter else default for letter, default in
-               zip((letters[0], letters[-1]), (1, model.MAX_COLUMNS), strict=True)]
-    lines = [int(row) if row else default for row, default in
-             zip((rows[0], rows[-1]), (1, model.MAX_ROWS), strict=True)]
-    return lines[0], columns[0], lines[1], columns[1]
-
-
-def _column(letters: str) -> int:
-    number = 0
-    for letter in letters:
-        number = 26 * number + ord(letter) - 64
-    return number
 
 
 @contextmanager

@@ -170,6 +170,7 @@ class App:
         return book
 
     def close(self, book: Book) -> None:
+        self.may("close")
         self.notice("close")
         self.books.remove(book)
         self.active = self.books[-1] if self.books else None

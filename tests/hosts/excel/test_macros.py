@@ -269,6 +269,13 @@ def test_a_failure_in_the_middle_leaves_the_workbook_as_it_was(app, action):
     assert len(app.books) == 1
 
 
+def test_a_guest_that_does_not_close_does_not_undo_the_check(app):
+    app.fail["close"] = ExcelError("busy")
+    assert press(app).startswith(FOUND)
+    assert titles(app) == ["Notes", "Jobs", "Check of Jobs", "Later"]
+    assert app.active.name == "Invented jobs.xlsx"
+
+
 def test_what_nobody_foresaw_becomes_a_sentence(app, monkeypatch):
     def broken(*args, **options):
         raise ZeroDivisionError("division by zero")
