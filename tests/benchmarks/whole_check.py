@@ -1,11 +1,12 @@
 """Our check beside the same job done by hand with general-purpose libraries, in one run on one machine.
 
-    python tests/benchmarks/whole_check.py [60x3 1000x5 5000x10 100000x10 1000000x10]
+    python tests/benchmarks/whole_check.py [--profile] [60x3 1000x5 5000x10 100000x10 1000000x10]
 
 For each size: milliseconds of each peer (statsmodels and scipy, and R where Rscript is found), of ours on the methods
 that this peer runs too, of ours in whole (every method, exact Durbin-Watson, Harvey-Collier and the row table
-included), and the two ratios against the faster peer. Only ratios of one run count: figures differ from machine to
-machine and hour to hour. R packages: lmtest, car, sandwich, nortest, MASS.
+included), and the two ratios against the faster peer. All are the least of several runs. Only ratios of one run count:
+figures differ from machine to machine and hour to hour. R packages: lmtest, car, sandwich, nortest, MASS.
+With --profile each size is followed by what each method takes and by a bound (see profile_check.py).
 """
 
 from __future__ import annotations
@@ -20,14 +21,15 @@ from collections.abc import Callable
 from functools import partial
 from pathlib import Path
 
-import numpy as np
+from made_data import design_of
+from profile_check import profile
 
 from sheetfuncs.core.box_cox import box_cox
 from sheetfuncs.core.catalogue import all_statistics
 from sheetfuncs.core.collinearity import variance_inflation
 from sheetfuncs.core.condition import condition_indices
 from sheetfuncs.core.covariance import covariance, heteroscedasticity_consistent, newey_west
-from sheetfuncs.core.design import Design, Numeric, build_design
+from sheetfuncs.core.design import Design
 from sheetfuncs.core.fit import Fit, fit_design
 from sheetfuncs.core.form import reset
 from sheetfuncs.core.goldfeld_quandt import goldfeld_quandt
@@ -67,13 +69,6 @@ WHOLE: tuple[Method, ...] = (
 )
 
 
-def data(n: int, k: int) -> tuple[np.ndarray, np.ndarray]:
-    """The peers' data: errors whose spread grows with the first predictor."""
-    random = np.random.default_rng(0)
-    x = random.normal(size=(n, k))
-    return 1 + x @ np.arange(1, k + 1) + random.normal(size=n) * (1 + 0.3 * np.abs(x[:, 0])), x
-
-
 def shared_with(peer: str, n: int) -> tuple[Method, ...]:
     """The methods that this peer runs at this size."""
     extra: list[Method] = []
@@ -90,14 +85,14 @@ def shared_with(peer: str, n: int) -> tuple[Method, ...]:
 
 
 def milliseconds(job: Callable[[], object]) -> float:
-    """The median of runs that together last long enough for the clock to mean something."""
+    """The least of runs that together last long enough for the clock to mean something."""
     job()
     times: list[float] = []
-    while len(times) < 3 or (sum(times) < 0.5 and len(times) < 200):
+    while len(times) < 3 or (sum(times) < 1.0 and len(times) < 400):
         start = time.perf_counter()
         job()
         times.append(time.perf_counter() - start)
-    return 1e3 * float(np.median(times))
+    return 1e3 * min(times)
 
 
 def run_methods(design: Design, methods: tuple[Method, ...]) -> None:
@@ -107,22 +102,24 @@ def run_methods(design: Design, methods: tuple[Method, ...]) -> None:
             method(fit)
 
 
-def peer_milliseconds(command: list[str]) -> float:
-    done = subprocess.run(command, capture_output=True, text=True, check=True)
-    return float(json.loads(done.stdout.strip().splitlines()[-1])["total_ms"])
+def peer_milliseconds(command: list[str], runs: int) -> float:
+    """The least total of so many runs, each of which is warm when it starts its clock."""
+    totals = []
+    for _ in range(runs):
+        done = subprocess.run(command, capture_output=True, text=True, check=True)
+        totals.append(float(json.loads(done.stdout.strip().splitlines()[-1])["total_ms"]))
+    return min(totals)
 
 
-def main(sizes: list[str]) -> None:
+def main(arguments: list[str]) -> None:
+    sizes = [one for one in arguments if one != "--profile"] or list(SIZES)
     peers = {"statsmodels": [sys.executable, str(HERE / "peer_statsmodels.py")]}
     if shutil.which("Rscript"):
         peers["R"] = ["Rscript", str(HERE / "peer.R")]
     for size in sizes:
         n, k = map(int, size.split("x"))
-        y, x = data(n, k)
-        if y.min() <= 0:
-            y = y - y.min() + 1  # as the peers do for Box-Cox
-        design = build_design(y, [Numeric(f"x{j + 1}", x[:, j]) for j in range(k)])
-        theirs = {name: peer_milliseconds([*command, str(n), str(k)]) for name, command in peers.items()}
+        design, runs = design_of(size), 3 if n <= 100_000 else 1
+        theirs = {name: peer_milliseconds([*command, str(n), str(k)], runs) for name, command in peers.items()}
         faster = min(theirs, key=theirs.__getitem__)
         shared = milliseconds(partial(run_methods, design, shared_with(faster, n)))
         whole = milliseconds(partial(run_methods, design, WHOLE))
@@ -130,8 +127,10 @@ def main(sizes: list[str]) -> None:
         print(f"{size}: " + ", ".join(f"{name} {ms:,.1f} ms" for name, ms in theirs.items()))
         print(f"    ours, the methods of {faster}: {shared:,.2f} ms, {theirs[faster] / shared:.1f} times as fast")
         print(f"    ours, whole: {whole:,.2f} ms, {theirs[faster] / whole:.1f} times as fast; peak {peak:.2f} GB")
+        if "--profile" in arguments:
+            profile(size, theirs[faster])
         sys.stdout.flush()
 
 
 if __name__ == "__main__":
-    main(sys.argv[1:] or list(SIZES))
+    main(sys.argv[1:])
