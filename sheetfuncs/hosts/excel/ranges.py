@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from contextlib import suppress
 from dataclasses import dataclass
 from datetime import datetime
@@ -12,7 +12,7 @@ import numpy as np
 
 from sheetfuncs.cells.block import ERROR_TEXTS, Block, Kind
 from sheetfuncs.hosts.excel.native import ask, on_mac
-from sheetfuncs.hosts.excel.values import as_cell, exact, needs_exact, two_dimensional
+from sheetfuncs.hosts.excel.values import PLAIN, as_cell, exact, kinds_of, needs_exact, two_dimensional
 
 if TYPE_CHECKING:
     import xlwings as xw
@@ -42,18 +42,31 @@ def within_used(cells: xw.Range) -> xw.Range:
 def read_block(cells: xw.Range) -> Block:
     """A range as a Block: exact numbers, dates as DATE cells, hidden rows, and where it stands."""
     date1904 = counts_from_1904(cells.sheet.book)
-    rows: list[list[Any]] = []
+    rows: list[Sequence[Any]] = []
     for part in _parts(cells):
-        rows += _read(part)
-    dates = np.array([[isinstance(value, _Date) for value in row] for row in rows], bool).reshape(cells.shape)
+        rows += _read_on_mac(part) if on_mac() else _read(part)
     block = Block.from_rows(
-        [[as_cell(value.held if isinstance(value, _Date) else value, date1904=date1904) for value in row]
-         for row in rows],
-        sheet=cells.sheet.name, first_row=cells.row, first_column=cells.column, hidden=hidden_rows(cells),
-        date1904=date1904,
+        _converted(rows, date1904), sheet=cells.sheet.name, first_row=cells.row, first_column=cells.column,
+        hidden=hidden_rows(cells), date1904=date1904,
     )
-    block.kinds[dates & (block.kinds == Kind.NUMBER)] = Kind.DATE
+    if _Date in kinds_of(rows):
+        _mark_dates(block, rows)
     return block
+
+
+def _mark_dates(block: Block, rows: Sequence[Sequence[Any]]) -> None:
+    for i, row in enumerate(rows):
+        for j, value in enumerate(row):
+            if isinstance(value, _Date) and block.kinds[i, j] == Kind.NUMBER:
+                block.kinds[i, j] = Kind.DATE
+
+
+def _converted(rows: Sequence[Sequence[Any]], date1904: bool) -> Sequence[Sequence[object]]:
+    if kinds_of(rows) <= PLAIN:
+        return rows
+    return [
+        [as_cell(value.held if isinstance(value, _Date) else value, date1904=date1904) for value in row] for row in rows
+    ]
 
 
 def counts_from_1904(book: xw.Book) -> bool:
@@ -75,11 +88,11 @@ def _parts(cells: xw.Range) -> Iterator[xw.Range]:
         yield cells[start : start + step, :]
 
 
-def _read(cells: xw.Range) -> list[list[Any]]:
-    if on_mac():
-        return _read_on_mac(cells)
+def _read(cells: xw.Range) -> Sequence[Sequence[Any]]:
     seen = cells.options(ndim=2, err_to_str=True).value
-    held = exact(seen, cells.api.Value2) if needs_exact(seen) else seen
+    if not needs_exact(seen):
+        return seen
+    held = exact(seen, cells.api.Value2)
     return [
         [_Date(number) if isinstance(value, datetime) else number for value, number in zip(left, right, strict=True)]
         for left, right in zip(seen, held, strict=True)

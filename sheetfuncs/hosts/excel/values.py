@@ -6,6 +6,7 @@ import math
 from collections.abc import Iterable, Sequence
 from datetime import datetime
 from decimal import Decimal
+from itertools import chain
 from typing import Any
 
 from sheetfuncs.cells.block import ERROR_TEXTS
@@ -25,6 +26,8 @@ _START_1900 = datetime(1899, 12, 30)
 _START_1904 = datetime(1904, 1, 1)
 
 Cell = float | bool | str | None
+PLAIN = {float, bool, str, type(None)}
+"""Types of cells that need no conversion."""
 
 
 def as_rows(given: object, *, date1904: bool = False) -> object:
@@ -39,7 +42,10 @@ def as_rows(given: object, *, date1904: bool = False) -> object:
     if not isinstance(given, list | tuple):
         cell = as_cell(given, date1904=date1904)
         return cell if isinstance(cell, str) and cell in ERROR_TEXTS else [[cell]]
-    return [[as_cell(cell, date1904=date1904) for cell in row] for row in two_dimensional(given)]
+    rows = two_dimensional(given)
+    if kinds_of(rows) <= PLAIN:  # the usual case, many times faster than cell by cell
+        return [list(row) for row in rows]
+    return [[as_cell(cell, date1904=date1904) for cell in row] for row in rows]
 
 
 def two_dimensional(given: object) -> Sequence[Sequence[Any]]:
@@ -95,7 +101,12 @@ def exact(seen: Sequence[Sequence[Any]], held: object) -> list[list[Any]]:
 
 def needs_exact(seen: Iterable[Iterable[Any]]) -> bool:
     """Whether any cell is a date or currency."""
-    return any(isinstance(value, datetime | Decimal) for row in seen for value in row)
+    return any(issubclass(kind, datetime | Decimal) for kind in kinds_of(seen))
+
+
+def kinds_of(rows: Iterable[Iterable[object]]) -> set[type]:
+    """The types of all cells."""
+    return set(map(type, chain.from_iterable(rows)))
 
 
 def for_excel(result: object) -> object:
