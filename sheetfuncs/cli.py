@@ -234,6 +234,18 @@ def calc_health(profile: Path | None) -> None:
     click.echo(headline(findings))
 
 
+@calc.command("plain-names")
+@click.argument("book", type=click.Path(path_type=Path))
+def calc_plain_names(book: Path) -> None:
+    """Spell our functions in the formulas of BOOK (.xlsx, .xlsm) as every program reads them.
+
+    Calc does so by itself when it saves a workbook; a copy that it sends, exports or converts may lack it.
+    """
+    from sheetfuncs.hosts.files import write_names_plainly
+
+    click.echo(write_names_plainly(book))
+
+
 @contextmanager
 def _steps() -> Iterator[Callable[[str], None]]:
     """Say each step on one line of a terminal that somebody watches; elsewhere stay silent."""

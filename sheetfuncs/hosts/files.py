@@ -17,7 +17,7 @@ from sheetfuncs.checking import Check, check_observations
 from sheetfuncs.errors import ArgumentError, WorkbookBusyError, WorkbookError
 from sheetfuncs.hosts.places import predictions_at
 from sheetfuncs.hosts.recorded import Earlier, earlier_sheet, recorded_settings, sheets_of_other_ranges
-from sheetfuncs.judgement.words import listed
+from sheetfuncs.judgement.words import counted, listed
 
 Step = Callable[[str], None]
 DEFAULT_LEVEL = 0.95
@@ -95,6 +95,18 @@ def undo_check(book: Path, *, force: bool = False) -> str:
     undone = undo(book, force=force)
     kept = f" The edited file is kept as {undone.edits}." if undone.edits else ""
     return f"{book} is back as it was before the latest check.{kept}"
+
+
+def write_names_plainly(book: Path) -> str:
+    """Spell our functions plainly in all formulas of a workbook file; returns the sentence that says what changed."""
+    from sheetfuncs.workbook.formula_names import write_plain_names
+
+    if book.is_dir():
+        raise WorkbookError(f"{book} is a folder. Give the workbook in it.")
+    names = write_plain_names(book)
+    if not names:
+        return f"The names of our functions in {book} are plain already, or it holds none; it was left as it is."
+    return f"{counted(names, 'name')} in the formulas of {book} {'is' if names == 1 else 'are'} spelled plainly now."
 
 
 def _target(request: Request) -> Path | None:

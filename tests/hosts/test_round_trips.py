@@ -10,8 +10,10 @@ from pathlib import Path
 
 import formula_books as books
 import pytest
+from click.testing import CliRunner
 
 import sheetfuncs
+from sheetfuncs.cli import main
 from sheetfuncs.hosts.files import Request, check_book, evaluate_cell
 from sheetfuncs.workbook.formula_names import write_plain_names
 
@@ -63,3 +65,14 @@ def test_calls_into_another_addin_stay_its_own(tmp_path):
     before = parts_of(book)
     assert write_plain_names(book) == 0
     assert parts_of(book) == before
+
+
+def test_a_copy_gets_plain_names_by_the_command(tmp_path):
+    book = books.write_book(tmp_path / "copy.xlsx", "unknown")
+    done = CliRunner().invoke(main, ["calc", "plain-names", str(book)])
+    assert (done.exit_code, done.output.count("spelled plainly now.")) == (0, 1)
+    again = CliRunner().invoke(main, ["calc", "plain-names", str(book)])
+    assert (again.exit_code, "it was left as it is" in again.output) == (0, True)
+    refused = CliRunner().invoke(main, ["calc", "plain-names", str(tmp_path / "none.xlsx")])
+    assert refused.exit_code == 1
+    assert refused.output.count("\n") == 1
