@@ -147,6 +147,30 @@ def test_data_that_are_themselves_our_results(document):
         assert found == pytest.approx([one[0] for one in second], rel=1e-12)
 
 
+def test_data_that_depend_on_each_other_many_deep(document):
+    """LibreOffice then calls a function before its data are ready, and calls again; see recalculation.py."""
+    count, rows = 1_500, invented(1_500, 9)
+    sheet = document.Sheets.getByIndex(0)
+    fill(sheet, f"A1:B{count}", [row[:2] for row in rows])
+    fill(sheet, f"C1:C{count - 1}", [[f"=C{row + 1}*0.999+B{row}"] for row in range(1, count)])  # from below
+    fill(sheet, f"C{count}", [[0.0]])
+    ranges = f"A1:A{count};C1:C{count}"
+    first = type_formula(sheet, "E1", f"=FIT_DURBIN_WATSON({ranges})")
+    same = type_formula(sheet, "E2", f"=FIT_DURBIN_WATSON({ranges})")
+    other = type_formula(sheet, "E3", f"=FIT_DURBIN_WATSON({ranges};FALSE())")
+    for start in (2.0, 50.0, -300.0):
+        sheet.getCellRangeByName(f"C{count}").Value = start
+        third = [start]
+        for row in range(count - 2, -1, -1):
+            third.append(third[-1] * 0.999 + rows[row][1])
+        data = [[row[0], value] for row, value in zip(rows, reversed(third), strict=True)]
+        response, predictor = [row[:1] for row in data], [row[1:] for row in data]
+        assert first.Value == pytest.approx(durbin_watson(data), rel=1e-10)
+        assert same.Value == first.Value
+        expected = sheetfuncs.evaluate("FIT_DURBIN_WATSON", response, predictor, False)
+        assert other.Value == pytest.approx(expected, rel=1e-10)
+
+
 def test_a_formula_filled_down_many_rows(document):
     """As many equal formulas below each other as LibreOffice would share among threads."""
     sheet, rows = document.Sheets.getByIndex(0), invented(320, 8)

@@ -23,18 +23,18 @@ def call(recalculation, document, name: str, given):
 
     given: its arguments; ranges as XCellRange, options as None, float, str, or rows of cells.
     """
-    recalculation.begin_call()
-    try:
+    options = tuple(value for value in given if not hasattr(value, "getDataArray"))
+    with recalculation.call():
         if recalculation.trouble is not None:
             return NO_ANSWER
-        head, blocks = gather(name, given, lambda ranges: recalculation.packed(document, ranges))
-        answer = CELLS.request("evaluate", head, blocks)
-    except WorkerTrouble as trouble:
-        recalculation.trouble = str(trouble)
-        return NO_ANSWER
-    finally:
-        recalculation.end_call()
-    return value_of(answer)
+        try:
+            head, blocks = gather(
+                name, given, lambda ranges: recalculation.packed(document, ranges, (name, options))
+            )
+            return value_of(CELLS.request("evaluate", head, blocks))
+        except WorkerTrouble as trouble:
+            recalculation.trouble = str(trouble)
+            return NO_ANSWER
 
 
 def value_of(answer):

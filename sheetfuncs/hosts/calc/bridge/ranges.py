@@ -15,6 +15,7 @@ ERROR_CODES = {  # com.sun.star.table.XCell.getError
 LEAST_LAST_ROW = 65_535  # the last row (from 0) of a sheet is here or further down, depending on the version
 OTHER_ERROR = "#VALUE!"
 MOST_ERRORS = 5_000  # asked for one by one; beyond that a cell is an error without saying which
+ANY_RESULT = 1 | 2 | 4  # com.sun.star.sheet.FormulaResult
 DATE_OR_TIME, LOGICAL = 2 | 4, 1024  # com.sun.star.util.NumberFormat
 
 
@@ -44,6 +45,11 @@ def cut_to_row(cells, last_row: int):
     address = cells.getRangeAddress()
     end = max(address.StartRow, min(address.EndRow, last_row))
     return cells.getCellRangeByPosition(0, 0, address.EndColumn - address.StartColumn, end - address.StartRow)
+
+
+def has_formulas(cells) -> bool:
+    """Whether any cell of the range is calculated."""
+    return cells.queryFormulaCells(ANY_RESULT).getCount() > 0
 
 
 def read_block(cells, document=None) -> protocol.Block:
