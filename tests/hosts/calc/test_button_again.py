@@ -13,11 +13,13 @@ from office import type_formula, wait_for
 from press import Pressed, named_cell, press, select, where, workers_ended
 
 import sheetfuncs
+from sheetfuncs.hosts.files import Request, check_book
 
 pytestmark = pytest.mark.libreoffice
 
 BOOK = Path(__file__).parents[3] / "templates" / "order-hours-unequal-spread.xlsx"
 TITLE = "Check of Orders"
+XLSX = "Calc MS Excel 2007 XML"
 
 
 @pytest.fixture
@@ -151,6 +153,37 @@ def test_rows_added_below_are_said(calc, checked):
     sheet = checked.Sheets.getByName(TITLE)
     texts = [str(text) for row in sheet.getCellRangeByName("B1:O10").getDataArray() for text in row]
     assert any("Row 75, right below the range" in text for text in texts)
+
+
+def test_to_and_fro_between_programs_with_dates_and_two_windows(calc, tmp_path):
+    book = tmp_path / "dryer.xlsx"
+    shutil.copy(BOOK.with_name("dryer-gas-time-order.xlsx"), book)
+    title = "Check of Drying days"
+    document = calc.open(book, Hidden=False)
+    with workers_ended(calc):
+        first = document.CurrentController
+        calc.service("com.sun.star.frame.DispatchHelper").executeDispatch(first.Frame, ".uno:NewWindow", "", 0, ())
+        select(document, "Notes", "B2")
+        second = document.CurrentController
+        assert second != first
+        document.setCurrentController(first)
+        select(document, "Drying days", "C7")
+        assert press(calc, document).succeeded
+        assert first.ActiveSheet.Name == "Drying days"
+        assert (second.ActiveSheet.Name, second.Selection.AbsoluteName) == ("Notes", "$Notes.$B$2")
+        for controller in (first, second):
+            controller.setActiveSheet(document.Sheets.getByName(title))
+            assert controller.hasFrozenPanes()
+        named_cell(document.Sheets.getByName(title), "decision_2").String = "invented, for a test"
+        document.storeToURL((tmp_path / "there.xlsx").as_uri(), calc.properties(FilterName=XLSX))
+        document.close(True)
+        done = check_book(Request(book=tmp_path / "there.xlsx", in_place=True))
+        assert (done.sheet, done.replaced, done.check.settings.order) == (title, True, "Date")
+        document = calc.open(tmp_path / "there.xlsx", Hidden=False)
+        select(document, title, "B2")
+        assert "written anew" in press(calc, document, "again").text
+        assert named_cell(document.Sheets.getByName(title), "decision_2").String == "invented, for a test"
+        document.close(True)
 
 
 def test_nothing_is_left_open_when_the_document_is_closed(calc, tmp_path):

@@ -146,7 +146,7 @@ class _Check(unohelper.Base, XCallback):
         except WorkerTrouble as trouble:
             self._trouble = str(trouble)
         except Exception as trouble:
-            self._trouble = f"The cells could not be read ({_short(trouble)})."
+            self._trouble = f"The check could not be made ({_short(trouble)}). Nothing was changed."
         callback = self._context.getServiceManager().createInstanceWithContext(
             "com.sun.star.awt.AsyncCallback", self._context
         )

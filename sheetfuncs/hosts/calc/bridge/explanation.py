@@ -128,6 +128,7 @@ class _Formula:
 
     def _text(self, tokens: list) -> str:
         parser = self._document.createInstance("com.sun.star.sheet.FormulaParser")
+        parser.setPropertyValue("CompileEnglish", True)
         return parser.printFormula(tuple(tokens), self._address)
 
     def _pushed(self, data):
