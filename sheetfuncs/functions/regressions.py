@@ -7,7 +7,7 @@ from collections.abc import Callable, Sequence
 from copy import copy
 from dataclasses import dataclass
 from functools import cached_property
-from hashlib import blake2b
+from hashlib import sha256
 from threading import Lock
 from weakref import WeakKeyDictionary
 
@@ -134,7 +134,7 @@ def find_predictors(predictors: Block, *, intercept: bool) -> Predictors:
 
 def content_key(blocks: Sequence[Block | None], *options: object) -> bytes:
     """A key that differs wherever cells, their place in the sheet, hidden rows or options differ."""
-    digest = blake2b(repr((len(blocks), options)).encode(), digest_size=20)
+    digest = sha256(repr((len(blocks), options)).encode())
     for block in blocks:
         digest.update(b"none" if block is None else _block_digest(block))
     return digest.digest()
@@ -156,7 +156,7 @@ _DIGESTS: WeakKeyDictionary[Block, bytes] = WeakKeyDictionary()
 def _digest_now(block: Block) -> bytes:
     place = (block.kinds.shape, block.sheet, block.first_row, block.first_column, block.worksheet_columns,
              block.date1904, sorted(block.texts), block.hidden is not None)
-    digest = blake2b(repr(place).encode("utf-8", "surrogatepass"), digest_size=20)
+    digest = sha256(repr(place).encode("utf-8", "surrogatepass"))  # most processors have a circuit for it
     digest.update(_bytes(block.numbers))
     digest.update(_bytes(block.kinds))
     for column in sorted(block.texts):
