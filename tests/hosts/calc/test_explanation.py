@@ -80,8 +80,20 @@ def test_a_cell_without_a_function_of_ours(calc, orders, formula, sentence):
 def test_the_state_of_things(calc, orders):
     outcome = press(calc, orders, "health")
     assert outcome.succeeded
-    assert f"sheetfuncs {sheetfuncs.__version__} answers" in outcome.text
-    assert "install" not in outcome.text
+    assert outcome.text.startswith("LibreOffice, the extension and sheetfuncs work together.")
+    assert f"sheetfuncs {sheetfuncs.__version__}, in Python" in outcome.text
+
+
+def test_the_state_of_things_names_other_versions(calc, orders):
+    path = calc.folder / "settings.json"
+    before = path.read_text("utf-8")
+    try:
+        path.write_text(before.replace(f'"{sheetfuncs.__version__}"', '"0.0.1"'), "utf-8")
+        assert "different versions: close LibreOffice and run" in press(calc, orders, "health").text
+        path.write_text("{}", "utf-8")
+        assert "sheetfuncs calc install" in press(calc, orders, "health").text
+    finally:
+        path.write_text(before, "utf-8")
 
 
 def test_going_to_the_sheet_that_was_made(calc, orders):

@@ -195,7 +195,7 @@ class _Check(unohelper.Base, XCallback):
         _latest[self._owner] = title
         where = "was written anew" if replaces else f"stands right after “{self._data_sheet}”"
         notes = [head["finding"], *head["notes"], *([CHANGED_MEANWHILE] if self._changes.happened else [])]
-        self._teller.finish(f"“{title}” {where}.", " ".join(notes))
+        self._teller.finish(f"“{title}” {where}.", " ".join(notes), title)
 
 
 class _Changes(unohelper.Base, XModifyListener):

@@ -5,6 +5,10 @@ from __future__ import annotations
 from sheetfuncs_bridge import protocol
 from sheetfuncs_bridge.client import CELLS, WorkerTrouble, read_settings
 
+OTHER_VERSION = (
+    "The extension and sheetfuncs have different versions: close LibreOffice and run `sheetfuncs calc install`."
+)
+
 
 def condition() -> str:
     """Which versions work together here, or what is wrong and its cure."""
@@ -13,12 +17,10 @@ def condition() -> str:
         worker = CELLS.request("hello", {}).head
     except WorkerTrouble as trouble:
         return str(trouble)
-    lines = [
-        f"sheetfuncs {worker.get('sheetfuncs')} answers, in Python {worker.get('python')}.",
-        f"Interpreter: {settings.get('interpreter')}",
-        f"Extension: version {settings.get('version')}, protocol {protocol.VERSION}; one value may take "
+    together = worker.get("sheetfuncs") == settings.get("version")
+    return "\n".join([
+        "LibreOffice, the extension and sheetfuncs work together." if together else OTHER_VERSION,
+        f"sheetfuncs {worker.get('sheetfuncs')}, in Python {worker.get('python')}: {settings.get('interpreter')}",
+        f"Extension: version {settings.get('version')}, protocol {protocol.VERSION}; the longest wait for one value is "
         f"{settings.get('seconds')} seconds.",
-    ]
-    if worker.get("sheetfuncs") != settings.get("version"):
-        lines.append("The extension and sheetfuncs have different versions: run `sheetfuncs calc install` again.")
-    return "\n".join(lines)
+    ])

@@ -37,12 +37,12 @@ class Teller:
         """The answer to a question, in a box."""
         self._say(True, text)
 
-    def finish(self, text: str, detail: str = "") -> None:
-        """What was asked for is done: said beside the work, not in its way."""
+    def finish(self, text: str, detail: str, title: str) -> None:
+        """The sheet of this title was made: said beside the work, not in its way."""
         if self._done is not None:
             self._done(True, f"{text} {detail}".strip())
         show_status(self.frame, text)
-        _show_bar(self.frame, text, detail)
+        _show_bar(self.frame, text, detail, title)
 
     def _say(self, succeeded: bool, text: str) -> None:
         if self._done is not None:
@@ -105,14 +105,16 @@ def show_status(frame, text: str) -> None:
     timer.start()
 
 
-def _show_bar(frame, text: str, detail: str) -> None:
-    """The bar above the sheet, with a button that goes to the result; older programs have none."""
+def _show_bar(frame, text: str, detail: str, title: str) -> None:
+    """The bar above the sheet, with a button that goes to the result unless it is in front."""
     if frame is None or not on_screen(frame.getContainerWindow()):
         return
     controller = frame.getController()
     hide_bar(controller)
+    in_front = controller.getActiveSheet().getName() == title
+    buttons = () if in_front else (StringPair("Show the sheet", SHOW_COMMAND),)
     with suppress(UnoException, AttributeError):  # the status bar says it too
-        controller.appendInfobar(BAR, text, detail, 0, (StringPair("Show the sheet", SHOW_COMMAND),), True)
+        controller.appendInfobar(BAR, text, detail, 0, buttons, True)
 
 
 def hide_bar(controller) -> None:
