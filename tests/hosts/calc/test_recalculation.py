@@ -184,6 +184,28 @@ def test_a_formula_filled_down_many_rows(document):
     assert found == pytest.approx([durbin_watson(rows[row:row + 20]) for row in range(300)], rel=1e-12)
 
 
+def test_data_that_are_deleted_or_moved(document):
+    sheets = document.Sheets
+    sheet, rows = sheets.getByIndex(0), invented(12, 10)
+    sheets.insertNewByName("Gone", 1)
+    for one in (sheet, sheets.getByName("Gone")):
+        fill(one, "A1:C12", rows)
+    gone = type_formula(sheet, "E1", "=FIT_DURBIN_WATSON($Gone.A1:A12;$Gone.B1:C12)")
+    cell = type_formula(sheet, "E2", "=FIT_DURBIN_WATSON(A1:A12;B1:C12)")
+    assert gone.Value == cell.Value == pytest.approx(durbin_watson(rows), rel=1e-12)
+    sheets.removeByName("Gone")
+    assert gone.getError() != 0
+    sheet.Rows.insertByIndex(3, 2)  # two blank rows among the data, and the formula moves along
+    moved = sheet.getCellRangeByName("E2")
+    assert moved.FormulaLocal.count("14") == 2
+    assert moved.Value == pytest.approx(durbin_watson(rows), rel=1e-12)
+    sheet.Rows.removeByIndex(5, 4)
+    del rows[3:7]
+    assert moved.Value == pytest.approx(durbin_watson(rows), rel=1e-12)
+    sheet.Columns.removeByIndex(2, 1)
+    assert sheet.getCellRangeByName("D2").Value == pytest.approx(durbin_watson([row[:2] for row in rows]), rel=1e-12)
+
+
 def test_two_documents_keep_apart(calc, document):
     other = calc.new_document()
     try:

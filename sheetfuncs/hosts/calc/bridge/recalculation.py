@@ -13,10 +13,11 @@ two different calls have read the same.
 from __future__ import annotations
 
 import time
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 
 import unohelper
 from com.sun.star.awt import XCallback
+from com.sun.star.uno import Exception as UnoException
 from com.sun.star.util import XModifyListener
 from sheetfuncs_bridge import protocol
 from sheetfuncs_bridge.client import Packed
@@ -108,7 +109,8 @@ class Recalculation(unohelper.Base, XCallback):
         self._kept.clear()
         listeners, self._listeners = self._listeners, []
         for cells, listener in listeners:
-            cells.removeModifyListener(listener)
+            with suppress(UnoException):  # a range that was deleted meanwhile
+                cells.removeModifyListener(listener)
 
     def _listen(self, cells, key) -> None:
         listener = _Forget(self._kept, key)
