@@ -52,6 +52,9 @@ def test_the_record_is_kept_and_the_sheet_stays_at_its_place(calc, checked):
     sheets.moveByName(TITLE, 0)
     outside = type_formula(sheets.getByName("Rates"), "Z1", f"=$'{TITLE}'.B1")
     array = type_formula(sheets.getByName("Rates"), "Z3:Z4", f"=$'{TITLE}'.B4:B5")
+    checked.NamedRanges.addNewByName("Decided", f"$'{TITLE}'.$E$239", outside.CellAddress, 0)
+    decided = checked.NamedRanges.getByName("Decided")
+    decided.setContent(sheet.NamedRanges.getByName("_sheetfuncs_decision_1").Content)
     before, order = where(checked), titles(checked)
     outcome = press(calc, checked)
     assert outcome.succeeded
@@ -66,6 +69,12 @@ def test_the_record_is_kept_and_the_sheet_stays_at_its_place(calc, checked):
     assert outside.Formula == f"=$'{TITLE}'.B1"
     assert array.getCellByPosition(0, 0).String.startswith("Work time (h) from")
     assert array.getArrayFormula() == f"{{=$'{TITLE}'.B4:B5}}"
+    for step in (checked.UndoManager.undo, checked.UndoManager.redo):
+        step()
+        assert outside.String == TITLE
+        assert array.getCellByPosition(0, 0).String.startswith("Work time (h) from")
+        assert decided.ReferredCells.getCellByPosition(0, 0).String == "Use it"
+        assert titles(checked) == order
 
 
 def test_each_press_is_one_step_of_undo(calc, orders):
