@@ -23,6 +23,7 @@ from sheetfuncs_bridge import protocol
 EXTENSION = Path(__file__).resolve().parents[2]
 START_SECONDS = 30.0  # for loading the worker's libraries, on top of a request's own limit
 HEARTBEAT_SECONDS = 0.2
+MOST_REMEMBERED = 10_000  # digests of blocks that were sent; the worker itself keeps fewer
 IDLE_SECONDS = 900.0  # after which a worker that nobody asks is ended; the next request starts another
 
 
@@ -189,6 +190,8 @@ class _Process:
                 raise EOFError("it ended meanwhile")
             self._requests.put(({"kind": kind, "head": head, "blocks": names}, parts))
         answer = self._outcome(until, progress)
+        if len(self._sent) > MOST_REMEMBERED:
+            self._sent.clear()
         self._sent.update(one.digest for one in blocks)
         return answer
 
