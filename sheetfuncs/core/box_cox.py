@@ -20,6 +20,7 @@ from sheetfuncs.errors import ArgumentError
 POWERS = np.linspace(-5.0, 5.0, 21)  # where the highest likelihood is looked for first
 ZERO_AND_ONE = [10, 12]
 THIN, SOME = 400, 250  # rows that the search starts from, without and with a power series
+STANDARD_ERRORS, IN_BETWEEN = 3.0, 0.05
 TINY = 1e-300
 CHUNK = 16384  # rows at a time, which stay in the processor's cache
 SMALL = 0.005
@@ -231,9 +232,22 @@ def _by_series(profile: _Profile, cut: float) -> tuple[_Least, tuple[float, floa
 
 
 def _start(profile: _Profile) -> tuple[float, float] | None:
-    """A power near the likeliest one, by some rows at whole and half powers, and how far around it to look."""
+    """A power near the likeliest one, and how far around it to look: the power of all rows lies within a few standard
+    errors of that of some of them, and so do the interval's ends."""
     n = profile.u.shape[0]
-    some = profile if n <= 2 * SOME else _thinned(profile, max(SOME, n // 8))
+    if n <= 2 * SOME:
+        return _start_of(profile)
+    start = _start_of(_thinned(profile, SOME))
+    if start is None or n <= 8 * SOME:
+        return start
+    more = _thinned(profile, n // 8)
+    series = power_series(more.u, more.q, more.intercept, *start)
+    lowest = series.lowest() if series else None
+    return None if lowest is None else (lowest[0], STANDARD_ERRORS * sqrt(2.0 / (more.u.shape[0] * lowest[2])))
+
+
+def _start_of(some: _Profile) -> tuple[float, float] | None:
+    """The same by whole and half powers, between which a polynomial shows the place to a twentieth or so."""
     height = np.log(np.maximum(some.rss(POWERS), TINY))
     # Derivatives of the quartics through five neighbours.
     slope = (height[:-4] - height[4:] + 8.0 * (height[3:-1] - height[1:-3])) / (12.0 * (POWERS[1] - POWERS[0]))
@@ -246,8 +260,7 @@ def _start(profile: _Profile) -> tuple[float, float] | None:
         return None
     bend = float(slope[left + 1] - slope[left]) / float(inner[1] - inner[0])
     deviation = sqrt(2.0 / (some.u.shape[0] * bend))
-    # The power of all rows lies within a few standard errors of that of some of them, the interval's ends beyond.
-    return _between(inner, slope, left), 3.0 * deviation if some is profile else 3.5 * deviation
+    return _between(inner, slope, left), STANDARD_ERRORS * deviation + IN_BETWEEN
 
 
 def _thinned(profile: _Profile, rows: int) -> _Profile:

@@ -185,10 +185,11 @@ def _bandwidth(fit: Fit) -> float | None:
     wanted = np.ones(k)
     wanted[ones] = 0.0
     scores = fit.design.in_order((columns @ wanted if k else 1.0) * fit.residuals)
-    size = float(np.linalg.norm(scores))
+    size = float(np.abs(scores).max())
     if size == 0.0:
         return None
     scores = scores / size
+    scores /= np.linalg.norm(scores)
     lags = min(rule_of_thumb_lag(n), n - 1)
     covariances = np.array([scores[lag:] @ scores[: n - lag] for lag in range(lags + 1)])
     level = covariances[0] + 2.0 * covariances[1:].sum()
@@ -212,7 +213,8 @@ def _root_of_weights(fit: Fit, kind: str) -> np.ndarray | float:
 def _sandwich(fit: Fit, middle: np.ndarray) -> np.ndarray:
     outer = fit.basis.coefficient_root * fit.length
     matrix = outer @ middle @ outer.T
-    return 0.5 * (matrix + matrix.T)
+    matrix *= 0.5
+    return matrix + matrix.T
 
 
 def _covariance(

@@ -119,11 +119,13 @@ class FrequencySums:
     def inverses(self, s: np.ndarray) -> np.ndarray:
         """(nodes, k, k) for complex s (nodes,)."""
         # In real arithmetic, several times as fast: 1/(a - bi) = (a + bi)/(a^2 + b^2).
-        weights = np.multiply.outer(np.stack([-2.0 * s.real, 2.0 * s.imag]), self.shifted)
-        weights[0] += 1.0
-        weights /= weights[0] ** 2 + weights[1] ** 2
-        real, imaginary = (weights.reshape(-1, self.shifted.shape[0]) @ self.outer).reshape(2, s.shape[0], -1)
-        return (real + 1j * imaginary)[:, self.places]
+        real = 1.0 - np.multiply.outer(2.0 * s.real, self.shifted)
+        imaginary = np.multiply.outer(2.0 * s.imag, self.shifted)
+        squares = real * real
+        squares += imaginary * imaginary
+        real /= squares
+        imaginary /= squares
+        return (real @ self.outer + 1j * (imaginary @ self.outer))[:, self.places]
 
 
 @cache

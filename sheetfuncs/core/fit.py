@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property, wraps
-from math import isfinite, sqrt
+from math import sqrt
 from typing import Any, Concatenate, ParamSpec, TypeVar
 
 import numpy as np
@@ -27,6 +27,8 @@ from sheetfuncs.core.refinement import ill_conditioned, loses_digits, refined_ba
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import NoVariationError
 
+# Sums of squares below this leave room for those of differences and products.
+LARGEST_SQUARES = 1e300
 Of = TypeVar("Of")
 Options = ParamSpec("Options")
 
@@ -278,8 +280,8 @@ def _solve(design: Design, basis: Basis) -> Fit:
     y = design.response
     with np.errstate(over="ignore", invalid="ignore"):
         left, mean = centred(y) if design.intercept else (y.copy(), 0.0)
-        total = float(left @ left)
-        if not isfinite(total):
+        total, whole = float(left @ left), float(y @ y)
+        if not max(total, whole) < LARGEST_SQUARES:
             raise NoVariationError(
                 "The response is too large for its squares to be computed: express it in a larger unit."
             )
@@ -298,7 +300,7 @@ def _solve(design: Design, basis: Basis) -> Fit:
         coefficients = np.empty(slopes.shape[0] + 1)
         coefficients[0], coefficients[1:] = mean - basis.centre @ slopes, slopes
 
-    noise = EPS * (sqrt(y @ y) + float(np.abs(slopes) @ basis.raw_norm))
+    noise = EPS * (sqrt(whole) + float(np.abs(slopes) @ basis.raw_norm))
     rss = float(left @ left)
     if design.n > design.p and loses_digits(basis, total, rss, noise, coefficients, float(mean)):
         coefficients, left = refined_solution(design, basis, coefficients, left)

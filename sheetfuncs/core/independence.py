@@ -104,8 +104,10 @@ def lagged_response(fit: Fit) -> str | None:
     response = fit.design.in_order(fit.design.response)
     if fit.n < 4 or np.ptp(response) == 0:
         return None
+    second = 1 if fit.design.order is None else int(fit.design.order[1])
     for name, column in zip(fit.design.column_names, fit.design.columns.T, strict=True):
-        if np.array_equal(fit.design.in_order(column)[1:], response[:-1]):
+        # As a rule the first pair tells.
+        if column[second] == response[0] and np.array_equal(fit.design.in_order(column)[1:], response[:-1]):
             return name
     return None
 

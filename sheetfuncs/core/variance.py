@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from math import sqrt
+
 from scipy.special import chdtrc
 
 from sheetfuncs.core.auxiliary import refused
@@ -70,7 +72,7 @@ def breusch_pagan_fitted(fit: Fit) -> Result:
             method="ncv_test_fitted", args=args, variant=variant, null=CONSTANT,
             reason="The fitted values do not vary, so they can explain no variance.",
         )
-    part = float(direction @ (fit.residuals**2 / (fit.rss / fit.n))) ** 2 / length
+    part = (float(direction @ (fit.residuals**2 / (fit.rss / fit.n))) / sqrt(length)) ** 2
     return Statistic(
         method="ncv_test_fitted", args=args, variant=variant, statistic=part / 2.0, df=1,
         p=float(chdtrc(1, part / 2.0)), null="the errors have the same variance whatever the fitted value is",
