@@ -39,6 +39,7 @@ def refusal(calc, document, command="check"):
     ("sheet", "address", "sentence"),
     [
         ("Orders", "Z500", "The cell Z500 is empty, and nothing stands beside it. Select the data first"),
+        ("Orders", "B2", "Nothing stands beside the cell B2. Select the data first"),
         ("Orders", "T3:V9", "is empty"),
         ("Orders", "D5:D74", "leaves no predictor"),
         ("Orders", "D4:D74;F5:G74", "Ranges on different rows"),
@@ -77,6 +78,13 @@ def test_a_document_for_reading_only(calc, tmp_path):
         assert "open for reading only" in refusal(calc, document)
     finally:
         document.close(True)
+
+
+def test_changes_are_recorded(calc, document):
+    document.RecordChanges = True
+    outcome = press(calc, document)
+    assert not outcome.succeeded
+    assert "Changes to this document are being recorded" in outcome.text
 
 
 def test_a_protected_structure(calc, document):

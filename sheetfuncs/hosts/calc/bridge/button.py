@@ -34,6 +34,10 @@ PROTECTED = (
     "The structure of this document is protected, so that no sheet can be added. Take the protection away (Tools, "
     "Protect Spreadsheet Structure), or save a copy and check there."
 )
+RECORDED = (
+    "Changes to this document are being recorded (Edit, Track Changes), and LibreOffice needs minutes to replace a "
+    "sheet then. Stop recording, or save a copy and check there."
+)
 CHANGED_MEANWHILE = "The data were changed while they were checked: choose “Check again” on the sheet."
 
 _running: dict = {}  # RuntimeUID of a document -> the title of the sheet that is being checked
@@ -107,6 +111,8 @@ def _refuse_where_no_sheet_can_be_added(document) -> None:
         raise Refusal(READ_ONLY)
     if document.isProtected():
         raise Refusal(PROTECTED)
+    if document.getPropertyValue("RecordChanges"):
+        raise Refusal(RECORDED)
     if document.getPropertyValue("RuntimeUID") in _running:
         raise Refusal(STILL_RUNNING)
 

@@ -98,9 +98,11 @@ def _around(sheet, cell) -> Chosen:
         address.StartRow <= own.EndRow and own.StartRow <= address.EndRow
         and address.StartColumn <= own.EndColumn and own.StartColumn <= address.EndColumn
     )
+    name = f"{column_letters(own.StartColumn)}{own.StartRow + 1}"
     if not inside or (_is_one_cell(address) and not cursor.getCellByPosition(0, 0).getFormula()):
-        name = f"{column_letters(own.StartColumn)}{own.StartRow + 1}"
         raise Refusal(f"The cell {name} is empty, and nothing stands beside it. {NO_SELECTION}")
+    if _is_one_cell(address):
+        raise Refusal(f"Nothing stands beside the cell {name}. {NO_SELECTION}")
     return Chosen(_range(sheet, address), titled=True)
 
 
