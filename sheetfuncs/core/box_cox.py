@@ -383,14 +383,15 @@ def _interval(profile: _Profile, best: _Least, cut: float) -> tuple[float, float
 
 
 def _ratio_tests(profile: _Profile, best: _Least, series: PowerSeries | None) -> dict[str, dict[str, float]]:
+    heights = [series.at(power)[0] if series else float("nan") for power in (0.0, 1.0)]
+    if not all(map(isfinite, heights)):
+        rss = best.grid[ZERO_AND_ONE] if best.grid is not None else profile.rss(np.array([0.0, 1.0]))
+        rest = [log1p(max(0.0, one - best.rss) / best.rss) for one in rss.tolist()]
+    else:
+        rest = [0.0, 0.0]
     tests = {}
-    for place, (name, power) in enumerate((("LR_lambda_0", 0.0), ("LR_lambda_1", 1.0))):
-        height = series.at(power)[0] if series else float("nan")
-        if isfinite(height):
-            above = height - log(best.rss)
-        else:
-            rss = float(profile.rss(np.array([power]))[0] if best.grid is None else best.grid[ZERO_AND_ONE[place]])
-            above = log1p(max(0.0, rss - best.rss) / best.rss)
+    for name, height, other in zip(("LR_lambda_0", "LR_lambda_1"), heights, rest, strict=True):
+        above = height - log(best.rss) if isfinite(height) else other
         statistic = profile.u.shape[0] * max(0.0, above)
         tests[name] = {"statistic": statistic, "p": float(chdtrc(1, statistic))}
     return tests

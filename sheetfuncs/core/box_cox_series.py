@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cache
-from math import isfinite, log, sqrt
+from itertools import pairwise
+from math import factorial, isfinite, log, sqrt
 
 import numpy as np
 
@@ -101,7 +102,8 @@ def power_series(
         block -= along @ q[rows].T
         block -= mean
         products += block @ block.T
-    sums = np.bincount(_places(terms), products.ravel())
+    places, weights = _places(terms, int(centre == 0.0))
+    sums = np.bincount(places, (products * weights).ravel())
     if not isfinite(float(sums.sum())):
         return None
     enough = np.flatnonzero(np.abs(sums) > NEGLIGIBLE * abs(sums[0]))
@@ -109,13 +111,13 @@ def power_series(
 
 
 def _columns(u: np.ndarray, terms: int, centre: float, reach: float) -> np.ndarray:
-    """(terms, m): of which sums with the powers of d/reach are (e^((centre + d) u) - 1), over d for a centre of 0."""
+    """(terms, m): of which sums with the powers of d/reach are (e^((centre + d) u) - 1), over d for a centre of 0, once
+    each is divided by the factorial of its place."""
     columns = np.empty((terms, u.shape[0]))
     columns[0] = u if centre == 0.0 else np.exp(centre * u)
     scaled = reach * u
-    for j in range(1, terms):
-        np.multiply(columns[j - 1], scaled, out=columns[j])
-        columns[j] *= 1.0 / (j + 1 if centre == 0.0 else j)
+    for before, column in pairwise(columns):
+        np.multiply(before, scaled, out=column)
     if centre != 0.0:
         columns[0] = np.expm1(centre * u)
     return columns
@@ -132,6 +134,9 @@ def _number_of_terms(size: float) -> int | None:
 
 
 @cache
-def _places(terms: int) -> np.ndarray:
-    """To which coefficient each cross product belongs, (terms^2,)."""
-    return np.add.outer(np.arange(terms), np.arange(terms)).ravel()
+def _places(terms: int, first: int) -> tuple[np.ndarray, np.ndarray]:
+    """To which coefficient each cross product belongs, (terms^2,), and over which factorials, (terms, terms); the first
+    column's is that of `first`."""
+    places = np.arange(terms)
+    over = 1.0 / np.array([float(factorial(j + first)) for j in range(terms)])
+    return np.add.outer(places, places).ravel(), np.multiply.outer(over, over)

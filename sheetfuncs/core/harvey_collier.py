@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from math import sqrt
+
 import numpy as np
 from scipy.special import stdtr
 
@@ -51,16 +53,18 @@ def harvey_collier(fit: Fit, *, by: str | None = None) -> Result:
     first_row = _row(fit.design, order, found.start)
     if late:
         variant += f", from row {first_row} on"
-    spread = float(np.std(values, ddof=1))
-    if spread * np.sqrt(count - 1) <= ROUNDINGS * fit.noise:
+    mean = float(np.add.reduce(values)) / count
+    about = values - mean
+    spread = sqrt(float(about @ about) / (count - 1))
+    if spread * sqrt(count - 1) <= ROUNDINGS * fit.noise:
         return cannot("The recursive residuals are all equal, so that their mean has no error bar.", variant)
-    statistic = float(values.mean()) * np.sqrt(count) / spread
+    statistic = mean * sqrt(count) / spread
     note = SIGN_NOTE if not late else (
         f"{SIGN_NOTE} The first {found.start} rows are needed to tell the {fit.p} coefficients apart, so that it "
         f"starts with row {first_row}."
     )
     return Statistic(
-        method="harvey_collier", args=args, variant=variant, statistic=float(statistic), df=count - 1,
+        method="harvey_collier", args=args, variant=variant, statistic=statistic, df=count - 1,
         p=2.0 * float(stdtr(count - 1, -abs(statistic))), null=STRAIGHT, note=note,
         details={"n_start": found.start, "first_row": first_row},
     )

@@ -26,6 +26,7 @@ _ALTERNATIVES = {"positive": "greater", "negative": "less", "two-sided": "two.si
 _EXACT_NOTE = "Exact for normal errors and predictors that hold no earlier value of the response."
 
 
+@once_per_fit
 def durbin_watson(fit: Fit) -> Result:
     """Durbin-Watson statistic: sum of squared differences of neighbouring residuals over their sum of squares.
 

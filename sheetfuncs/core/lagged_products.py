@@ -38,9 +38,13 @@ class LaggedProducts:
         count = min(max(1, int(np.ceil(needed.max())) + 1), self.q.shape[0] - 1)
         if count > self.moments.shape[0]:
             self.moments = self._moments(min(count + count // 2, self.q.shape[0] - 1))
-        weights = 2.0 * ratio[:, None] ** np.arange(count)
+        weights = np.empty((ratio.shape[0], count), dtype=np.complex128)
+        weights[:, 0], weights[:, 1:] = 2.0, ratio[:, None]
+        np.multiply.accumulate(weights, axis=1, out=weights)  # powers
         weights[:, 0] = 1.0
-        return np.tensordot(weights, self.moments[:count], axes=1)
+        k = self.q.shape[1]
+        flat = self.moments[:count].reshape(count, -1)
+        return (weights.real @ flat + 1j * (weights.imag @ flat)).reshape(-1, k, k)
 
     def _moments(self, count: int) -> np.ndarray:
         """(count, k, k): the first moments."""
