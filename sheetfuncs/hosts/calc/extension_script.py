@@ -12,9 +12,9 @@ from contextlib import suppress
 
 import uno
 import unohelper
-from com.sun.star.connection import NoConnectException
 from com.sun.star.task import XInteractionHandler
 from com.sun.star.ucb import XCommandEnvironment
+from com.sun.star.uno import Exception as UnoException
 
 IDENTIFIER = "org.sheetfuncs.calc"
 SECONDS = 60
@@ -27,8 +27,10 @@ def connect(address):
     until = time.monotonic() + SECONDS
     while True:
         try:
-            return resolver.resolve(address)
-        except NoConnectException:
+            context = resolver.resolve(address)
+            context.ServiceManager.createInstanceWithContext("com.sun.star.frame.Desktop", context)
+            return context
+        except UnoException:  # not there yet; or there, and about to start again, as in a new profile
             if time.monotonic() > until:
                 raise
             time.sleep(0.1)

@@ -62,11 +62,13 @@ class Calc:
         self.desktop = self.service("com.sun.star.frame.Desktop")
 
     def _resolved(self, resolver: Any) -> Any:
-        from com.sun.star.connection import NoConnectException
+        from com.sun.star.uno import Exception as UnoException
 
         try:
-            return resolver.resolve(self.office.address)
-        except NoConnectException:
+            context = resolver.resolve(self.office.address)
+            context.ServiceManager.createInstanceWithContext("com.sun.star.frame.Desktop", context)
+            return context
+        except UnoException:  # not there yet; or there, and about to start again, as in a new profile
             return None
 
     def stop(self) -> None:
