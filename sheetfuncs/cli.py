@@ -181,7 +181,8 @@ def excel_remove() -> None:
 def excel_health() -> None:
     """Look at every part of the installation, and say what to do where one is not in order (exit code 1)."""
     from sheetfuncs.hosts.excel.folders import find_place
-    from sheetfuncs.hosts.excel.health import finding_lines, headline, health
+    from sheetfuncs.hosts.excel.health import headline, health
+    from sheetfuncs.hosts.findings import finding_lines
 
     findings = health(find_place())
     for line in finding_lines(findings):
@@ -224,7 +225,8 @@ def calc_remove(profile: Path | None) -> None:
 @_PROFILE
 def calc_health(profile: Path | None) -> None:
     """Look at every part of the installation, and say what to do where one is not in order (exit code 1)."""
-    from sheetfuncs.hosts.calc.health import finding_lines, headline, health
+    from sheetfuncs.hosts.calc.health import headline, health
+    from sheetfuncs.hosts.findings import finding_lines
 
     findings = health(profile)
     for line in finding_lines(findings):

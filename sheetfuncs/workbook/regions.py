@@ -130,3 +130,15 @@ def _title_goes_on(filled: np.ndarray, row: int, last: int, left: int, right: in
     counts = filled[row : last + 1, left : right + 1].sum(axis=1)
     more = np.flatnonzero(counts > 1)
     return len(more) > 0 and bool((counts[: more[0]] == 1).all())
+
+
+def below_titles(block: Block) -> tuple[Block, list[str]]:
+    """The block, taken from whole columns, from its first block of data on; a sentence where anything stood above."""
+    found = first_block(block)
+    above = found[0].first_row - 1 if found else 0
+    if not above:
+        return block, []
+    below = block.rows(above, block.row_count)
+    if not (block.kinds[:above] != Kind.BLANK).any():
+        return below, []
+    return below, [f"What stands above row {below.first_row} was skipped, as a title or note."]

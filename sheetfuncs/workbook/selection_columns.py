@@ -15,7 +15,7 @@ from sheetfuncs.cells.stored_text import shown
 from sheetfuncs.errors import ArgumentError, BlockShapeError
 from sheetfuncs.workbook.read import Book
 from sheetfuncs.workbook.read_gather import SheetCells
-from sheetfuncs.workbook.regions import first_block
+from sheetfuncs.workbook.regions import below_titles
 
 _EARLIEST_DATE = 366.0  # below it a date format shows a time of day or a duration, which is no time order
 
@@ -57,7 +57,7 @@ def read_selection(
     area = where if isinstance(where, Area) else where.area
     earlier = () if isinstance(where, Area) else where.remarks
     cells = book.read_cells(area)
-    block, titles = (cells.block, []) if area.last_row is not None else _below_titles(cells.block)
+    block, titles = (cells.block, []) if area.last_row is not None else below_titles(cells.block)
     chosen = _Columns(block)
     chosen.choose(response, predictors, order, date_predictors)
     remarks = [*earlier, *titles, *chosen.remarks, *_formula_remarks(book, cells, chosen.used, chosen)]
@@ -78,19 +78,6 @@ def select_columns(
     last_row, last_column = block.first_row + block.row_count - 1, block.worksheet_column(block.column_count - 1)
     area = Area(block.sheet, block.first_row, block.first_column, last_row, last_column)
     return chosen.selected(tuple(chosen.remarks), area)
-
-
-def _below_titles(block: Block) -> tuple[Block, list[str]]:
-    """Whole columns without the rows above their first block of data, which hold titles or notes."""
-    found = first_block(block)
-    if found is None or found[0].first_row == 1:
-        return block, []
-    skipped = found[0].first_row - 1
-    filled = np.flatnonzero(np.logical_or.reduce(block.kinds[:skipped] != Kind.BLANK, axis=1))
-    below = block.rows(skipped, block.row_count)
-    if not len(filled):
-        return below, []
-    return below, [f"What stands above row {below.first_row} was skipped, as a title or note."]
 
 
 class _Columns:

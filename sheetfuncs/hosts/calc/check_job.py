@@ -8,7 +8,7 @@ from dataclasses import replace
 from typing import Any
 
 from sheetfuncs.cells.address import parse_area
-from sheetfuncs.cells.block import Block, Kind
+from sheetfuncs.cells.block import Block
 from sheetfuncs.checking import Check, Settings
 from sheetfuncs.hosts.calc.worker import Head, Progress
 from sheetfuncs.hosts.live import area_of_parts, check_block, draw_check, same_range, title_of_check
@@ -18,7 +18,7 @@ from sheetfuncs.report.entries import ENTRY_FIELDS, changed_entries, settings_fr
 from sheetfuncs.report.layout import COLUMN_PIXELS
 from sheetfuncs.report.names import DECISION, ENTRY
 from sheetfuncs.report.record import DECISION_FIELDS
-from sheetfuncs.workbook.regions import first_block
+from sheetfuncs.workbook.regions import below_titles
 from sheetfuncs.workbook.settings import settings_from_names
 
 # Lengths go to LibreOffice in hundredths of a millimetre.
@@ -41,7 +41,7 @@ def check(head: Head, blocks: list[Block], progress: Progress) -> tuple[Head, by
     """
     block, remarks = blocks[0], list(head.get("remarks", ()))
     if head.get("titled"):
-        block, skipped = _below_titles(block)
+        block, skipped = below_titles(block)
         remarks += skipped
     progress("Checking ...")
     settings, said = _settings(head)
@@ -101,18 +101,6 @@ def _place(chart: Chart) -> list[int]:
         chart.place.first_row, chart.place.first_column, round(_CHART_OFFSET * _PIXEL), round(width * _PIXEL),
         round(chart.height * _PIXEL),
     ]
-
-
-def _below_titles(block: Block) -> tuple[Block, list[str]]:
-    """The block from its first block of data on, and a sentence where titles or notes stood above."""
-    found = first_block(block)
-    start = found[0].first_row - 1 if found else 0
-    if not start:
-        return block, []
-    below = block.rows(start, block.row_count)
-    if not (block.kinds[:start] != Kind.BLANK).any():
-        return below, []
-    return below, [f"What stands above row {below.first_row} was skipped, as a title or note."]
 
 
 def _earlier(ours: Any, check: Check) -> dict[str, Any] | None:

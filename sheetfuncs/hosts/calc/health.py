@@ -6,7 +6,6 @@ import json
 import subprocess
 import tempfile
 import threading
-from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -14,19 +13,10 @@ from sheetfuncs import __version__
 from sheetfuncs.errors import InstallError
 from sheetfuncs.hosts.calc import office, protocol
 from sheetfuncs.hosts.calc.install import ask_office
+from sheetfuncs.hosts.findings import Finding
 
 INSTALL = "close LibreOffice and run `sheetfuncs calc install`"
 SECONDS = 60.0
-
-
-@dataclass(frozen=True)
-class Finding:
-    """One part: what it is, whether it is in order, what was found there, and the cure in one sentence ("" if none)."""
-
-    what: str
-    ok: bool
-    found: str
-    cure: str = ""
 
 
 def health(profile: Path | None = None) -> list[Finding]:
@@ -52,16 +42,6 @@ def headline(findings: list[Finding]) -> str:
     if not troubles:
         return "LibreOffice, the extension and sheetfuncs work together."
     return f"{troubles} {'part needs' if troubles == 1 else 'parts need'} attention."
-
-
-def finding_lines(findings: list[Finding]) -> list[str]:
-    """A line for each finding, and one for its cure; troubles first."""
-    lines = []
-    for finding in sorted(findings, key=lambda finding: finding.ok):
-        lines.append(f"{'In order' if finding.ok else 'Not in order'}: {finding.what}. {finding.found}")
-        if finding.cure:
-            lines.append(f"    To do: {finding.cure}")
-    return lines
 
 
 def _version(what: str, found: str) -> Finding:

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterator
-from dataclasses import dataclass
 from pathlib import Path
 
 from sheetfuncs.errors import InstallError
@@ -16,21 +15,12 @@ from sheetfuncs.hosts.excel.folders import Place, find_place
 from sheetfuncs.hosts.excel.install import waiting_files
 from sheetfuncs.hosts.excel.marks import is_marked
 from sheetfuncs.hosts.excel.record import Record, read_record
+from sheetfuncs.hosts.findings import Finding, finding_lines
 
 INSTALL = "close Excel and run `sheetfuncs excel install`"
 NOW = f"C{INSTALL[1:]}."
 BESIDE = {"Windows": ("pywin32",), "macOS": ("appscript", "psutil")}
 """What xlwings itself needs on each system (its metadata)."""
-
-
-@dataclass(frozen=True)
-class Finding:
-    """One part: what it is, whether it is in order, what was found there, and the cure in one sentence ("" if none)."""
-
-    what: str
-    ok: bool
-    found: str
-    cure: str = ""
 
 
 def health(place: Place) -> list[Finding]:
@@ -54,16 +44,6 @@ def headline(findings: list[Finding]) -> str:
     if not troubles:
         return "Everything that can be seen from outside Excel is in place."
     return f"{troubles} of {len(findings)} parts {'needs' if troubles == 1 else 'need'} attention."
-
-
-def finding_lines(findings: list[Finding]) -> list[str]:
-    """A line for each finding, and one for its cure; troubles first."""
-    lines = []
-    for finding in sorted(findings, key=lambda finding: finding.ok):
-        lines.append(f"{'In order' if finding.ok else 'Not in order'}: {finding.what}. {finding.found}")
-        if finding.cure:
-            lines.append(f"    To do: {finding.cure}")
-    return lines
 
 
 def _record(place: Place) -> tuple[Record | None, Finding]:

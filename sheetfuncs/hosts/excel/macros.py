@@ -15,7 +15,7 @@ from sheetfuncs.hosts.excel.health import health_text
 from sheetfuncs.hosts.excel.message import message_of_check
 from sheetfuncs.hosts.excel.quiet import Step, held_still
 from sheetfuncs.hosts.excel.ranges import read_block
-from sheetfuncs.hosts.excel.selection import Place, below_titles, place_of_record, place_of_selection, selected_cells
+from sheetfuncs.hosts.excel.selection import Place, place_of_record, place_of_selection, selected_cells
 from sheetfuncs.hosts.excel.sheets import (
     OurSheet,
     bring_in,
@@ -32,6 +32,7 @@ from sheetfuncs.judgement.words import listed
 from sheetfuncs.report.entries import ENTRY_FIELDS, changed_entries, settings_from_entries
 from sheetfuncs.report.names import DECISION, ENTRY
 from sheetfuncs.report.record import DECISION_FIELDS
+from sheetfuncs.workbook.regions import below_titles
 
 if TYPE_CHECKING:
     import xlwings as xw
@@ -124,7 +125,7 @@ def _check(book: xw.Book, place: Place, again: OurSheet | None, step: Step) -> s
         remarks += ("Excel did not say which rows are hidden, so hidden rows are not counted as such.",)
     if place.titled:
         block, skipped = below_titles(block)
-        remarks += skipped
+        remarks += tuple(skipped)
     step("checking ...")
     check = check_block(block, book=book.name, settings=place.settings, remarks=remarks)
     if place.area is not None:

@@ -7,11 +7,9 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 from sheetfuncs.cells.address import cell_name, column_letters, format_area, parse_area
-from sheetfuncs.cells.block import Block, Kind
 from sheetfuncs.errors import AddressError
 from sheetfuncs.hosts.excel.ranges import within_used
 from sheetfuncs.hosts.live import area_of_parts
-from sheetfuncs.workbook.regions import first_block
 
 if TYPE_CHECKING:
     import xlwings as xw
@@ -98,15 +96,3 @@ def _around(cell: xw.Range) -> Place:
         )
     address = region.address.replace("$", "")
     return Place(region, (f"{where} is one cell: the block around it, {address}, is used.",), titled=True)
-
-
-def below_titles(block: Block) -> tuple[Block, tuple[str, ...]]:
-    """The block from its first block of data on, and a sentence where titles or notes stood above it."""
-    found = first_block(block)
-    skipped = found[0].first_row - 1 if found else 0
-    if not skipped:
-        return block, ()
-    below = block.rows(skipped, block.row_count)
-    if not (block.kinds[:skipped] != Kind.BLANK).any():
-        return below, ()
-    return below, (f"What stands above row {below.first_row} was skipped, as a title or note.",)

@@ -6,8 +6,9 @@ from collections.abc import Iterator
 from pathlib import Path
 
 from sheetfuncs.hosts.excel.folders import Place
-from sheetfuncs.hosts.excel.health import finding_lines, health
+from sheetfuncs.hosts.excel.health import health
 from sheetfuncs.hosts.excel.install import install, remove
+from sheetfuncs.hosts.findings import finding_lines
 
 
 def install_lines(place: Place, xlam: Path | None) -> Iterator[str]:

@@ -14,7 +14,7 @@ from sheetfuncs import __version__
 from sheetfuncs.cli import main
 from sheetfuncs.errors import InstallError
 from sheetfuncs.hosts.calc import health, install, office
-from sheetfuncs.hosts.calc.health import finding_lines
+from sheetfuncs.hosts.findings import finding_lines
 
 
 def run(*arguments: str) -> tuple[int, str]:

@@ -16,12 +16,14 @@ from fake_homes import DLLS, VERSIONS, mac, place_on, windows
 
 from sheetfuncs import __version__
 from sheetfuncs.errors import InstallError
-from sheetfuncs.hosts.excel import addin_file, health, marks
-from sheetfuncs.hosts.excel.addin import build_addin
+from sheetfuncs.hosts.excel import health, marks
 from sheetfuncs.hosts.excel.folders import Place, find_place
-from sheetfuncs.hosts.excel.health import BESIDE, Finding, finding_lines, headline, health_text
+from sheetfuncs.hosts.excel.health import BESIDE, headline, health_text
 from sheetfuncs.hosts.excel.install import install
 from sheetfuncs.hosts.excel.swapping import WAITING
+from sheetfuncs.hosts.findings import Finding, finding_lines
+
+pytestmark = pytest.mark.usefixtures("built_once")
 
 SYSTEMS = ["Windows", "macOS"]
 ASK_THE_SYSTEM = marks._has_attribute
@@ -29,19 +31,6 @@ PARTS = [
     "Python", "Packages", "The add-in", "The add-in's version", "The configuration",
     "The connection from Excel to Python", "The mark of a download", "Left-over files", "The list of installed files",
 ]
-
-
-@pytest.fixture(scope="module")
-def built() -> bytes:
-    file = io.BytesIO()
-    build_addin(file)
-    return file.getvalue()
-
-
-@pytest.fixture(autouse=True)
-def built_once(monkeypatch, built):
-    """Every build gives the same bytes (test_addin.py), so one does for all tests here."""
-    monkeypatch.setattr(addin_file, "build_addin", lambda file: file.write(built))
 
 
 @pytest.fixture(autouse=True)

@@ -30,20 +30,9 @@ from sheetfuncs.hosts.excel.install import install, remove
 from sheetfuncs.hosts.excel.record import digest
 from sheetfuncs.hosts.excel.vba_project import modules
 
+pytestmark = pytest.mark.usefixtures("built_once")
+
 SYSTEMS = ["Windows", "macOS"]
-
-
-@pytest.fixture(scope="module")
-def built() -> bytes:
-    file = io.BytesIO()
-    build_addin(file)
-    return file.getvalue()
-
-
-@pytest.fixture(autouse=True)
-def built_once(monkeypatch, built):
-    """Every build gives the same bytes (test_addin.py), so one does for all tests here."""
-    monkeypatch.setattr(addin_file, "build_addin", lambda file: file.write(built))
 
 
 def changed_package(content: bytes, **parts: bytes) -> bytes:
