@@ -103,7 +103,7 @@ def _level(name: str, value: Value | bool) -> float:
         return 0.95
     percent = text.endswith("%")
     try:
-        level = float(text.removesuffix("%").strip().replace(",", "."))
+        level = float(text.rstrip("% ").replace(",", "."))
     except ValueError:
         level = math.nan
     level = level / 100.0 if percent or level > 1.0 else level

@@ -52,6 +52,7 @@ def test_unchanged_cells_give_the_recorded_settings() -> None:
     ("level", 90.0, 0.9),
     ("level", "99 %", 0.99),
     ("level", "97,5%", 0.975),
+    ("level", "90%%", 0.9),  # a program that adds the sign to what was typed with one
     ("level", None, 0.95),
 ])
 def test_a_changed_cell_changes_its_setting_alone(field: str, entry: object, setting: object) -> None:

@@ -8,7 +8,8 @@ from typing import TYPE_CHECKING
 from sheetfuncs.cells.address import cell_name, is_address, parse_area
 from sheetfuncs.cells.block import ERROR_TEXTS, Block
 from sheetfuncs.errors import AddressError, ArgumentError, SheetfuncsError
-from sheetfuncs.functions.evaluate import evaluate, find_function, why
+from sheetfuncs.functions.evaluate import find_function
+from sheetfuncs.functions.explain_call import gives, rows_behind, stopped
 from sheetfuncs.functions.formula import ParsedCall, RangeText, parse_formula
 from sheetfuncs.functions.registry import REGISTRY
 from sheetfuncs.hosts.excel.functions import unexpected_failure
@@ -73,13 +74,11 @@ def _explain(text: str, cell: xw.Range) -> str:
             f"{function.signature}."
         )
     given = _given(call, cell)
-    sentence = why(call.name, *given)
-    if sentence != "ok":
-        return f"{call.name} gives {evaluate(call.name, *given)}. {sentence}"
-    rows = _about_rows(call.name, given)
-    shown = read_block(cell).value(0, 0)
-    if shown not in ERROR_TEXTS or rows:
-        return f"{call.name} gives a value." + (f" {rows}" if rows else "")
+    refused = stopped(call.name, given)
+    if refused:
+        return refused
+    if read_block(cell).value(0, 0) not in ERROR_TEXTS or rows_behind(call.name, given):
+        return gives(call.name, given)
     kept = unexpected_failure(call.name)
     return f"{call.name} gives a value now: have the sheet calculated again." + (f" Before: {kept}" if kept else "")
 
@@ -111,13 +110,3 @@ def _range_called(text: str, cell: xw.Range) -> xw.Range:
         raise AddressError(
             f"Excel does not find {text!r} here: give a range of this workbook, such as Jobs!C4:F64."
         ) from None
-
-
-def _about_rows(name: str, given: list[object]) -> str:
-    """What FIT_WHY says of the rows behind a call on a response and predictors; empty where there is nothing to say."""
-    known = dict(zip([argument.name for argument in REGISTRY[name].arguments], given, strict=False))
-    if "response" not in known or known.get("predictors") is None:
-        return ""
-    options = {option: known[option] for option in ("intercept", "order") if known.get(option) is not None}
-    said = str(evaluate("FIT_WHY", known["response"], known["predictors"], **options))
-    return "" if said == "ok" else said.removeprefix("ok; ")

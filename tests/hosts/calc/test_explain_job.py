@@ -21,7 +21,7 @@ def sentence(name: str, *given: object) -> str:
 @pytest.mark.parametrize(
     ("given", "expected"),
     [
-        (("FIT_DURBIN_WATSON", RESPONSE[:7], PREDICTOR[:7]), "FIT_DURBIN_WATSON gives a value; nothing stopped it."),
+        (("FIT_DURBIN_WATSON", RESPONSE[:7], PREDICTOR[:7]), "FIT_DURBIN_WATSON gives a value."),
         (("FIT_DURBIN_WATSON", RESPONSE, PREDICTOR), "1 of 7 rows left out: row 8 (blank in response (Hours))."),
         (("FIT_VIF", [["a", "b"], [1.0, 2.0], [2.0, 4.0], [3.0, 6.0], [4.0, 8.0]]), "FIT_VIF gives #NUM!. "),
         (("FIT_RESET_P", [["Hours"], ["x"], [2.0]], PREDICTOR[:3]), "FIT_RESET_P gives #VALUE!. "),
@@ -31,3 +31,10 @@ def sentence(name: str, *given: object) -> str:
 )
 def test_sentences(given, expected):
     assert expected in sentence(*given)
+
+
+def test_a_column_of_values_says_what_rows_left_out_show():
+    said = sentence("FIT_LEVERAGE", [[1.0], [2.5], [2.0], [4.5], [None]], [[1.0], [2.0], [3.0], [4.0], [5.0]])
+    assert said == (
+        "FIT_LEVERAGE gives its values. 1 of 5 rows left out: row 5 (blank in response). Those show #N/A."
+    )

@@ -40,10 +40,10 @@ def test_a_refusal_is_said_in_its_sentence(app):
 
 
 def test_a_value_is_said_to_be_one_and_rows_left_out_are_named(app):
-    assert ask(app, "=FIT_VIF(C4:D33)", 1.02) == "Jobs!H40: FIT_VIF gives a value."
+    assert ask(app, "=FIT_VIF(C4:D33)", 1.02) == "Jobs!H40: FIT_VIF gives its values."
     sheet(app).cells[10, 3].value = None
     said = ask(app, "=FIT_RESIDUALS(B3:B33,C3:D33)", "#N/A", shape="array")
-    assert said.startswith("Jobs!H40: FIT_RESIDUALS gives a value. 1 of 30 rows left out: row 10")
+    assert said.startswith("Jobs!H40: FIT_RESIDUALS gives its values. 1 of 30 rows left out: row 10")
 
 
 def test_a_call_inside_a_calculation_is_found(app):
@@ -65,7 +65,7 @@ def test_a_cell_that_is_filled_from_the_formula_above_it(app):
     jobs.cells[39, 8] = Cell(1.2, "=FIT_VIF(C4:D33)", shape="spill")
     jobs.cells[40, 8] = Cell(1.2, None, shape="spilled")
     jobs.selected = "H40"
-    assert press(app, why_this_value) == "Jobs!H40: FIT_VIF gives a value."
+    assert press(app, why_this_value) == "Jobs!H40: FIT_VIF gives its values."
 
 
 @pytest.mark.parametrize("formula", ["=SUM(B4:B33)", None])
