@@ -159,7 +159,7 @@ def _array(
     """One formula over several cells, as every version of Excel knows it, with the value of each cell."""
     last_row, last_column = row + len(cells) - 1, column + len(cells[0]) - 1
     for down, line in enumerate(cells):
-        style = book.format("header_right" if headed and down == 0 else "figure")
+        style = book.format("header_right" if headed and down == 0 else "row_figure")
         for across, cell in enumerate(line):
             if (down, across) == (0, 0):
                 sheet.write_array_formula(row, column, last_row, last_column, formula_of(function), style, cell)

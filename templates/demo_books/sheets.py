@@ -38,6 +38,7 @@ _FORMATS: dict[str, dict[str, Any]] = {
     "tenth": {"num_format": "#,##0.0"},
     "hundredth": {"num_format": "#,##0.00"},
     "figure": {"num_format": "[>=0.00005]0.0000;[<=-0.00005]-0.0000;0.0E+00", "align": "right", "valign": "top"},
+    "row_figure": {"num_format": "[>=0.00005]0.0000;[<=-0.00005]-0.0000;0.0E+00", "align": "right"},
     "call": {"align": "left", "indent": 1, "valign": "top"},
     "title_line": {"bold": True, "font_color": CLAY},
     "price": {"num_format": "€ 0.000"},
