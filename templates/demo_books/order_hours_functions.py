@@ -135,7 +135,8 @@ def _write_tables(book: Book, value: Callable[[WorksheetFunction], Any]) -> None
             cells = value(function)
             sheet.write_string(row, 1, formula_of(function), book.format("title_line"))
             for place, column in enumerate(function.columns):
-                sheet.write(row + 1, 1 + place, column, book.format("unit"))
+                texts = isinstance(cells[0][place], str)
+                sheet.write(row + 1, 1 + place, column, book.format("quiet" if texts else "quiet_right"))
             _array(book, sheet, row + 2, 1, function, cells)
             row += len(cells) + 4
 
@@ -159,8 +160,9 @@ def _array(
     """One formula over several cells, as every version of Excel knows it, with the value of each cell."""
     last_row, last_column = row + len(cells) - 1, column + len(cells[0]) - 1
     for down, line in enumerate(cells):
-        style = book.format("header_right" if headed and down == 0 else "row_figure")
         for across, cell in enumerate(line):
+            words = "text" if isinstance(cell, str) and not cell.startswith("#") else "row_figure"
+            style = book.format("header_right" if headed and down == 0 else words)
             if (down, across) == (0, 0):
                 sheet.write_array_formula(row, column, last_row, last_column, formula_of(function), style, cell)
             elif isinstance(cell, str):

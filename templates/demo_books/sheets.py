@@ -24,6 +24,7 @@ _FORMATS: dict[str, dict[str, Any]] = {
     "title": {"bold": True, "font_size": 16, "font_color": CLAY},
     "mark": {"bold": True, "font_size": 12, "bg_color": SAND, "border": 1, "border_color": CLAY, "align": "center"},
     "quiet": {"font_color": SLATE, "italic": True},
+    "quiet_right": {"font_color": SLATE, "italic": True, "align": "right"},
     "unit": {"font_color": SLATE, "italic": True, "indent": 1},
     "section": {"bold": True, "font_size": 12, "font_color": CLAY, "bottom": 1, "bottom_color": CLAY},
     "header": _HEADER,
