@@ -130,7 +130,7 @@ def functions(name: str | None) -> None:
 @main.command()
 @click.argument("folder", type=click.Path(path_type=Path, file_okay=False), default="sheetfuncs-demo")
 def demo(folder: Path) -> None:
-    """Write three invented workbooks into FOLDER, to try things on."""
+    """Write invented workbooks into FOLDER, to try things on: three to check, one with every function in a cell."""
     from sheetfuncs.hosts.demo import write_demo
 
     paths = write_demo(folder)

@@ -260,9 +260,11 @@ def test_functions_lists_and_explains():
     run("functions", "FIT_NOTHING", exit_code=1)
 
 
-def test_demo_writes_three_workbooks_and_leaves_existing_ones(tmp_path):
+def test_demo_writes_its_workbooks_and_leaves_existing_ones(tmp_path):
     folder = tmp_path / "demo"
     assert "sheetfuncs check" in run("demo", folder).stdout
+    functions = "order-hours-functions.xlsm"
+    assert (folder / functions).read_bytes() == (templates_folder() / functions).read_bytes()
     books = sorted(folder.glob("*.xlsx"))
     assert len(books) == 3
     books[0].write_bytes(b"mine")

@@ -19,11 +19,16 @@ def templates_folder() -> Path:
     raise WorkbookError("The demo workbooks are missing from this installation: install sheetfuncs again.")
 
 
+def _books(folder: Path) -> list[Path]:
+    """Those to check first, then the one with every function in a cell."""
+    return [*sorted(folder.glob("*.xlsx")), *sorted(folder.glob("*.xlsm"))]
+
+
 def write_demo(folder: Path) -> list[Path]:
     """Copy the demo workbooks into folder (made if need be); an existing file of that name is left as it is."""
     folder.mkdir(parents=True, exist_ok=True)
     written = []
-    for template in sorted(templates_folder().glob("*.xlsx")):
+    for template in _books(templates_folder()):
         target = folder / template.name
         if not target.exists():
             with written_beside(target) as file:
