@@ -14,6 +14,7 @@ ERROR_CODES = {  # com.sun.star.table.XCell.getError
 }
 LEAST_LAST_ROW = 65_535  # the last row (from 0) of a sheet is here or further down, depending on the version
 OTHER_ERROR = "#VALUE!"
+SLAB = 2_048
 MOST_ERRORS = 5_000  # asked for one by one; beyond that a cell is an error without saying which
 ANY_RESULT = 1 | 2 | 4  # com.sun.star.sheet.FormulaResult
 DATE_OR_TIME, LOGICAL = 2 | 4, 1024  # com.sun.star.util.NumberFormat
@@ -87,23 +88,34 @@ def _values(cells) -> list:
 
 
 def _with_odd_cells(values: list, columns: int, cells):
-    """(numbers, kinds, texts) where blanks ('', None after errors) and texts are among the values."""
-    kinds, texts = bytearray([protocol.NUMBER]) * len(values), []
+    """(numbers, kinds, texts) where blanks ('', None after errors) and texts are among the values.
+
+    Most often they are few, a header row say: only the slabs that hold some are looked through cell by cell.
+    """
+    numbers, kinds, texts = array("d"), bytearray([protocol.NUMBER]) * len(values), []
     errors = 0
-    for place, kind in enumerate(list(map(type, values))):
-        if kind is float:
+    for start in range(0, len(values), SLAB):
+        slab = values[start:start + SLAB]
+        try:
+            numbers.fromlist(slab)
             continue
-        value, values[place] = values[place], nan
-        if value is None:
-            kinds[place] = protocol.ERROR
-            errors += 1
-            texts.append(_error_text(cells, place, columns) if errors <= MOST_ERRORS else OTHER_ERROR)
-        elif value == "":
-            kinds[place] = protocol.BLANK
-        else:
-            kinds[place] = protocol.TEXT
-            texts.append(value)
-    return array("d", values), bytes(kinds), texts
+        except TypeError:
+            pass  # nothing of it was taken
+        for place, value in enumerate(slab):
+            if type(value) is float:
+                continue
+            slab[place] = nan
+            if value is None:
+                kinds[start + place] = protocol.ERROR
+                errors += 1
+                texts.append(_error_text(cells, start + place, columns) if errors <= MOST_ERRORS else OTHER_ERROR)
+            elif value == "":
+                kinds[start + place] = protocol.BLANK
+            else:
+                kinds[start + place] = protocol.TEXT
+                texts.append(value)
+        numbers.fromlist(slab)
+    return numbers, bytes(kinds), texts
 
 
 def _error_text(cells, place: int, columns: int) -> str:
