@@ -23,6 +23,7 @@ from sheetfuncs.core.basis import (
     factorize,
 )
 from sheetfuncs.core.design import Design
+from sheetfuncs.core.memory import keep_freed_memory
 from sheetfuncs.core.refinement import ill_conditioned, loses_digits, refined_basis, refined_solution
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import NoVariationError
@@ -269,6 +270,7 @@ def fit_design(design: Design) -> Fit:
     Refused as `factorize` says, and where the response's squares overflow or underflow. With n == p, or with residuals
     within a few roundings of the data, the residuals are set to zero: what is computed there is noise.
     """
+    keep_freed_memory()
     basis = factorize(design.columns, design.column_names, intercept=design.intercept)
     with few_threads(design.columns.size):
         if ill_conditioned(basis):
