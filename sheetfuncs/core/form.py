@@ -88,16 +88,22 @@ def _added_by_products(fit: Fit, of: str, powers: tuple[int, ...]) -> Addition |
     predictors or to each other that it could cost digits."""
     if fit.n < MANY_ROWS or fit.told_apart_to > FAR_APART:
         return None
-    # The square's cross products are among those of square and cube.
-    gram = _power_products(fit, of, (2, 3) if powers == (2,) else powers)
-    width = gram.shape[0] - 1 - fit.p
-    if powers == (2,):
-        width //= 2
-    found = coordinates(leading(gram, fit.p + width))
+    # The squares' cross products are among those of squares and cubes, and so are, as a rule, their coordinates.
+    together = (2, 3) if powers == (2,) else powers
+    found = _power_coordinates(fit, of, together)
+    gram = _power_products(fit, of, together)
+    width = (gram.shape[0] - 1 - fit.p) * len(powers) // len(together)
+    if found is None and together != powers:
+        found = coordinates(leading(gram, fit.p + width))
     if found is None:
         return None
     squares = fit.rss * found[fit.p :] ** 2
-    return Addition(float(squares[:-1].sum()), float(squares[-1]), width)
+    return Addition(float(np.add.reduce(squares[:width])), float(np.add.reduce(squares[width:])), width)
+
+
+@once_per_fit
+def _power_coordinates(fit: Fit, of: str, powers: tuple[int, ...]) -> np.ndarray | None:
+    return coordinates(_power_products(fit, of, powers))
 
 
 def _added_by_columns(fit: Fit, base: np.ndarray, powers: tuple[int, ...]) -> Addition:

@@ -75,8 +75,10 @@ def _tests(
         return tuple(replace(refusal, args=one["args"], variant=one["variant"]) for one in named)
     df = (fit.n - second - fit.p, first - fit.p)
     statistic = sums[1] / df[0] / (sums[0] / df[1])
+    greater, less = float(fdtrc(*df, statistic)), float(fdtr(*df, statistic))
+    p = {"greater": greater, "less": less, "two-sided": min(1.0, 2.0 * min(greater, less))}
     return tuple(
-        Statistic(**one, statistic=statistic, df=df, p=_p(statistic, df, alternative))
+        Statistic(**one, statistic=statistic, df=df, p=p[alternative])
         for one, alternative in zip(named, alternatives, strict=True)
     )
 
@@ -107,11 +109,6 @@ def _both_sums(
                 reason=f"The {where} part is fitted perfectly, so that its errors show no spread to compare.",
             )
     return sums[0], sums[1]
-
-
-def _p(statistic: float, df: tuple[int, int], alternative: str) -> float:
-    greater, less = float(fdtrc(*df, statistic)), float(fdtr(*df, statistic))
-    return {"greater": greater, "less": less, "two-sided": min(1.0, 2.0 * min(greater, less))}[alternative]
 
 
 def _checked(

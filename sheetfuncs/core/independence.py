@@ -216,19 +216,30 @@ def _sums_by_products(fit: Fit, lags: int, *, zeros: bool) -> tuple[float, float
     """The same from cross products; None where that could cost digits."""
     if lags > TOGETHER or fit.told_apart_to > FAR_APART:
         return None
-    gram, first = _lagged_products(fit)
-    if not zeros:
-        whole, gram = gram, gram - first[:, :lags] @ first[:, :lags].T
-        if (gram.diagonal() < FAR_APART * whole.diagonal()).any():
-            return None
-    found = coordinates(leading(gram, fit.p + lags))
+    found = _all_lags(fit) if zeros else _without_first_rows(fit, lags)
+    if found is None and zeros:
+        found = coordinates(leading(_lagged_products(fit)[0], fit.p + lags))
     if found is None:
         return None
     squares = fit.rss * found**2
-    rest = float(squares[-1])
+    rest = float(np.add.reduce(squares[fit.p + lags :]))
     # The residuals of all rows are orthogonal to the design, those without the first rows are not.
-    part = float(np.add.reduce(squares[fit.p if zeros else 0 : -1]))
+    part = float(np.add.reduce(squares[fit.p if zeros else 0 : fit.p + lags]))
     return (part, rest) if rest > (ROUNDINGS * fit.noise) ** 2 else None
+
+
+@once_per_fit
+def _all_lags(fit: Fit) -> np.ndarray | None:
+    """Coordinates of the residuals along the design and one lag after the other: those of fewer lags come first."""
+    return coordinates(_lagged_products(fit)[0])
+
+
+def _without_first_rows(fit: Fit, lags: int) -> np.ndarray | None:
+    whole, first = _lagged_products(fit)
+    gram = whole - first[:, :lags] @ first[:, :lags].T
+    if (gram.diagonal() < FAR_APART * whole.diagonal()).any():
+        return None
+    return coordinates(leading(gram, fit.p + lags))
 
 
 @once_per_fit
