@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cache
 
 import numpy as np
 from scipy.linalg import lapack
@@ -15,7 +16,7 @@ BLOCK = 64
 # Rows in a block once many are taken at a time: the work of a row grows with the square of this.
 SMALL_BLOCK = 16
 # Blocks that are taken at a time, so that memory stays small.
-TOGETHER = 128
+TOGETHER = 64
 # Cross products of the rows so far cost no digit that matters once every column has this share left after the others,
 # and once this much of it, squared, that no row to come, of length 1 at most, lies far beyond them.
 WELL_APART, REACHED = 0.1, 1e-3
@@ -75,9 +76,10 @@ class _Rows:
         np.divide(e, self.length, out=rows[:, -1])
         return rows
 
-    def roundings(self, count: int) -> float:
-        """The roundings that the first rows' predictors carry, relative to how far they lie apart."""
-        near = self.near_first(0, count)[:, self.constant : -1]
+    def roundings(self, rows: np.ndarray) -> float:
+        """The roundings that the predictors of first rows, as `near_first` gives them, carry, relative to how far they
+        lie apart."""
+        near = rows[:, self.constant : -1]
         with np.errstate(divide="ignore", invalid="ignore"):
             size = np.abs(near + self.first / self.fit.basis.scale).max(axis=0) / np.abs(near).max(axis=0)
         return ROUNDINGS * EPS * float(size.max(initial=0.0))
@@ -88,12 +90,13 @@ def _first_with_full_rank(rows: _Rows) -> int:
     n, p = rows.fit.n, rows.fit.p
 
     def full(count: int) -> bool:
-        z = rows.near_first(0, count)[:, :-1]
-        length = np.linalg.norm(z, axis=0)
+        near = rows.near_first(0, count)
+        z = near[:, :-1]
+        length = np.sqrt(np.add.reduce(z * z, axis=0))
         if not length.all():
             return False
         factors = lapack.dgeqp3(np.asfortranarray(z / length), overwrite_a=1)[0]
-        return bool(abs(factors[p - 1, p - 1]) > max(DETERMINED, rows.roundings(count)))
+        return bool(abs(factors[p - 1, p - 1]) > max(DETERMINED, rows.roundings(near)))
 
     short, enough = p - 1, p
     while enough < n and not full(enough):
@@ -119,8 +122,9 @@ def _values(rows: _Rows, start: int) -> np.ndarray:
         root = _triangle(np.concatenate([root, block]))
         gram += _gram(rows.in_basis(done, stop))
         done = stop
+    room = _room(rows.fit.p, n - done)
     while done < n:
-        values, gram = _many_blocks(gram, rows.in_basis(done, done + TOGETHER * SMALL_BLOCK))
+        values, gram = _many_blocks(gram, rows.in_basis(done, done + TOGETHER * SMALL_BLOCK), room)
         found.append(values)
         done += values.shape[0]
     return np.concatenate(found) if found else np.empty(0)
@@ -136,8 +140,14 @@ def _triangle(rows: np.ndarray) -> np.ndarray:
     factors = lapack.dgeqrf(np.array(rows, order="F"), overwrite_a=1)[0]
     root = np.zeros((width, width))
     height = min(factors.shape[0], width)
-    root[:height] = np.triu(factors[:height])
+    np.copyto(root[:height], factors[:height], where=_upper(width)[:height])
     return root
+
+
+@cache
+def _upper(width: int) -> np.ndarray:
+    """(width, width) bool: the upper triangle's places; numpy's own function makes them anew each time."""
+    return np.triu(np.ones((width, width), bool))
 
 
 def _well_apart(gram: np.ndarray) -> bool:
@@ -164,7 +174,16 @@ def _block_values(root: np.ndarray, block: np.ndarray) -> np.ndarray:
     return lapack.dtrtrs(upper, error, trans=1)[0]
 
 
-def _many_blocks(gram: np.ndarray, chunk: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+def _room(p: int, count: int) -> np.ndarray:
+    """Room (blocks, p + SMALL_BLOCK + 1, the same) for the triangles of `_many_blocks`, with what never changes."""
+    size = p + SMALL_BLOCK + 1
+    room = np.zeros((min(TOGETHER, -(-count // SMALL_BLOCK)), size, size))
+    room.reshape(-1, size * size)[:, p * (size + 1) : -1 : size + 1] = 1.0
+    room[:, -1, -1] = 4.0  # more than the rest of the line can take away: all squares add up to 1
+    return room
+
+
+def _many_blocks(gram: np.ndarray, chunk: np.ndarray, room: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     """Values of many blocks at once, and the cross products (p + 1, p + 1) of all rows up to their end.
 
     With the cross products G, c of the rows up to a block's end, and that block's rows taken backwards, the Cholesky
@@ -174,21 +193,17 @@ def _many_blocks(gram: np.ndarray, chunk: np.ndarray) -> tuple[np.ndarray, np.nd
     count, width = chunk.shape
     p = width - 1
     blocks = -(-count // SMALL_BLOCK)
-    filled = np.zeros((blocks * SMALL_BLOCK, width))
-    filled[:count] = chunk
-    x = filled.reshape(blocks, SMALL_BLOCK, width)
-    sums = np.cumsum(np.concatenate([gram[None], x.transpose(0, 2, 1) @ x]), axis=0)[1:]
-    size = p + SMALL_BLOCK + 1
-    bordered = np.zeros((blocks, size, size))  # lower triangles
-    bordered[:, :p, :p] = sums[:, :p, :p]
+    if count % SMALL_BLOCK:
+        chunk = np.concatenate([chunk, np.zeros((blocks * SMALL_BLOCK - count, width))])
+    x = chunk.reshape(blocks, SMALL_BLOCK, width)
+    sums = np.empty((blocks + 1, width, width))
+    sums[0] = gram
+    np.matmul(x.transpose(0, 2, 1), x, out=sums[1:])
+    sums = np.add.accumulate(sums, axis=0)
+    bordered = room[:blocks]
+    bordered[:, :p, :p] = sums[1:, :p, :p]
     bordered[:, p:-1, :p] = x[:, ::-1, :p]
-    bordered.reshape(blocks, -1)[:, p * (size + 1) : -1 : size + 1] = 1.0
-    bordered[:, -1, :p] = sums[:, p, :p]
+    bordered[:, -1, :p] = sums[1:, p, :p]
     bordered[:, -1, p:-1] = x[:, ::-1, p]
-    bordered[:, -1, -1] = 4.0  # more than the rest of the line can take away: all squares add up to 1
-    for one in bordered:
-        # Its upper triangle is the transposed one's lower; numpy's own factorization of many takes twice as long.
-        _, info = lapack.dpotrf(one.T, lower=0, clean=0, overwrite_a=1)
-        if info != 0:
-            raise np.linalg.LinAlgError("rows that were told apart well are not any more")
-    return bordered[:, -1, size - 2 : p - 1 : -1].reshape(-1)[:count], sums[-1]
+    factors = np.linalg.cholesky(bordered)  # LinAlgError: rows that were told apart well are not any more
+    return factors[:, -1, -2 : p - 1 : -1].reshape(-1)[:count], sums[-1]
