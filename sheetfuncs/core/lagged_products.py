@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.lib.stride_tricks import as_strided
 
 # Elements of a block of rows that stays in the processor's cache.
 _BLOCK = 100_000
+# Columns of the products: fewer are slow, more do work that is not needed.
+_WIDTH = 40
 # The logarithm of the relative precision of sums.
 _ROUNDING = -37.0
 
@@ -53,20 +56,32 @@ class LaggedProducts:
         found[0] = apart[0]
         ends = np.stack([self.q[:count], self.q[-count:][::-1]], axis=1)  # from both ends inwards
         k = ends.shape[2]
+        inwards, outwards = ends.reshape(-1, k), ends[::-1].reshape(-1, k)
         for lag in range(1, count):
-            found[lag] += ends[:lag].reshape(-1, k).T @ ends[lag - 1 :: -1].reshape(-1, k)
+            found[lag] += inwards[: 2 * lag].T @ outwards[2 * (count - lag) :]
         found[1:] *= 0.5
         return found
 
 
 def _lagged(q: np.ndarray, count: int) -> np.ndarray:
-    """(count, k, k): sums of q[i] q[i + lag]' for lag = 0 to count - 1."""
+    """(count, k, k): sums of q[i] q[i + lag]' for lag = 0 to count - 1.
+
+    Several rows side by side make a line: few products of lines with the lines some places on, which are wide enough to
+    be fast, hold those of all rows, and each lag's lie along a diagonal.
+    """
     n, k = q.shape
-    rows = max(count, _BLOCK // k)
-    found = np.zeros((count, k, k))
+    side = min(count, max(1, _WIDTH // k))
+    steps = (count + 2 * side - 2) // side
+    rows = side * max(steps, _BLOCK // (k * side))
+    products = np.zeros((side, k, steps * side, k))
     for first in range(0, n, rows):
-        block = np.ascontiguousarray(q[first : first + rows + count - 1])
-        for lag in range(min(count, block.shape[0])):
-            there = block[lag : lag + rows]
-            found[lag] += block[: there.shape[0]].T @ there
-    return found
+        height = -(-min(rows, n - first) // side)
+        lines = np.zeros((height + steps - 1, side * k))
+        part = q[first : first + lines.shape[0] * side]
+        lines.reshape(-1, k)[: part.shape[0]] = part
+        for step in range(steps):
+            there = lines[:height].T @ lines[step : step + height]
+            products[:, :, step * side : (step + 1) * side] += there.reshape(side, k, side, k)
+    own, row, other, column = products.strides
+    diagonals = as_strided(products, (side, count, k, k), (own + other, other, row, column), writeable=False)
+    return np.add.reduce(diagonals, axis=0)
