@@ -12,7 +12,7 @@ from scipy.special import stdtr
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import EPS, ROUNDINGS
-from sheetfuncs.core.fit import Fit
+from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.results import DoesNotApply
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import ArgumentError
@@ -20,6 +20,10 @@ from sheetfuncs.errors import ArgumentError
 HETEROSCEDASTIC_KINDS = ("HC0", "HC1", "HC2", "HC3", "HC4")
 NEWEY_WEST = "Newey-West"
 KINDS = ("ordinary", *HETEROSCEDASTIC_KINDS, NEWEY_WEST)
+# Up to so many rows all kinds are computed at once when one is asked for.
+TOGETHER_UP_TO = 5_000
+# Matrix (p, p); standard errors, t and p, (p,) each; whether there are errors everywhere.
+_Bars = tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray, bool]
 _WIDER = {
     "HC0": "squared residuals as they are (White 1980)",
     "HC1": "squared residuals times n/(n - p) (Hinkley 1977)",
@@ -67,8 +71,8 @@ def covariance(fit: Fit, kind: str = "ordinary", *, level: float = 0.95) -> Cova
     refusal = refused(fit, "hc_se", args, kind, "")
     if refusal:
         return refusal
-    matrix = fit.sigma**2 * fit.unscaled_covariance
-    return _covariance(fit, kind, "hc_se", args, matrix, level, "equal spread and independent errors are assumed")
+    bars = _error_bars(fit, fit.sigma**2 * fit.unscaled_covariance[None])[0]
+    return _covariance(fit, kind, "hc_se", args, bars, level, "equal spread and independent errors are assumed")
 
 
 def heteroscedasticity_consistent(fit: Fit, kind: str = "HC3", *, level: float = 0.95) -> Covariance | DoesNotApply:
@@ -87,10 +91,8 @@ def heteroscedasticity_consistent(fit: Fit, kind: str = "HC3", *, level: float =
         return refusal
     if kind in ("HC2", "HC3", "HC4") and fit.some_fit_themselves:
         return DoesNotApply(method="hc_se", args=args, variant=kind, reason=_leverage_one(fit, kind))
-    with few_threads(fit.basis.q.size):
-        scores = fit.orthonormal[:-1] * (fit.orthonormal[-1] * _root_of_weights(fit, kind))
-        middle = scores @ scores.T
-    return _covariance(fit, kind, "hc_se", args, _sandwich(fit, middle), level, _WIDER[kind])
+    together = _possible_kinds(fit) if fit.n <= TOGETHER_UP_TO else (kind,)
+    return _covariance(fit, kind, "hc_se", args, _heteroscedastic(fit, together)[kind], level, _WIDER[kind])
 
 
 def newey_west(
@@ -153,7 +155,8 @@ def _newey_west(
             reason=f"{fit.n} rows are too few for {lag} lags: a lag needs at least one pair of rows.",
         )
     middle = _bartlett_sum(fit, lag) * (fit.n / fit.df if small_sample else 1.0)
-    return _covariance(fit, NEWEY_WEST, method, args, _sandwich(fit, middle), level, note, details)
+    bars = _error_bars(fit, _sandwich(fit, middle[None]))[0]
+    return _covariance(fit, NEWEY_WEST, method, args, bars, level, note, details)
 
 
 def _bartlett_sum(fit: Fit, lag: int) -> np.ndarray:
@@ -199,40 +202,65 @@ def _bandwidth(fit: Fit) -> float | None:
     return float(1.1447 * ((slope / level) ** 2) ** (1.0 / 3.0) * n ** (1.0 / 3.0))
 
 
-def _root_of_weights(fit: Fit, kind: str) -> np.ndarray | float:
+def _possible_kinds(fit: Fit) -> tuple[str, ...]:
+    return HETEROSCEDASTIC_KINDS[:2] if fit.some_fit_themselves else HETEROSCEDASTIC_KINDS
+
+
+@once_per_fit
+def _heteroscedastic(fit: Fit, kinds: tuple[str, ...]) -> dict[str, _Bars]:
+    """All these kinds, their scores multiplied with the basis at once: with few rows a step outweighs its work."""
+    lines, e = fit.orthonormal[:-1], fit.orthonormal[-1]
+    squares = e * e
+    weights = np.empty((len(kinds), 1, fit.n))
+    for place, kind in enumerate(kinds):
+        np.multiply(squares, _weights(fit, kind), out=weights[place, 0])
+    with few_threads(fit.basis.q.size):
+        scores = (weights * lines).reshape(-1, fit.n)
+        middles = (scores @ lines.T).reshape(-1, fit.p, fit.p)
+    return dict(zip(kinds, _error_bars(fit, _sandwich(fit, middles)), strict=True))
+
+
+def _weights(fit: Fit, kind: str) -> np.ndarray | float:
     if kind == "HC0":
         return 1.0
     if kind == "HC1":
-        return math.sqrt(fit.n / fit.df)
+        return fit.n / fit.df
     left = 1.0 - fit.leverage
-    if kind == "HC2":
-        return 1.0 / np.sqrt(left)
-    return 1.0 / left if kind == "HC3" else left ** (-0.5 * np.minimum(4.0, fit.n * fit.leverage / fit.p))
+    if kind == "HC4":
+        return left ** -np.minimum(4.0, fit.leverage * (fit.n / fit.p))
+    return 1.0 / left if kind == "HC2" else 1.0 / (left * left)
 
 
-def _sandwich(fit: Fit, middle: np.ndarray) -> np.ndarray:
+def _sandwich(fit: Fit, middles: np.ndarray) -> np.ndarray:
+    """Covariances (m, p, p) of the coefficients from those in the basis' coordinates."""
     outer = fit.basis.coefficient_root * fit.length
-    matrix = outer @ middle @ outer.T
-    matrix *= 0.5
-    return matrix + matrix.T
+    matrices = outer @ middles @ outer.T
+    matrices *= 0.5
+    return matrices + matrices.transpose(0, 2, 1)
+
+
+def _error_bars(fit: Fit, matrices: np.ndarray) -> list[_Bars]:
+    errors = np.sqrt(np.maximum(matrices.diagonal(axis1=1, axis2=2), 0.0))
+    # Rounding alone makes this much.
+    least = (ROUNDINGS * EPS * fit.length) * fit.basis.root_lengths
+    all_there = (errors > least).all(axis=1).tolist()
+    if not all(all_there):
+        errors = np.where(errors > least, errors, np.nan)
+    t = fit.coefficients / errors
+    return list(zip(matrices, errors, t, 2.0 * stdtr(fit.df, -np.abs(t)), all_there, strict=True))
 
 
 def _covariance(
-    fit: Fit, kind: str, method: str, args: Mapping[str, Any], matrix: np.ndarray, level: float, note: str,
+    fit: Fit, kind: str, method: str, args: Mapping[str, Any], bars: _Bars, level: float, note: str,
     details: Mapping[str, Any] | None = None,
 ) -> Covariance:
-    errors = np.sqrt(np.maximum(matrix.diagonal(), 0.0))
-    # Rounding alone makes this much.
-    least = (ROUNDINGS * EPS * fit.length) * fit.basis.root_lengths
-    if not (errors > least).all():
-        errors = np.where(errors > least, errors, np.nan)
+    matrix, errors, t, p, all_there = bars
+    if not all_there:
         note += "; no error where only rows of leverage 1 determine a coefficient"
-    t = fit.coefficients / errors
     half = fit.quantile(level) * errors
     return Covariance(
-        kind=kind, method=method, args=args, matrix=matrix, standard_errors=errors, t=t,
-        p=2.0 * stdtr(fit.df, -np.abs(t)), low=fit.coefficients - half, high=fit.coefficients + half, note=note,
-        details=details or {},
+        kind=kind, method=method, args=args, matrix=matrix, standard_errors=errors, t=t, p=p,
+        low=fit.coefficients - half, high=fit.coefficients + half, note=note, details=details or {},
     )
 
 
