@@ -75,6 +75,12 @@ def assert_plain(path: Path, without: tuple[str, ...] = ()) -> None:
     assert CALC_NAMES not in texts_in(path)
 
 
+def skip_unless_calc_writes_names_of_its_own(path: Path) -> None:
+    """7.4 does; 25.2 writes plain names by itself, so that there is nothing to mend."""
+    if CALC_NAMES not in texts_in(path):
+        pytest.skip("this LibreOffice writes plain names by itself")
+
+
 def save_as(calc, document, path: Path, form: str) -> None:
     document.storeAsURL(path.as_uri(), calc.properties(FilterName=form))
 
@@ -185,7 +191,7 @@ def test_the_saved_file_keeps_the_time_that_calc_knows(calc, tmp_path):
     with loaded(calc, path) as document, _settings_away(calc):
         document.store()
         times.append(os.stat(path).st_mtime_ns)
-    assert CALC_NAMES in texts_in(path)
+    skip_unless_calc_writes_names_of_its_own(path)
     assert write_plain_names(path, keep_time=True) > 0
     assert os.stat(path).st_mtime_ns == times[0]
 
@@ -207,8 +213,8 @@ def test_without_the_worker_the_saved_file_stays_and_is_mended_next_time(calc, t
         with _settings_away(calc):
             cell(document, "E1").String = "Noted in Calc"
             document.store()
-        assert CALC_NAMES in texts_in(path)
         assert b"Noted in Calc" in texts_in(path)
+        skip_unless_calc_writes_names_of_its_own(path)
         cell(document, "E1").String = "Noted again"
         document.store()
     assert_plain(path)

@@ -1,6 +1,7 @@
 """What happens when a document was loaded, saved or closed: names of our functions find their way in and out of files.
 
-7.4 does not know the names FIT_... in .xlsx files when it loads one, and saves names of its own there.
+7.4 does not know the names FIT_... in .xlsx files when it loads one, and saves names of its own there. 25.2 knows plain
+names and saves them, but keeps the values that another program stored.
 """
 
 from __future__ import annotations

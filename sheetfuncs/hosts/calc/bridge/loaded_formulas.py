@@ -2,6 +2,7 @@
 
 They come from .xlsx files that other programs saved: plain names, names with the prefixes of programs that did not
 know them, calls into an add-in. Such a cell shows its stored value until something recalculates it, then #NAME?.
+25.2 understands plain names by itself, but shows what the other program stored, so they are set again there too.
 What is set again means the same as before; so the document counts as unchanged and there is nothing to undo.
 """
 
@@ -14,11 +15,13 @@ from com.sun.star.uno import Exception as UnoException
 from sheetfuncs_bridge import messages
 from sheetfuncs_bridge.documents import frame_of, known_names, local_path
 from sheetfuncs_bridge.external_links import linked_files
-from sheetfuncs_bridge.spellings import Spellings, calls, leads_to_our_addin
+from sheetfuncs_bridge.spellings import CALC_PREFIX, Spellings, calls, leads_to_our_addin
 
 FORMULA = 16  # com.sun.star.sheet.CellFlags
-_SIGN = re.compile("fit_", re.IGNORECASE)
+_UNKNOWN_SIGN = "fit_"  # stands in each spelling but the one that Calc has for functions that it knows
+_SIGN = re.compile(f"{_UNKNOWN_SIGN}|{re.escape(CALC_PREFIX)}", re.IGNORECASE)
 _MAYBE_UNKNOWN = re.compile(r"[a-z][\w.]*\(|\]!")
+OWN_FILTER = "calc"  # calc8, calc8_template: OpenDocument; all others begin otherwise
 MOST_CELLS = 20_000  # read at once
 _CONDITION = 0  # com.sun.star.sheet.ConditionEntryType
 
@@ -56,6 +59,7 @@ class _Formulas:
         self._spellings = Spellings(known_names())
         self._links = None
         self._sheets = _sheets_of(model)
+        self._foreign = not str(_arguments(model).get("FilterName", "")).startswith(OWN_FILTER)
 
     def cells(self):
         """Of cells; an array formula once, for all its cells."""
@@ -108,8 +112,9 @@ class _Formulas:
                 yield _Change(owner, name, plain)
 
     def _plain(self, text: str):
-        """The formula with plain names, or None where it stays: all is understood, or something else is not."""
-        if not _SIGN.search(text):
+        """The formula with plain names, or None where it stays: Calc itself saved the value of what it understands, or
+        there is something else that it does not."""
+        if not _SIGN.search(text) or not (self._foreign or _UNKNOWN_SIGN in text.lower()):
             return None
         plain = self._spellings.plain(text, self._is_ours)
         return None if plain == text or _has_unknown(plain) else plain
@@ -126,6 +131,10 @@ class _Change:
 
     def __init__(self, owner, name: str, formula: str):
         self.owner, self.name, self.formula = owner, name, formula
+
+
+def _arguments(model) -> dict:
+    return {one.Name: one.Value for one in model.getArgs()}
 
 
 def _sheets_of(model) -> list:

@@ -18,7 +18,7 @@ from sheetfuncs_bridge.loaded_formulas import names_ours
 EXTENSIONS = (".xlsx", ".xlsm", ".xltx", ".xltm")
 SECONDS = 60.0
 CALC_NAMES = b"ORG.SHEETFUNCS.CALC.FUNCTIONS."
-UNKNOWN_NAMES = b"fit_"  # as Calc spells FIT_ names that it did not understand
+UNKNOWN_NAMES = (b"fit_", b"]!FIT_")  # as 7.4 and 25.2 spell those that they did not understand
 PAUSES = (1.0, 3.0, 10.0)
 
 _waiting: set = set()  # files that another handle held when they were to be rewritten
@@ -91,6 +91,6 @@ def _holds(package: zipfile.ZipFile, part: str) -> bool:
             if not chunk:
                 return False
             data = overlap + chunk
-            if CALC_NAMES in data or UNKNOWN_NAMES in data:
+            if any(name in data for name in (CALC_NAMES, *UNKNOWN_NAMES)):
                 return True
             overlap = data[-len(CALC_NAMES):]
