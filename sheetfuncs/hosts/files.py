@@ -98,7 +98,7 @@ def undo_check(book: Path, *, force: bool = False) -> str:
 
 
 def write_names_plainly(book: Path) -> str:
-    """Spell our functions plainly in all formulas of a workbook file; returns the sentence that says what changed."""
+    """Write names of ours in a workbook as every program reads them; returns the sentence that says what changed."""
     from sheetfuncs.workbook.formula_names import write_plain_names
 
     if book.is_dir():
@@ -106,7 +106,8 @@ def write_names_plainly(book: Path) -> str:
     names = write_plain_names(book)
     if not names:
         return f"The names of our functions in {book} are plain already, or it holds none; it was left as it is."
-    return f"{counted(names, 'name')} in the formulas of {book} {'is' if names == 1 else 'are'} spelled plainly now."
+    verb = "is" if names == 1 else "are"
+    return f"{counted(names, 'name')} in {book} {verb} now written as every program reads them."
 
 
 def _target(request: Request) -> Path | None:

@@ -1,8 +1,9 @@
 """Our functions' names in a workbook's formulas, written plainly, as every spreadsheet program reads them.
 
 LibreOffice Calc saves names of its own, other programs put prefixes before functions that they did not know; see
-`functions.spellings`. Only the bytes of those names change: everything else in the parts that hold them stays as it
-is, every other part is carried as the bytes it was, and a file without such names is not written at all.
+`functions.spellings`. Calc 7.4 also shows the names that our sheets hide. Only the bytes of those names change:
+everything else in the parts that hold them stays as it is, every other part is carried as the bytes it was, and a file
+without such names is not written at all.
 """
 
 from __future__ import annotations
@@ -29,16 +30,20 @@ _OPENING = re.compile(
     (?:\s+[\w.:-]+\s*=\s*(?:"[^"<]*"|'[^'<]*'))*\s*>""",
     re.VERBOSE,
 )
+# Defined names of our sheets, which Calc 7.4 cannot hide and so writes with hidden="false", before the name.
+_SHOWN = re.compile(rb"""<definedName\s[^<>]*?\bhidden="(false|0)"[^<>]*?\sname="_sheetfuncs_[^<>]*>""")
 _ENTITY = re.compile(r"&(?:#\d{1,7}|#x[0-9a-fA-F]{1,6}|quot|apos|amp|lt|gt);")
 _SIGNS = (b"fit_", b".fit")
 """One of them, in lower case, stands wherever a function of ours is named."""
+_OUR_NAMES = b"_sheetfuncs_"
 _ONE_A_BYTE = bytes(range(128)) + b"\xe9" * 128
 """Every byte of a letter beyond ASCII as a letter of latin-1: all that counts is that no name begins or ends there."""
 _WIDE = {codecs.BOM_UTF16_LE: "utf-16-le", codecs.BOM_UTF16_BE: "utf-16-be"}
 
 
 def write_plain_names(book: str | os.PathLike[str], *, keep_time: bool = False) -> int:
-    """Spell our functions plainly in all formulas of a workbook file; returns how many names changed.
+    """Spell our functions plainly in all formulas of a workbook file, and hide the names of our sheets again; returns
+    how many names changed.
 
     With 0 the file was not touched. Else it is written beside and swapped in atomically. keep_time: it keeps the time
     of its last change, for a program that has it open and would take the change for someone else's.
@@ -87,9 +92,9 @@ class FormulaNames:
             if not overlap and chunk[:2] in _WIDE:
                 return True
             lowered = overlap + chunk.lower()
-            if any(sign in lowered for sign in _SIGNS):
+            if any(sign in lowered for sign in (*_SIGNS, _OUR_NAMES)):
                 return True
-            overlap = lowered[-8:]
+            overlap = lowered[-len(_OUR_NAMES):]
         return False
 
     def patched(self, part: str) -> bytes | None:
@@ -102,6 +107,23 @@ class FormulaNames:
         return None if narrow is None else data[:2] + narrow.decode().encode(wide)
 
     def _with_plain_names(self, data: bytes) -> bytes | None:
+        hidden, shown = self._with_hidden_names(data)
+        plain = self._with_plain_functions(hidden)
+        return hidden if plain is None and shown else plain
+
+    def _with_hidden_names(self, data: bytes) -> tuple[bytes, int]:
+        """The part with the names of our sheets hidden, and how many were shown."""
+        if _OUR_NAMES not in data:
+            return data, 0
+        pieces, done = [], 0
+        for match in _SHOWN.finditer(data):
+            pieces += [data[done : match.start(1)], b"true" if match[1] == b"false" else b"1"]
+            done = match.end(1)
+        shown = len(pieces) // 2
+        self.count += shown
+        return b"".join([*pieces, data[done:]]), shown
+
+    def _with_plain_functions(self, data: bytes) -> bytes | None:
         pieces, done = [], 0
         for start, end in _formula_texts(data):
             for first, last, name in self._changes(data[start:end]):

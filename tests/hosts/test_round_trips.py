@@ -70,7 +70,7 @@ def test_calls_into_another_addin_stay_its_own(tmp_path):
 def test_a_copy_gets_plain_names_by_the_command(tmp_path):
     book = books.write_book(tmp_path / "copy.xlsx", "unknown")
     done = CliRunner().invoke(main, ["calc", "plain-names", str(book)])
-    assert (done.exit_code, done.output.count("spelled plainly now.")) == (0, 1)
+    assert (done.exit_code, done.output.count("as every program reads them.")) == (0, 1)
     again = CliRunner().invoke(main, ["calc", "plain-names", str(book)])
     assert (again.exit_code, "it was left as it is" in again.output) == (0, True)
     refused = CliRunner().invoke(main, ["calc", "plain-names", str(tmp_path / "none.xlsx")])

@@ -220,3 +220,24 @@ def test_what_is_no_workbook_is_refused_with_a_sentence(tmp_path):
     torn.write_bytes(zipped(with_formulas("_xlfn.FIT_VIF(A1)").files())[:-40])
     with pytest.raises(WorkbookFormatError, match="damaged"):
         write_plain_names(torn)
+
+
+def test_names_of_our_sheets_that_calc_shows_are_hidden_again(tmp_path):
+    def names(shown: str) -> str:
+        return (
+            f'<definedNames><definedName function="false" hidden="{shown}" localSheetId="1" '
+            f'name="_sheetfuncs_decision_1" vbProcedure="false">Data!$E$5</definedName>'
+            f'<definedName hidden="{shown}" name="_sheetfuncs_settings_1">"x=_sheetfuncs_"</definedName>'
+            '<definedName hidden="false" name="Area">Data!$A$1</definedName></definedNames>'
+        )
+
+    parts = base()
+    parts.add("xl/workbook.xml", workbook([("Data", "rId1"), ("Notes", "rId2")], after=names("false")))
+    path = saved(tmp_path, parts)
+    before = unzipped(path.read_bytes())
+    assert write_plain_names(path) == 2
+    after = unzipped(path.read_bytes())
+    assert after.pop("xl/workbook.xml").decode() == before.pop("xl/workbook.xml").decode().replace(
+        names("false"), names("true"))
+    assert after == before
+    assert write_plain_names(path) == 0

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import re
 import zipfile
 from contextlib import contextmanager
 from pathlib import Path
@@ -286,6 +287,9 @@ def test_from_excel_by_the_files_host_to_calc_and_back(calc, tmp_path):
         assert document.Sheets.ElementNames == ("Orders", "Check of Orders")
         document.store()
     assert_plain(path)
+    ours = re.findall(rb'<definedName [^>]*name="_sheetfuncs_[^>]*>', texts_in(path))
+    assert len(ours) > 10
+    assert all(b' hidden="true"' in name for name in ours)  # Calc 7.4 itself writes them for all to see
     done = check_book(request)
     assert done.replaced
     assert_plain(path)

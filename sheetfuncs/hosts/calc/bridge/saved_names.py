@@ -6,6 +6,7 @@ beside the file and swapped in; whatever goes wrong, what Calc saved stays.
 
 from __future__ import annotations
 
+import re
 import threading
 import time
 import zipfile
@@ -19,6 +20,8 @@ EXTENSIONS = (".xlsx", ".xlsm", ".xltx", ".xltm")
 SECONDS = 60.0
 CALC_NAMES = b"ORG.SHEETFUNCS.CALC.FUNCTIONS."
 UNKNOWN_NAMES = (b"fit_", b"]!FIT_")  # as 7.4 and 25.2 spell those that they did not understand
+SHOWN_NAMES = re.compile(rb"""hidden="false"[^<>]{0,80}name="_sheetfuncs_""")  # 7.4 cannot hide a name
+LONGEST = 150
 PAUSES = (1.0, 3.0, 10.0)
 
 _waiting: set = set()  # files that another handle held when they were to be rewritten
@@ -91,6 +94,6 @@ def _holds(package: zipfile.ZipFile, part: str) -> bool:
             if not chunk:
                 return False
             data = overlap + chunk
-            if any(name in data for name in (CALC_NAMES, *UNKNOWN_NAMES)):
+            if any(name in data for name in (CALC_NAMES, *UNKNOWN_NAMES)) or SHOWN_NAMES.search(data):
                 return True
-            overlap = data[-len(CALC_NAMES):]
+            overlap = data[-LONGEST:]
