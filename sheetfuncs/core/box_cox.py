@@ -7,13 +7,15 @@ from itertools import pairwise
 from math import exp, expm1, isfinite, log, log1p, sqrt
 
 import numpy as np
-from scipy.special import chdtrc, chdtri
+from scipy.linalg import lapack
+from scipy.special import chdtri
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import EPS, ROUNDINGS
 from sheetfuncs.core.box_cox_series import PowerSeries, power_series
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.tails import chi_square_tail
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import ArgumentError
 
@@ -29,6 +31,8 @@ NEAR_ZERO = -0.9
 # (k + 1)/(k + 2)!: the series of (x e^x - e^x + 1)/x^2, as exact as doubles below SMALL; highest power first.
 _SERIES = (5 / 720, 4 / 120, 3 / 24, 2 / 6, 1 / 2)
 FEWEST_DF = 2
+# A column of which this share of its square is left after the others is told apart well enough for a start.
+ENOUGH = 1e-4
 
 
 def box_cox(fit: Fit, *, level: float = 0.95, without_intercept: bool = False) -> Result:
@@ -74,7 +78,7 @@ def box_cox(fit: Fit, *, level: float = 0.95, without_intercept: bool = False) -
                 f"With the power {best.power:.6g} the fit is perfect, so that nothing can be tested on it.", "#NUM!"
             )
         ends = found[1] if found else _interval(profile, best, cut)
-        tests = _ratio_tests(profile, best, found[2] if found else None)
+        tests = _ratio_tests(fit, profile, best, found[2] if found else None)
     note = "1 leaves the response as it is, 0 is its logarithm."
     if not fit.design.intercept:
         note += " Fitted without an intercept: for the response divided by its geometric mean, and only for that."
@@ -266,7 +270,17 @@ def _start_of(some: _Profile) -> tuple[float, float] | None:
 def _thinned(profile: _Profile, rows: int) -> _Profile:
     some = slice(None, None, profile.u.shape[0] // rows)
     q = profile.q[some] - (profile.q[some].mean(axis=0) if profile.intercept else 0.0)
-    return _Profile(profile.u[some], np.linalg.qr(q)[0], profile.intercept)
+    return _Profile(profile.u[some], _orthonormal(q), profile.intercept)
+
+
+def _orthonormal(q: np.ndarray) -> np.ndarray:
+    """A basis (n, k) of the space of q, good enough to start a search from; by cross products where they can tell the
+    columns apart, in a tenth of the time."""
+    gram = q.T @ q
+    root, info = lapack.dpotrf(gram, lower=1)
+    if info == 0 and (root.diagonal() ** 2 > ENOUGH * gram.diagonal()).all():
+        return lapack.dtrtrs(root, q.T, lower=1)[0].T
+    return np.linalg.qr(q)[0]
 
 
 def _likeliest(profile: _Profile) -> _Least:
@@ -382,16 +396,28 @@ def _interval(profile: _Profile, best: _Least, cut: float) -> tuple[float, float
     return float(low), float(high)
 
 
-def _ratio_tests(profile: _Profile, best: _Least, series: PowerSeries | None) -> dict[str, dict[str, float]]:
+def _at_zero_and_one(fit: Fit, profile: _Profile) -> list[float]:
+    """rss at the powers 0 and 1; the second is the fit's own where an intercept takes up the 1 that is taken off."""
+    u, q = profile.u, profile.q
+    if not profile.intercept:
+        return [float(one) for one in profile.rss(np.array([0.0, 1.0]))]
+    left = u - q @ (q.T @ u)
+    left -= np.add.reduce(left) / fit.n
+    middle = int(np.abs(u).argmin())  # there no digit is lost on the way to what the response is divided by
+    centre = float(fit.design.response[middle]) * exp(-float(u[middle]))
+    return [float(left @ left), (fit.length / centre) ** 2]
+
+
+def _ratio_tests(fit: Fit, profile: _Profile, best: _Least, series: PowerSeries | None) -> dict[str, dict[str, float]]:
     heights = [series.at(power)[0] if series else float("nan") for power in (0.0, 1.0)]
     if not all(map(isfinite, heights)):
-        rss = best.grid[ZERO_AND_ONE] if best.grid is not None else profile.rss(np.array([0.0, 1.0]))
-        rest = [log1p(max(0.0, one - best.rss) / best.rss) for one in rss.tolist()]
+        rss = best.grid[ZERO_AND_ONE].tolist() if best.grid is not None else _at_zero_and_one(fit, profile)
+        rest = [log1p(max(0.0, one - best.rss) / best.rss) for one in rss]
     else:
         rest = [0.0, 0.0]
     tests = {}
     for name, height, other in zip(("LR_lambda_0", "LR_lambda_1"), heights, rest, strict=True):
         above = height - log(best.rss) if isfinite(height) else other
         statistic = profile.u.shape[0] * max(0.0, above)
-        tests[name] = {"statistic": statistic, "p": float(chdtrc(1, statistic))}
+        tests[name] = {"statistic": statistic, "p": chi_square_tail(1, statistic)}
     return tests

@@ -6,7 +6,7 @@ from dataclasses import replace
 from typing import Any
 
 import numpy as np
-from scipy.special import chdtrc, fdtrc
+from scipy.special import fdtrc
 
 from sheetfuncs.core.auxiliary import Addition, add_columns, refused
 from sheetfuncs.core.basis import ROUNDINGS, factorize
@@ -14,6 +14,7 @@ from sheetfuncs.core.cross_products import FAR_APART, coordinates, leading
 from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.quadratic_forms import durbin_watson_tails
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.tails import chi_square_tail
 from sheetfuncs.core.threads import few_threads
 from sheetfuncs.errors import ArgumentError, NumbersError
 
@@ -148,7 +149,7 @@ def breusch_godfrey_both(fit: Fit, lags: int = 1, *, before_first: str = "zeros"
     part, rest = sums
     statistic = n * part / (part + rest)
     first = Statistic(
-        method="breusch_godfrey", statistic=statistic, df=lags, p=float(chdtrc(lags, statistic)), null=NO_CORRELATION,
+        method="breusch_godfrey", statistic=statistic, df=lags, p=chi_square_tail(lags, statistic), null=NO_CORRELATION,
         **chi_square,
     )
     if rest == 0.0:

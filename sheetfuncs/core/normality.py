@@ -5,12 +5,13 @@ from __future__ import annotations
 from math import exp, log, sqrt
 
 import numpy as np
-from scipy.special import chdtrc, ndtr, ndtri
+from scipy.special import ndtr, ndtri
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import ROUNDINGS
 from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.tails import chi_square_tail
 
 NORMAL = "the errors are normal"
 RESIDUALS_NOTE = "Residuals are not independent draws, so p is approximate."
@@ -118,7 +119,7 @@ def jarque_bera(fit: Fit) -> Result:
         )
     skewness, kurtosis, statistic = residual_shape(fit)
     return Statistic(
-        method="jarque_bera", args={}, variant=variant, statistic=statistic, df=2, p=float(chdtrc(2, statistic)),
+        method="jarque_bera", args={}, variant=variant, statistic=statistic, df=2, p=chi_square_tail(2, statistic),
         null=NORMAL, note="The chi-square distribution is approached slowly; with few rows read p as rough.",
         details={"skewness": skewness, "kurtosis": kurtosis},
     )

@@ -5,13 +5,14 @@ from __future__ import annotations
 from math import asinh, cbrt, copysign, exp, log, sqrt
 
 import numpy as np
-from scipy.special import chdtrc, log_ndtr, ndtr
+from scipy.special import log_ndtr, ndtr
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.normality import EQUAL, NORMAL, RESIDUALS_NOTE, all_equal, residual_shape
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
 from sheetfuncs.core.simulated_tables import BELOW, LOWEST_P, SimulatedTable, simulated_table
+from sheetfuncs.core.tails import chi_square_tail
 
 ANDERSON_DARLING_FEWEST = DAGOSTINO_FEWEST = 8
 ANDERSON_DARLING_LOWEST = 3.7e-24
@@ -135,7 +136,7 @@ def dagostino_k2(fit: Fit) -> Result:
     statistic = along**2 + across**2
     few = f" Below {KURTOSIS_FEWEST} rows its kurtosis part is unreliable." if fit.n < KURTOSIS_FEWEST else ""
     return Statistic(
-        method="dagostino_k2", args={}, variant=variant, statistic=statistic, df=2, p=float(chdtrc(2, statistic)),
+        method="dagostino_k2", args={}, variant=variant, statistic=statistic, df=2, p=chi_square_tail(2, statistic),
         null=NORMAL, note=RESIDUALS_NOTE + few,
         details={"skewness": skewness, "kurtosis": kurtosis, "z_skewness": along, "z_kurtosis": across},
     )

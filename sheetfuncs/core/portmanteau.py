@@ -8,13 +8,14 @@ from typing import Any
 
 import numpy as np
 from scipy.fft import irfft, next_fast_len, rfft
-from scipy.special import chdtrc, ndtri
+from scipy.special import ndtri
 
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import EPS, ROUNDINGS
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.independence import NO_CORRELATION
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.tails import chi_square_tail
 from sheetfuncs.errors import ArgumentError, NoVariationError
 
 # One transform costs as much as this many sums of products.
@@ -111,7 +112,7 @@ def _portmanteau_test(fit: Fit, method: str, lags: int, sums: np.ndarray | None)
     if sums is None:
         return DoesNotApply(**named, reason=_ALIKE, cell_error="#NUM!")
     statistic = float(sums[lags - 1])
-    return Statistic(**named, statistic=statistic, df=lags, p=float(chdtrc(lags, statistic)), note=_NOTE)
+    return Statistic(**named, statistic=statistic, df=lags, p=chi_square_tail(lags, statistic), note=_NOTE)
 
 
 def _autocorrelations(fit: Fit, lags: int) -> np.ndarray | None:

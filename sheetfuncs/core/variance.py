@@ -4,12 +4,11 @@ from __future__ import annotations
 
 from math import sqrt
 
-from scipy.special import chdtrc
-
 from sheetfuncs.core.auxiliary import refused
 from sheetfuncs.core.basis import EPS, ROUNDINGS
 from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.tails import chi_square_tail
 
 CONSTANT = "the errors have the same variance whatever the predictors are"
 
@@ -44,7 +43,7 @@ def breusch_pagan(fit: Fit, *, studentize: bool = True) -> Result:
     note = "" if fit.design.intercept else "Auxiliary regression without a constant, as the fit has none."
     return Statistic(
         method="breusch_pagan", args=args, variant=variant, statistic=statistic, df=df,
-        p=float(chdtrc(df, statistic)), null=CONSTANT, note=note,
+        p=chi_square_tail(df, statistic), null=CONSTANT, note=note,
     )
 
 
@@ -75,5 +74,5 @@ def breusch_pagan_fitted(fit: Fit) -> Result:
     part = (float(direction @ (fit.residuals**2 / (fit.rss / fit.n))) / sqrt(length)) ** 2
     return Statistic(
         method="ncv_test_fitted", args=args, variant=variant, statistic=part / 2.0, df=1,
-        p=float(chdtrc(1, part / 2.0)), null="the errors have the same variance whatever the fitted value is",
+        p=chi_square_tail(1, part / 2.0), null="the errors have the same variance whatever the fitted value is",
     )

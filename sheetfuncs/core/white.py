@@ -6,13 +6,14 @@ from math import sqrt
 from typing import Any
 
 import numpy as np
-from scipy.special import chdtrc, fdtrc
+from scipy.special import fdtrc
 
 from sheetfuncs.core.auxiliary import Addition, add_columns, refused
 from sheetfuncs.core.basis import DETERMINED, ROUNDINGS
 from sheetfuncs.core.fit import Fit, once_per_fit
 from sheetfuncs.core.products import PRODUCTS_AT_MOST, explain_by_products, explain_if_apart, number_of_products
 from sheetfuncs.core.results import DoesNotApply, Result, Statistic
+from sheetfuncs.core.tails import chi_square_tail
 from sheetfuncs.core.variance import CONSTANT
 
 # Up to this many elements the orthogonal decomposition is the faster one for columns that are close to each other;
@@ -123,7 +124,7 @@ def _result(fit: Fit, named: dict[str, Any], added: Addition, total: float, note
     if added.rest > DETERMINED**2 * total:
         f = max(added.part, 0.0) / df / (added.rest / left)
         details = {"F": f, "F_df": (df, left), "F_p": float(fdtrc(df, left, f))}
-    return Statistic(**named, statistic=statistic, df=df, p=float(chdtrc(df, statistic)), note=note, details=details)
+    return Statistic(**named, statistic=statistic, df=df, p=chi_square_tail(df, statistic), note=note, details=details)
 
 
 def _all_alike(named: dict[str, Any]) -> DoesNotApply:
