@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cache, cached_property
 
 import numpy as np
 from scipy.linalg import lapack
@@ -175,9 +175,20 @@ def _pivoted_qr(work: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     factors, pivot, tau, _, info = lapack.dgeqp3(np.asfortranarray(work), overwrite_a=1)
     if info != 0:
         raise NoVariationError("The predictors could not be factorized: look for extreme values among them.")
-    r = np.triu(factors[:k])
+    r = upper_triangle(factors[:k])
     q, _, _ = lapack.dorgqr(factors, tau, overwrite_a=1)
     return q, r, pivot.astype(np.intp) - 1
+
+
+def upper_triangle(values: np.ndarray) -> np.ndarray:
+    """values (m, k), m at most k, with zeros below the diagonal."""
+    return np.where(_upper(values.shape[1])[: values.shape[0]], values, 0.0)
+
+
+@cache
+def _upper(width: int) -> np.ndarray:
+    """(width, width) bool: the places of the upper triangle, which numpy's own function makes anew each time."""
+    return np.triu(np.ones((width, width), bool))
 
 
 def _refuse_empty_columns(

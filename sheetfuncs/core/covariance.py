@@ -21,7 +21,7 @@ HETEROSCEDASTIC_KINDS = ("HC0", "HC1", "HC2", "HC3", "HC4")
 NEWEY_WEST = "Newey-West"
 KINDS = ("ordinary", *HETEROSCEDASTIC_KINDS, NEWEY_WEST)
 # Up to so many rows all kinds are computed at once when one is asked for.
-TOGETHER_UP_TO = 5_000
+TOGETHER_UP_TO = 2_000
 # Matrix (p, p); standard errors, t and p, (p,) each; whether there are errors everywhere.
 _Bars = tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray, bool]
 _WIDER = {
@@ -209,6 +209,9 @@ def _possible_kinds(fit: Fit) -> tuple[str, ...]:
 @once_per_fit
 def _heteroscedastic(fit: Fit, kinds: tuple[str, ...]) -> dict[str, _Bars]:
     """All these kinds, their scores multiplied with the basis at once: with few rows a step outweighs its work."""
+    if kinds == ("HC1",):
+        plain = _heteroscedastic(fit, ("HC0",))["HC0"][0]
+        return {"HC1": _error_bars(fit, plain[None] * (fit.n / fit.df))[0]}
     lines, e = fit.orthonormal[:-1], fit.orthonormal[-1]
     squares = e * e
     weights = np.empty((len(kinds), 1, fit.n))

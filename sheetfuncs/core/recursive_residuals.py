@@ -3,12 +3,11 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import cache
 
 import numpy as np
 from scipy.linalg import lapack
 
-from sheetfuncs.core.basis import DETERMINED, EPS, ROUNDINGS, back_substituted
+from sheetfuncs.core.basis import DETERMINED, EPS, ROUNDINGS, back_substituted, upper_triangle
 from sheetfuncs.core.fit import Fit
 from sheetfuncs.core.threads import few_threads
 
@@ -140,14 +139,8 @@ def _triangle(rows: np.ndarray) -> np.ndarray:
     factors = lapack.dgeqrf(np.array(rows, order="F"), overwrite_a=1)[0]
     root = np.zeros((width, width))
     height = min(factors.shape[0], width)
-    np.copyto(root[:height], factors[:height], where=_upper(width)[:height])
+    root[:height] = upper_triangle(factors[:height])
     return root
-
-
-@cache
-def _upper(width: int) -> np.ndarray:
-    """(width, width) bool: the upper triangle's places; numpy's own function makes them anew each time."""
-    return np.triu(np.ones((width, width), bool))
 
 
 def _well_apart(gram: np.ndarray) -> bool:
