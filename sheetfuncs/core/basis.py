@@ -214,7 +214,7 @@ def _refuse_dependent_columns(
 ) -> None:
     # Roundings of the columns that determine it count too, as far as they take part; only columns of which little is
     # left need that look.
-    for rank in np.flatnonzero(np.abs(np.diag(r)) <= np.maximum(SUSPICIOUS, limit.max(initial=0.0) * r.shape[0])):
+    for rank in np.flatnonzero(np.abs(r.diagonal()) <= np.maximum(SUSPICIOUS, limit.max(initial=0.0) * r.shape[0])):
         weights = back_substituted(r[:rank, :rank], r[:rank, rank])
         if abs(r[rank, rank]) <= limit[rank] + np.abs(weights) @ limit[:rank]:
             _refuse_dependent_column(names, pivot, int(rank), weights, intercept)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import lru_cache
 
 import numpy as np
 from scipy.special import fdtrc
@@ -28,12 +29,9 @@ def reset(fit: Fit, powers: Sequence[int] = (2, 3), *, of: str = "fitted") -> Re
     scaled: there the centre would change the test). With 2, or 2 and 3, this is the same test as with powers of the
     values themselves; with 3 alone it is not. The numerator's degrees of freedom are the rank that the powers add.
     """
-    powers = tuple(powers)
     if of not in _TYPES:
         raise ArgumentError(f'"{of}" has no powers to take: use fitted or predictors.')
-    if not powers or any(not float(power).is_integer() or power < 2 for power in powers):
-        raise ArgumentError(f"{list(powers)} are not powers to add: use whole numbers from 2 up.")
-    powers = tuple(sorted({int(power) for power in powers}))
+    powers = _checked(tuple(powers))
     args = {"power": list(powers) if len(powers) > 1 else powers[0], "type": _TYPES[of]}
     what = "the fitted values" if of == "fitted" else "the predictors"
     variant = f"power{'s' if len(powers) > 1 else ''} {' and '.join(map(str, powers))} of {what}"
@@ -63,6 +61,13 @@ def reset(fit: Fit, powers: Sequence[int] = (2, 3), *, of: str = "fitted") -> Re
         method="reset", args=args, variant=variant, statistic=statistic, df=(added.rank, left),
         p=float(fdtrc(added.rank, left, statistic)), null=null,
     )
+
+
+@lru_cache(maxsize=64)
+def _checked(powers: tuple[float, ...]) -> tuple[int, ...]:
+    if not powers or any(not float(power).is_integer() or power < 2 for power in powers):
+        raise ArgumentError(f"{list(powers)} are not powers to add: use whole numbers from 2 up.")
+    return tuple(sorted({int(power) for power in powers}))
 
 
 @once_per_fit

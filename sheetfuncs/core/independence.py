@@ -39,7 +39,7 @@ def durbin_watson(fit: Fit) -> Result:
     if refusal:
         return refusal
     e = fit.design.in_order(fit.residuals)
-    steps = np.diff(e)
+    steps = e[1:] - e[:-1]
     return Statistic(
         method="durbin_watson", args={}, variant=variant, statistic=float(steps @ steps) / fit.rss,
         null=NO_CORRELATION, note="2 is no correlation; below 2 it is positive, above 2 negative.",
@@ -104,12 +104,15 @@ def _durbin_watson_refusal(fit: Fit) -> DoesNotApply | None:
 def lagged_response(fit: Fit) -> str | None:
     """The predictor that is the response of the row before, in time order; None where there is none."""
     response = fit.design.in_order(fit.design.response)
-    if fit.n < 4 or np.ptp(response) == 0:
+    if fit.n < 4:
         return None
     second = 1 if fit.design.order is None else int(fit.design.order[1])
     for name, column in zip(fit.design.column_names, fit.design.columns.T, strict=True):
         # As a rule the first pair tells.
-        if column[second] == response[0] and np.array_equal(fit.design.in_order(column)[1:], response[:-1]):
+        if (
+            column[second] == response[0] and np.array_equal(fit.design.in_order(column)[1:], response[:-1])
+            and np.ptp(response) > 0
+        ):
             return name
     return None
 
