@@ -49,6 +49,7 @@ from sheetfuncs.core.white import white
 HERE = Path(__file__).parent
 # How many times as fast as the faster peer: on the methods that it runs too, and in whole.
 WANTED = {"60x3": (10, 10), "1000x5": (10, 8), "5000x10": (10, 6), "100000x10": (10, 6), "1000000x10": (8, 5)}
+ROUNDS = 5
 Method = Callable[[Fit], object]
 BOTH: tuple[Method, ...] = (
     lambda fit: (fit.standard_errors, fit.p_values, fit.interval(), fit.r_squared),
@@ -104,23 +105,31 @@ def run_methods(design: Design, methods: tuple[Method, ...]) -> None:
             method(fit)
 
 
-def peer_milliseconds(command: list[str], runs: int) -> float:
-    """The parts of a peer's job together, each at the least of so many runs, all of which start their clock warm."""
-    found = []
-    for _ in range(runs):
-        done = subprocess.run(command, capture_output=True, text=True, check=True)
-        found.append(json.loads(done.stdout.strip().splitlines()[-1]))
-    return sum(min(one[part] for one in found) for part in found[0] if part not in ("n", "k", "total_ms"))
+def peer_parts(command: list[str]) -> dict[str, float]:
+    """Milliseconds of the parts of a peer's job, all of which start their clock warm."""
+    done = subprocess.run(command, capture_output=True, text=True, check=True)
+    found = json.loads(done.stdout.strip().splitlines()[-1])
+    return {part: ms for part, ms in found.items() if part not in ("n", "k", "total_ms")}
 
 
 def compare(size: str, peers: dict[str, list[str]]) -> tuple[str, float, float, float]:
-    """The faster peer, its milliseconds, ours on its methods, and ours in whole; printed."""
+    """The faster peer, its milliseconds, ours on its methods, and ours in whole; printed.
+
+    In rounds, of which the least counts for each part of a peer and for ours: a machine that others use is slower at
+    times, and neither side is to meet only these.
+    """
     n, k = map(int, size.split("x"))
-    design, runs = design_of(size), 3 if n < 100_000 else 1
-    theirs = {name: peer_milliseconds([*command, str(n), str(k)], runs) for name, command in peers.items()}
+    design = design_of(size)
+    parts: dict[str, list[dict[str, float]]] = {name: [] for name in peers}
+    ours: list[dict[str, float]] = []
+    for _ in range(ROUNDS if n < 100_000 else 1):
+        for name, command in peers.items():
+            parts[name].append(peer_parts([*command, str(n), str(k)]))
+        jobs = {"whole": WHOLE, **{name: shared_with(name, n) for name in peers}}
+        ours.append({name: milliseconds(partial(run_methods, design, methods)) for name, methods in jobs.items()})
+    theirs = {name: sum(min(one[part] for one in found) for part in found[0]) for name, found in parts.items()}
     faster = min(theirs, key=theirs.__getitem__)
-    shared = milliseconds(partial(run_methods, design, shared_with(faster, n)))
-    whole = milliseconds(partial(run_methods, design, WHOLE))
+    shared, whole = (min(one[name] for one in ours) for name in (faster, "whole"))
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1e6
     print(f"{size}: " + ", ".join(f"{name} {ms:,.1f} ms" for name, ms in theirs.items()))
     print(f"    ours, the methods of {faster}: {shared:,.2f} ms, {theirs[faster] / shared:.1f} times as fast")
