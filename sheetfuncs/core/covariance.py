@@ -213,10 +213,10 @@ def _heteroscedastic(fit: Fit, kinds: tuple[str, ...]) -> dict[str, _Bars]:
         plain = _heteroscedastic(fit, ("HC0",))["HC0"][0]
         return {"HC1": _error_bars(fit, plain[None] * (fit.n / fit.df))[0]}
     lines, e = fit.orthonormal[:-1], fit.orthonormal[-1]
-    squares = e * e
     weights = np.empty((len(kinds), 1, fit.n))
+    np.multiply(e, e, out=weights[:, 0])
     for place, kind in enumerate(kinds):
-        np.multiply(squares, _weights(fit, kind), out=weights[place, 0])
+        weights[place, 0] *= _weights(fit, kind)
     with few_threads(fit.basis.q.size):
         scores = (weights * lines).reshape(-1, fit.n)
         middles = (scores @ lines.T).reshape(-1, fit.p, fit.p)

@@ -7,12 +7,12 @@ from functools import cache
 import numpy as np
 
 # Bytes; the C library takes no block beyond 32 MB for a measure.
-MEASURE = 1 << 24
+MEASURE = 1 << 22
 
 
 @cache
 def keep_freed_memory() -> None:
-    """Have the C library keep what was freed, up to 32 MB, instead of returning it to the system.
+    """Have the C library keep what was freed, up to 8 MB, instead of returning it to the system.
 
     Pages that come back from the system cost several microseconds each, at some thousand rows as much as a third of a
     check. glibc takes the largest block that was freed so far as its measure: larger blocks come from the system one by
