@@ -21,7 +21,7 @@ def summary_lines(done: Done) -> Iterator[str]:
     yield ""
     width = max(len(e.assumption) for e in check.evidence) + 2
     for evidence in check.evidence:
-        text = evidence.finding + (f" {_sentence(evidence.size)}" if evidence.size else "")
+        text = evidence.with_test + (f" {_sentence(evidence.size)}" if evidence.size else "")
         yield from _wrapped(text, first=f"  {evidence.assumption:<{width}}", rest=" " * (width + 2))
     yield ""
     nothing_left = check.fit.nothing_left()

@@ -47,6 +47,18 @@ class Evidence:
     def against(self) -> bool:
         return self.strength in ("clear", "some")
 
+    @property
+    def without_p(self) -> str:
+        """The finding without its p, for where p stands elsewhere or not at all."""
+        return self.finding if self.p is None else self.finding.replace(f", {pvalue(self.p)}", "")
+
+    @property
+    def with_test(self) -> str:
+        """The finding with the test and variant that its p comes from."""
+        if self.p is None:
+            return self.finding
+        return self.finding.replace(f", {pvalue(self.p)}", f", {pvalue(self.p)} ({self.test})")
+
 
 def all_evidence(
     fit: Fit, statistics: Sequence[Result], inflation: Sequence[Inflation], flagged: Sequence[FlaggedRow],

@@ -67,7 +67,7 @@ def _write_row(page: Page, check: Check, sketches: Sequence[tuple[str, str, Sket
         if title == FURTHER_APART:  # its neighbour has said the finding
             page.put(column, sentence(evidence.size), looks.WRAPPED, span=_WIDTH)
         else:
-            page.put(column, evidence.finding, finding_look(evidence).but(bold=False), span=_WIDTH)
+            page.put(column, evidence.with_test, finding_look(evidence).but(bold=False), span=_WIDTH)
     page.next()
     first, last = page.row, page.row + CHART_ROWS - 1
     for row in range(first, last + 1):

@@ -5,7 +5,7 @@ from __future__ import annotations
 from sheetfuncs.checking import Check
 from sheetfuncs.judgement.evidence import Evidence
 from sheetfuncs.judgement.uses import next_steps, uses
-from sheetfuncs.judgement.words import counted, listed, number, pvalue
+from sheetfuncs.judgement.words import counted, listed, number
 from sheetfuncs.report import style as looks
 from sheetfuncs.report.formats import PVALUE
 from sheetfuncs.report.layout import COUNT, FIRST, LAST, ROW_POINTS, Head, Page
@@ -142,7 +142,7 @@ def without_p(evidence: Evidence) -> str:
     """The finding without its p, where p has a column of its own."""
     if evidence.strength == "not tested":
         return f"Not tested. {evidence.finding}"
-    return evidence.finding if evidence.p is None else evidence.finding.replace(f", {pvalue(evidence.p)}", "")
+    return evidence.without_p
 
 
 def finding_look(evidence: Evidence) -> looks.Style:

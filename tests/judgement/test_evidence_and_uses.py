@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import re
+
 import numpy as np
 import pytest
 from reference_cases import NAMES, load_case
@@ -58,6 +60,8 @@ def test_every_assumption_has_one_line_without_a_verdict():
         check = check_of(error)
         assert [e.assumption for e in check.evidence] == ASSUMPTIONS
         for e in check.evidence:
+            assert (e.p is not None) == (e.with_test != e.finding)
+            assert e.p is None or (f" ({e.test})" in e.with_test and not re.search("p [=<>]", e.without_p))
             said = f" {e.finding} {e.size} "
             assert not any(f" {word} " in said for word in VERDICTS), said
             assert e.finding.endswith(".")

@@ -65,7 +65,7 @@ def finding(check: Check) -> str:
     nothing = check.fit.nothing_left()
     if nothing:
         return nothing
-    against = [evidence.finding.rstrip(".") for evidence in check.evidence if evidence.against]
+    against = [evidence.without_p.rstrip(".") for evidence in check.evidence if evidence.against]
     found = "; ".join(text if not place else text[:1].lower() + text[1:] for place, text in enumerate(against))
     return f"{found}." if found else "No evidence found against an assumption, which is not proof."
 
