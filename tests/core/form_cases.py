@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from typing import Any
 
 import numpy as np
@@ -94,3 +95,13 @@ def awkward_fits(draw) -> Fit | None:
         return fit_of(y, x, intercept=draw(st.booleans()))
     except SheetfuncsError:
         return None
+
+
+def assert_fit_or_reason(result: Any) -> None:
+    """A remedy's answer: finite figures that JSON can hold, or a reason in a sentence."""
+    if result.applies:
+        assert np.isfinite(result.coefficients).all()
+        assert (result.standard_errors > 0).all()
+        json.dumps(result.to_dict(), allow_nan=False)
+    else:
+        assert result.reason.endswith(".")

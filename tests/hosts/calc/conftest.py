@@ -2,11 +2,16 @@
 
 from __future__ import annotations
 
+import shutil
 from collections.abc import Iterator
+from pathlib import Path
 from typing import Any
 
 import pytest
 from office import Calc, installed_profile, load_uno
+from press import workers_ended
+
+BOOK = Path(__file__).parents[3] / "templates" / "order-hours-unequal-spread.xlsx"
 
 
 @pytest.fixture(scope="session")
@@ -28,3 +33,14 @@ def document(calc: Calc) -> Iterator[Any]:
         yield made
     finally:
         made.close(True)
+
+
+@pytest.fixture(scope="module")
+def orders(calc: Calc, tmp_path_factory: pytest.TempPathFactory) -> Iterator[Any]:
+    """A copy of the demo workbook in a window that nobody sees, for the tests of one file; none may change it."""
+    book = tmp_path_factory.mktemp("orders") / BOOK.name
+    shutil.copy(BOOK, book)
+    document = calc.open(book, Hidden=False)
+    with workers_ended(calc):
+        yield document
+        document.close(True)

@@ -14,17 +14,6 @@ pytestmark = pytest.mark.libreoffice
 BOOK = Path(__file__).parents[3] / "templates" / "order-hours-unequal-spread.xlsx"
 
 
-@pytest.fixture(scope="module")
-def orders(calc, tmp_path_factory):
-    """A copy of the demo workbook; no test here may change it."""
-    book = tmp_path_factory.mktemp("refused") / BOOK.name
-    shutil.copy(BOOK, book)
-    document = calc.open(book, Hidden=False)
-    with workers_ended(calc):
-        yield document
-        document.close(True)
-
-
 def refusal(calc, document, command="check"):
     titles = document.Sheets.ElementNames
     outcome = press(calc, document, command)

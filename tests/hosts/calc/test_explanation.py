@@ -2,29 +2,15 @@
 
 from __future__ import annotations
 
-import shutil
-from pathlib import Path
-
 import pytest
 from office import type_formula
-from press import Pressed, press, select, where, workers_ended
+from press import Pressed, press, select, where
 
 import sheetfuncs
 
 pytestmark = pytest.mark.libreoffice
 
-BOOK = Path(__file__).parents[3] / "templates" / "order-hours-unequal-spread.xlsx"
 LEFT_OUT = "4 of 70 rows left out: row 15 (blank in column G (Cut pieces))"
-
-
-@pytest.fixture(scope="module")
-def orders(calc, tmp_path_factory):
-    book = tmp_path_factory.mktemp("why") / BOOK.name
-    shutil.copy(BOOK, book)
-    document = calc.open(book, Hidden=False)
-    with workers_ended(calc):
-        yield document
-        document.close(True)
 
 
 def ask(calc, document, formula):
